@@ -1,0 +1,102 @@
+//! What `laboratory.md` settles for every campaign.
+
+use super::field::{Field, Shape, check_fields, needed, optional};
+use super::fields::Fields;
+use super::given::Given;
+use crate::diagnostic::{Code, Complaints, Problem};
+use crate::graph::{DegreesOfFreedomRule, Settings};
+use crate::quantity::{Kind, Style};
+use crate::record::Record;
+
+const BASIS_FIELDS: &[Field] = &[
+    needed("id", Shape::Text, "the name used as `basis:` of a mass"),
+    needed("label", Shape::Text, "the basis in words"),
+];
+
+const FIELDS: &[Field] = &[
+    needed("format", Shape::Number, "the format of the records, 1"),
+    needed("name", Shape::Text, "the laboratory's name"),
+    needed("address", Shape::Text, "the laboratory's address"),
+    optional("coverage_probability", Shape::AnyValue, "coverage probability of expanded uncertainties, such as 95.45 %"),
+    optional("decimal_marker", Shape::Choice(&["point", "comma"]), "decimal marker in reports"),
+    optional("degrees_of_freedom", Shape::Choice(&["truncated", "as computed"]), "how effective degrees of freedom enter the coverage factor"),
+    optional("unit_bases", Shape::Mappings(BASIS_FIELDS), "the unit bases masses may refer to"),
+];
+
+/// The laboratory and its settings.
+#[derive(Debug, Clone, PartialEq)]
+pub struct Laboratory {
+    pub name: String,
+    pub address: String,
+    pub settings: Settings,
+    pub style: Style,
+    /// Name and label of each unit basis.
+    pub unit_bases: Vec<(String, String)>,
+    /// Values used that `laboratory.md` does not state.
+    pub assumed: Vec<String>,
+}
+
+impl Default for Laboratory {
+    fn default() -> Self {
+        Self {
+            name: String::new(),
+            address: String::new(),
+            settings: Settings::new(0.9545, DegreesOfFreedomRule::Truncated),
+            style: Style::POINT,
+            unit_bases: Vec::new(),
+            assumed: Vec::new(),
+        }
+    }
+}
+
+impl Laboratory {
+    /// Reads the front matter of `laboratory.md`.
+    pub fn read(record: &Record, complaints: &mut Complaints) -> Laboratory {
+        let Some(front) = &record.front else {
+            let problem = Problem::new(Code::RecordUnreadable, "laboratory.md has no front matter, so the laboratory has no name.");
+            complaints.add_at(problem.hint("Begin the file with `---`, `format: 1`, `name:`, `address:`, `---`."), record.body);
+            return Laboratory::default();
+        };
+        check_fields(front, FIELDS, "laboratory.md", complaints);
+        let fields = Fields { node: front };
+        if let Some(format) = fields.number("format").filter(|format| *format != 1.0) {
+            let message = format!("These records are in format {format}; this program reads format 1.");
+            complaints.add_at(Problem::new(Code::FormatUnsupported, message).hint("Use the version of the program the folder was written for."), fields.place_of("format"));
+        }
+        let mut laboratory = Laboratory { name: fields.words("name"), address: fields.words("address"), ..Laboratory::default() };
+        laboratory.take_settings(fields, complaints);
+        laboratory
+    }
+
+    fn take_settings(&mut self, fields: Fields<'_>, complaints: &mut Complaints) {
+        let rule = match fields.words("degrees_of_freedom").as_str() {
+            "as computed" => DegreesOfFreedomRule::AsComputed,
+            stated => {
+                if stated.is_empty() {
+                    self.assumed.push("effective degrees of freedom are truncated to a whole number for the coverage factor".into());
+                }
+                DegreesOfFreedomRule::Truncated
+            }
+        };
+        let probability = match fields.given("coverage_probability", Kind::Plain) {
+            Some(Given::Stated { value, place }) if !(0.5..1.0).contains(&value.value) => {
+                let message = format!("A coverage probability of {} is not between 50 % and 100 %.", value.text);
+                complaints.add_at(Problem::new(Code::OutOfRange, message), place);
+                0.9545
+            }
+            Some(Given::Stated { value, .. }) => value.value,
+            _ => {
+                self.assumed.push("coverage probability 95.45 %".into());
+                0.9545
+            }
+        };
+        self.settings = Settings::new(probability, rule);
+        self.style = if fields.words("decimal_marker") == "comma" { Style::COMMA } else { Style::POINT };
+        self.unit_bases = fields.mappings("unit_bases").iter().map(|basis| (basis.words("id"), basis.words("label"))).collect();
+    }
+
+    /// The label of a unit basis; its name where it has none.
+    pub fn basis_label<'a>(&'a self, id: &'a str) -> &'a str {
+        self.unit_bases.iter().find(|(known, _)| known == id).map_or(id, |(_, label)| label)
+    }
+}

@@ -1,0 +1,80 @@
+//! The kinds of complaint. Their names are words; each has a record under `tests/complaints/` that triggers it.
+
+use super::Severity;
+
+macro_rules! codes {
+    ($($variant:ident $word:literal $severity:ident $meaning:literal;)*) => {
+        /// A kind of complaint.
+        #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
+        pub enum Code { $(#[doc = $meaning] $variant,)* }
+
+        impl Code {
+            /// Every kind, in order of name.
+            pub const ALL: &'static [Code] = &[$(Code::$variant,)*];
+
+            /// The word printed with the complaint.
+            pub fn word(self) -> &'static str {
+                match self { $(Code::$variant => $word,)* }
+            }
+
+            /// Whether results can stand beside it.
+            pub fn severity(self) -> Severity {
+                match self { $(Code::$variant => Severity::$severity,)* }
+            }
+
+            /// What the complaint means, in one line.
+            pub fn meaning(self) -> &'static str {
+                match self { $(Code::$variant => $meaning,)* }
+            }
+        }
+    };
+}
+
+codes! {
+    BareNumber "bare_number" Fault "A number stands without the unit its quantity needs.";
+    BasisMismatch "basis_mismatch" Fault "Two masses on different unit bases meet in one sum.";
+    CellUnreadable "cell_unreadable" Fault "A cell of a raw data file is empty, no number, or not finite.";
+    CertificateExpired "certificate_expired" Fault "A certificate was past its due date on the day of use.";
+    CertificateMissing "certificate_missing" Fault "No calibration was valid on the day of use.";
+    CircularReference "circular_reference" Fault "Values refer to each other in a circle.";
+    ColumnUnknown "column_unknown" Fault "A raw data file has no column with this head, or has it twice.";
+    ConditionsOutOfSpan "conditions_out_of_span" Fault "Conditions are asked for at a time outside the logged span.";
+    CorrelationImpossible "correlation_impossible" Fault "Stated correlations or covariances contradict each other.";
+    DecimalComma "decimal_comma" Fault "A number is written with a decimal comma.";
+    DesignIncomplete "design_incomplete" Fault "A cycle, series or list has not the number of readings its kind needs.";
+    DimensionMismatch "dimension_mismatch" Fault "A value has another dimension than its quantity.";
+    DoubleUncertainty "double_uncertainty" Fault "A reading carries its own uncertainty beside that of its instrument.";
+    DuplicateKey "duplicate_key" Fault "A field stands twice in one block.";
+    DuplicateName "duplicate_name" Fault "Two blocks carry the same name.";
+    ExclusionWithoutReason "exclusion_without_reason" Fault "An excluded cycle or run lacks a rule or a reason.";
+    FewReadings "few_readings" Warning "A Type A evaluation rests on so few readings that its variance is unknown.";
+    FieldMissing "field_missing" Fault "A block lacks a field it needs.";
+    FieldUnknown "field_unknown" Fault "A block has a field its kind does not know.";
+    FigureMissing "figure_missing" Fault "A report cites a result that does not exist or could not be computed.";
+    FileMissing "file_missing" Fault "A file named in a record cannot be read.";
+    FormatUnsupported "format_unsupported" Fault "The laboratory folder asks for another record format.";
+    KindMismatch "kind_mismatch" Fault "Two kinds of quantity that must not be mixed meet.";
+    KindUnknown "kind_unknown" Fault "A measurement block is of a kind nobody knows.";
+    NameInvalid "name_invalid" Fault "A name is not a letter followed by letters, digits and underscores.";
+    NotationUnreadable "notation_unreadable" Fault "A value is written in no known notation.";
+    OutOfRange "out_of_range" Fault "A reading lies outside the range of its instrument.";
+    OutOfValidity "out_of_validity" Fault "A value lies outside the range in which a formula is valid.";
+    PathOutside "path_outside" Fault "A path leaves the laboratory folder.";
+    ProseUnreadable "prose_unreadable" Fault "Prose uses something a report cannot typeset.";
+    RecordUnreadable "record_unreadable" Fault "A record is no readable text, or its front matter is damaged.";
+    RuleDated "rule_dated" Fault "A rule is dated after the data it judges.";
+    SameValueTwice "same_value_twice" Warning "The same value and uncertainty stand in two blocks: one input or two?";
+    ShapeMismatch "shape_mismatch" Fault "A field holds a list, a mapping or text where another is expected.";
+    SilentComment "silent_comment" Fault "A # after a value would start a comment nobody sees.";
+    StateMismatch "state_mismatch" Fault "A value in vacuum meets a value in air without a stated link.";
+    TemplateFaulty "template_faulty" Fault "A template or an expression in double braces cannot be evaluated.";
+    TimeUnreadable "time_unreadable" Fault "A date or time is unreadable, lacks its zone, or does not follow.";
+    TypesettingFailed "typesetting_failed" Fault "The typesetter could not make the page.";
+    UncertaintyIncomplete "uncertainty_incomplete" Fault "An uncertainty lacks its coverage factor or distribution.";
+    UncertaintyMissing "uncertainty_missing" Fault "A value that needs an uncertainty has none.";
+    UnclosedFence "unclosed_fence" Fault "A fenced block is never closed.";
+    UndefinedReference "undefined_reference" Fault "A name refers to nothing.";
+    UnitUnknown "unit_unknown" Fault "A unit symbol is unknown.";
+    YamlForbidden "yaml_forbidden" Fault "A block uses an anchor, alias, tag, merge key or second document.";
+    YamlUnreadable "yaml_unreadable" Fault "A block is no readable YAML.";
+}

@@ -1,0 +1,46 @@
+//! The graph of quantities: what is computed, what uncertainty is propagated through, and what the trail prints.
+//!
+//! | file            | holds                                                                    |
+//! |-----------------|--------------------------------------------------------------------------|
+//! | `node`          | nodes, operations, inputs, origins                                       |
+//! | `value`         | numbers and columns of numbers, and the elementary operations on them    |
+//! | `build`         | [`Builder`]: growing the graph, scopes, names                            |
+//! | `handle`        | [`Quantity`]: ordinary arithmetic on handles                             |
+//! | `estimator`     | several outputs from columns: means, fits, combinations                  |
+//! | `evaluate`      | the graph with some inputs displaced                                     |
+//! | `sensitivity`   | one reverse sweep per measurand                                          |
+//! | `uncertainty`   | standard uncertainty, covariance, effective degrees of freedom, coverage |
+//! | `budget`        | the uncertainty budget                                                   |
+//! | `trail`         | from a result down to readings                                           |
+//! | `monte_carlo`   | propagation of distributions in blocks of trials                         |
+//!
+//! Values are in coherent SI units. A sum of unlike dimensions, kinds, states or unit bases cannot be built.
+
+mod budget;
+mod build;
+mod estimator;
+mod evaluate;
+mod handle;
+mod monte_carlo;
+mod node;
+mod sensitivity;
+mod trail;
+mod uncertainty;
+mod value;
+
+pub use budget::{Budget, BudgetLine, budget};
+pub use build::{Assumption, Builder, InputDraft, ScopeGuard};
+pub use estimator::{Decision, Estimate, Estimator, EstimatorId, EstimatorNode};
+pub use evaluate::evaluate_displaced;
+pub use handle::Quantity;
+pub use monte_carlo::{MonteCarlo, Trials, linearity_departure, propagate_distributions};
+pub use node::{
+    Basis, Distribution, Evaluation, Graph, Input, MethodInfo, Name, Node, NodeId, Op, Origin, ReadingColumn, State,
+};
+pub use sensitivity::{Sensitivities, Source, sensitivities};
+pub use trail::{TrailStep, TrailSteps, trail};
+pub use uncertainty::{
+    Coverage, DegreesOfFreedomRule, Settings, correlation, covariance, coverage, degrees_of_freedom,
+    standard_uncertainty,
+};
+pub use value::Value;

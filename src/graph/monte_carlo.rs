@@ -1,0 +1,359 @@
+//! Propagation of distributions by Monte Carlo, in blocks of trials.
+//!
+//! # Source   JCGM 101:2008, clauses 6 and 7; JCGM 102:2011 for several measurands in one run.
+//!
+//! Scalars are drawn and evaluated trial by trial. A number taken from columns (a sum, a row, an estimator's
+//! output) answers the scalars that shape its columns through its linear response at the estimates, so that the
+//! cost of a trial does not grow with the rows; [`linearity_departure`] checks that response by evaluating the
+//! graph anew. Random streams are keyed by input path and block: a new input leaves all other draws as they were,
+//! and blocks may run on any number of threads.
+
+use super::evaluate::evaluate_displaced;
+use super::node::*;
+use super::sensitivity::linear_response;
+use super::value::Value;
+use crate::diagnostic::Problem;
+use crate::numeric::linear::covariance_factor;
+use crate::numeric::{self, stream::Stream};
+use rayon::prelude::*;
+use std::collections::{BTreeMap, BTreeSet};
+
+/// Trials in one block; sums are taken block by block in order, so the bits do not depend on threads.
+const BLOCK: usize = 1024;
+
+/// A run of trials over any number of measurands.
+#[derive(Debug, Clone)]
+pub struct Trials {
+    /// `values[measurand][trial]`, in coherent SI units.
+    pub values: Vec<Vec<f64>>,
+}
+
+/// What a run says of one measurand.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct MonteCarlo {
+    pub estimate: f64,
+    pub standard_uncertainty: f64,
+    /// Probabilistically symmetric coverage interval.
+    pub symmetric_interval: (f64, f64),
+    pub trials: usize,
+}
+
+impl Trials {
+    /// Estimate, standard uncertainty and symmetric interval of measurand number `index` (JCGM 101, 7.6 and 7.7).
+    pub fn summary(&self, index: usize, coverage_probability: f64) -> MonteCarlo {
+        let values = &self.values[index];
+        let mut sorted = values.clone();
+        sorted.sort_by(f64::total_cmp);
+        let tail = (1.0 - coverage_probability) / 2.0;
+        let at = |p: f64| sorted[((p * sorted.len() as f64) as usize).min(sorted.len() - 1)];
+        MonteCarlo {
+            estimate: numeric::sum::mean(values).unwrap_or(f64::NAN),
+            standard_uncertainty: numeric::sum::experimental_standard_deviation(values).unwrap_or(0.0),
+            symmetric_interval: (at(tail), at(1.0 - tail)),
+            trials: values.len(),
+        }
+    }
+}
+
+/// Draws `trials` joint values of the measurands.
+///
+/// # Errors
+/// When a covariance on the way is impossible.
+pub fn propagate_distributions(graph: &Graph, measurands: &[NodeId], trials: usize) -> Result<Trials, Problem> {
+    let plan = Plan::new(graph, measurands)?;
+    let blocks: Vec<Vec<Vec<f64>>> = (0..trials.div_ceil(BLOCK))
+        .into_par_iter()
+        .map(|block| plan.block(block as u64, BLOCK.min(trials - block * BLOCK)))
+        .collect();
+    let values = (0..measurands.len())
+        .map(|index| blocks.iter().flat_map(|block| block[index].iter().copied()).collect())
+        .collect();
+    Ok(Trials { values })
+}
+
+/// How far the linear response of `boundary` departs from the graph evaluated anew, when every scalar that shapes
+/// its columns is displaced by its standard uncertainty; relative to the largest such change.
+///
+/// # Errors
+/// Those of an estimator that cannot work with the displaced columns.
+pub fn linearity_departure(graph: &Graph, boundary: NodeId) -> Result<f64, Problem> {
+    let (response, _) = linear_response(graph, boundary);
+    let (mut worst, mut largest) = (0.0f64, 0.0f64);
+    for (scalar, weight) in response {
+        let Some(input) = graph.input(scalar) else { continue };
+        let step = input.distribution.standard_uncertainty();
+        if step == 0.0 {
+            continue;
+        }
+        let displaced = BTreeMap::from([(scalar, Value::Scalar(graph.number(scalar) + step))]);
+        let moved = evaluate_displaced(graph, &displaced, boundary)?[boundary.index()].number() - graph.number(boundary);
+        worst = worst.max((moved - weight * step).abs());
+        largest = largest.max(moved.abs());
+    }
+    Ok(if largest > 0.0 { worst / largest } else { 0.0 })
+}
+
+/// How one needed scalar gets its trial values.
+enum Step {
+    Fixed,
+    Draw(u32),
+    Compute,
+    /// Linear response: the node's estimate plus weights times departures of scalars, plus noise by number.
+    Respond { weights: Vec<(NodeId, f64)>, noise: Option<usize> },
+}
+
+/// Which scalars to evaluate, in which order.
+struct Plan<'g> {
+    graph: &'g Graph,
+    measurands: Vec<NodeId>,
+    steps: Vec<(NodeId, Step)>,
+    noise: Noise,
+}
+
+impl<'g> Plan<'g> {
+    fn new(graph: &'g Graph, measurands: &[NodeId]) -> Result<Self, Problem> {
+        let mut needed = BTreeSet::new();
+        let mut responses = BTreeMap::new();
+        let mut waiting: Vec<NodeId> = measurands.to_vec();
+        while let Some(id) = waiting.pop() {
+            if !needed.insert(id) {
+                continue;
+            }
+            if is_boundary(graph, id) {
+                let (scalars, below) = linear_response(graph, id);
+                waiting.extend(scalars.keys().copied());
+                responses.insert(id, (scalars, below));
+            } else {
+                waiting.extend(graph.node(id).op.operands());
+            }
+        }
+        let noise = Noise::new(graph, responses.iter().map(|(id, (_, below))| (*id, &below.inputs)))?;
+        let mut uncertain = BTreeSet::new();
+        let steps = needed
+            .iter()
+            .map(|id| {
+                let step = step_of(graph, *id, &responses, &noise, &uncertain);
+                if !matches!(step, Step::Fixed) {
+                    uncertain.insert(*id);
+                }
+                (*id, step)
+            })
+            .collect();
+        Ok(Self { graph, measurands: measurands.to_vec(), steps, noise })
+    }
+
+    /// The measurands in the trials of one block.
+    fn block(&self, block: u64, length: usize) -> Vec<Vec<f64>> {
+        let mut rows: BTreeMap<NodeId, Vec<f64>> = BTreeMap::new();
+        let noise = self.noise.draw(self.graph, block, length);
+        for (id, step) in &self.steps {
+            let values = match step {
+                Step::Fixed => continue,
+                Step::Draw(number) => draw(self.graph, *number, block, length),
+                Step::Compute => self.compute(*id, &rows, length),
+                Step::Respond { weights, noise: number } => {
+                    self.respond(*id, weights, number.map(|number| &noise[number]), &rows, length)
+                }
+            };
+            rows.insert(*id, values);
+        }
+        self.measurands
+            .iter()
+            .map(|id| rows.get(id).cloned().unwrap_or_else(|| vec![self.graph.number(*id); length]))
+            .collect()
+    }
+
+    fn compute(&self, id: NodeId, rows: &BTreeMap<NodeId, Vec<f64>>, length: usize) -> Vec<f64> {
+        let value = |operand: &NodeId, trial: usize| rows.get(operand).map_or_else(|| self.graph.number(*operand), |r| r[trial]);
+        let op = &self.graph.node(id).op;
+        let pair = |a: &NodeId, b: &NodeId, f: fn(f64, f64) -> f64| {
+            (0..length).map(|trial| f(value(a, trial), value(b, trial))).collect()
+        };
+        match op {
+            Op::Add(a, b) => pair(a, b, |a, b| a + b),
+            Op::Subtract(a, b) => pair(a, b, |a, b| a - b),
+            Op::Multiply(a, b) => pair(a, b, |a, b| a * b),
+            Op::Divide(a, b) => pair(a, b, |a, b| a / b),
+            op => {
+                let operand = op.operands().first().copied().unwrap_or(id);
+                let single = |trial: usize| super::value::apply_scalar(op, value(&operand, trial));
+                (0..length).map(single).collect()
+            }
+        }
+    }
+
+    fn respond(
+        &self,
+        id: NodeId,
+        weights: &[(NodeId, f64)],
+        noise: Option<&Vec<f64>>,
+        rows: &BTreeMap<NodeId, Vec<f64>>,
+        length: usize,
+    ) -> Vec<f64> {
+        let mut values = vec![self.graph.number(id); length];
+        for (scalar, weight) in weights {
+            let Some(drawn) = rows.get(scalar) else { continue };
+            let centre = self.graph.number(*scalar);
+            values.iter_mut().zip(drawn).for_each(|(value, drawn)| *value += weight * (drawn - centre));
+        }
+        if let Some(noise) = noise {
+            values.iter_mut().zip(noise).for_each(|(value, noise)| *value += noise);
+        }
+        values
+    }
+}
+
+fn is_boundary(graph: &Graph, id: NodeId) -> bool {
+    matches!(graph.node(id).op, Op::Sum(_) | Op::Row(..) | Op::Output(..))
+}
+
+fn step_of<R>(
+    graph: &Graph,
+    id: NodeId,
+    responses: &BTreeMap<NodeId, (BTreeMap<NodeId, f64>, R)>,
+    noise: &Noise,
+    uncertain: &BTreeSet<NodeId>,
+) -> Step {
+    if let Some((scalars, _)) = responses.get(&id) {
+        let weights: Vec<(NodeId, f64)> =
+            scalars.iter().filter(|(scalar, _)| uncertain.contains(scalar)).map(|(scalar, weight)| (*scalar, *weight)).collect();
+        let noise = noise.number_of(id);
+        return if weights.is_empty() && noise.is_none() { Step::Fixed } else { Step::Respond { weights, noise } };
+    }
+    match &graph.node(id).op {
+        Op::Input(number) if !graph.inputs[*number as usize].distribution.is_exact() => Step::Draw(*number),
+        op if op.operands().iter().any(|operand| uncertain.contains(operand)) => Step::Compute,
+        _ => Step::Fixed,
+    }
+}
+
+fn draw(graph: &Graph, number: u32, block: u64, length: usize) -> Vec<f64> {
+    let input = &graph.inputs[number as usize];
+    let centre = graph.number(input.node);
+    let path = graph.node(input.node).name.as_ref().map_or("", |name| name.path.as_str());
+    let mut stream = Stream::new(path, block);
+    (0..length).map(|_| centre + departure(input, &mut stream)).collect()
+}
+
+/// One draw of an input about its estimate (JCGM 101, 6.4).
+fn departure(input: &Input, stream: &mut Stream) -> f64 {
+    match input.distribution {
+        Distribution::Exact => 0.0,
+        Distribution::Normal { standard_uncertainty } => standard_uncertainty * stream.normal(),
+        Distribution::StudentT { scale } if input.degrees_of_freedom > 2.0 => {
+            scale * numeric::distribution::student_t_quantile(stream.uniform(), input.degrees_of_freedom)
+        }
+        Distribution::StudentT { scale } => scale * stream.normal(),
+        Distribution::Rectangular { half_width } => half_width * (2.0 * stream.uniform() - 1.0),
+        Distribution::Triangular { half_width } => half_width * (stream.uniform() + stream.uniform() - 1.0),
+        Distribution::Arcsine { half_width } => {
+            half_width * numeric::elementary::sin(std::f64::consts::TAU * stream.uniform())
+        }
+    }
+}
+
+/// Noise of numbers taken from columns: per-row uncertainty of readings (one joint normal over all of them), and
+/// the scatter seen by estimators (a joint t each).
+struct Noise {
+    nodes: Vec<NodeId>,
+    columns_root: Vec<Vec<f64>>,
+    estimator_roots: BTreeMap<u32, Vec<Vec<f64>>>,
+}
+
+impl Noise {
+    fn new<'a>(graph: &Graph, below: impl Iterator<Item = (NodeId, &'a BTreeMap<u32, Vec<f64>>)>) -> Result<Self, Problem> {
+        let taken: Vec<(NodeId, Vec<(u32, Vec<f64>)>)> = below.map(|(id, inputs)| (id, noisy_columns(graph, inputs))).collect();
+        let kept: Vec<_> = taken
+            .into_iter()
+            .filter(|(id, columns)| !columns.is_empty() || matches!(graph.node(*id).op, Op::Output(..)))
+            .collect();
+        let covariance: Vec<Vec<f64>> =
+            kept.iter().map(|(_, a)| kept.iter().map(|(_, b)| shared_variance(a, b)).collect()).collect();
+        let nodes: Vec<NodeId> = kept.iter().map(|(id, _)| *id).collect();
+        let estimators: BTreeSet<u32> = nodes.iter().filter_map(|id| output_of(graph, *id).map(|(e, _)| e)).collect();
+        let scatter = |e: &u32| Ok((*e, covariance_factor(&graph.estimators[*e as usize].estimate.own_covariance)?));
+        let estimator_roots = estimators.iter().map(scatter).collect::<Result<_, Problem>>()?;
+        Ok(Self { nodes, columns_root: covariance_factor(&covariance)?, estimator_roots })
+    }
+
+    fn number_of(&self, id: NodeId) -> Option<usize> {
+        self.nodes.iter().position(|node| *node == id)
+    }
+
+    fn draw(&self, graph: &Graph, block: u64, length: usize) -> Vec<Vec<f64>> {
+        let mut noise = self.column_noise(block, length);
+        for (&estimator, root) in &self.estimator_roots {
+            let scatter = estimator_scatter(graph, estimator, root, block, length);
+            for (row, id) in noise.iter_mut().zip(&self.nodes) {
+                if let Some((of, output)) = output_of(graph, *id) && of == estimator {
+                    row.iter_mut().zip(&scatter[output]).for_each(|(value, drawn)| *value += drawn);
+                }
+            }
+        }
+        noise
+    }
+
+    fn column_noise(&self, block: u64, length: usize) -> Vec<Vec<f64>> {
+        let mut noise = vec![vec![0.0; length]; self.nodes.len()];
+        for column in 0..self.nodes.len() {
+            if self.columns_root.iter().all(|row| row[column] == 0.0) {
+                continue;
+            }
+            let mut stream = Stream::new(&format!("columns of readings {column}"), block);
+            for trial in 0..length {
+                let drawn = stream.normal();
+                for (row, root) in noise.iter_mut().zip(&self.columns_root) {
+                    row[trial] += root[column] * drawn;
+                }
+            }
+        }
+        noise
+    }
+}
+
+fn output_of(graph: &Graph, id: NodeId) -> Option<(u32, usize)> {
+    match graph.node(id).op {
+        Op::Output(estimator, output) => Some((estimator.0, output as usize)),
+        _ => None,
+    }
+}
+
+/// Weights times standard uncertainty, row by row, of the columns that carry a per-row uncertainty.
+fn noisy_columns(graph: &Graph, inputs: &BTreeMap<u32, Vec<f64>>) -> Vec<(u32, Vec<f64>)> {
+    inputs
+        .iter()
+        .filter_map(|(number, weights)| {
+            let input = &graph.inputs[*number as usize];
+            let uncertainty = input.distribution.standard_uncertainty();
+            let column = graph.value(input.node).length().is_some();
+            (column && uncertainty > 0.0).then(|| (*number, weights.iter().map(|weight| weight * uncertainty).collect()))
+        })
+        .collect()
+}
+
+fn shared_variance(a: &[(u32, Vec<f64>)], b: &[(u32, Vec<f64>)]) -> f64 {
+    let pairs = a.iter().filter_map(|(number, left)| b.iter().find(|(other, _)| other == number).map(|(_, right)| (left, right)));
+    pairs.map(|(left, right)| left.iter().zip(right).map(|(l, r)| l * r).sum::<f64>()).sum()
+}
+
+/// √(ν/χ²) with χ² drawn with ν degrees of freedom: turns normal draws into t draws.
+fn t_scale(freedom: f64, stream: &mut Stream) -> f64 {
+    (freedom / (2.0 * numeric::gamma::gamma_quantile(freedom / 2.0, stream.uniform()))).sqrt()
+}
+
+/// Joint draws of an estimator's own scatter: multivariate t with its degrees of freedom (JCGM 101, 6.4.9.2),
+/// normal where those are so few that the t has no variance.
+fn estimator_scatter(graph: &Graph, estimator: u32, root: &[Vec<f64>], block: u64, length: usize) -> Vec<Vec<f64>> {
+    let node = &graph.estimators[estimator as usize];
+    let mut stream = Stream::new(&node.path, block);
+    let mut scatter = vec![Vec::with_capacity(length); root.len()];
+    for _ in 0..length {
+        let freedom = node.estimate.degrees_of_freedom;
+        let scale = if freedom > 2.0 && freedom.is_finite() { t_scale(freedom, &mut stream) } else { 1.0 };
+        let normals: Vec<f64> = root.iter().map(|_| stream.normal()).collect();
+        for (row, out) in root.iter().zip(scatter.iter_mut()) {
+            out.push(scale * row.iter().zip(&normals).map(|(cell, normal)| cell * normal).sum::<f64>());
+        }
+    }
+    scatter
+}

@@ -1,0 +1,121 @@
+//! Combined standard uncertainty, covariance, effective degrees of freedom, coverage factor.
+//!
+//! # Source   JCGM 100:2008, 5.1 (law of propagation), 5.2 (correlation), G.4 (Welch–Satterthwaite), G.3 (Student's t).
+//! # Formula  u_c² = Σ c_i² u_i² over independent sources;  cov(a, b) = Σ c_i(a) c_i(b) u_i²
+//!            ν_eff = u_c⁴ / Σ (u_i(y)⁴ / ν_i)
+//!
+//! Two results that share an input share its node, so correlation needs no declaration.
+
+use super::node::*;
+use super::sensitivity::{Sensitivities, Source};
+use crate::numeric;
+
+/// Contribution of each source to a variance (or covariance of two measurands), in the order of [`Source`].
+pub(super) fn variance_terms(graph: &Graph, a: &Sensitivities, b: &Sensitivities) -> Vec<(Source, f64)> {
+    let inputs = a.inputs.iter().filter_map(|(number, left)| {
+        let right = b.inputs.get(number)?;
+        let uncertainty = graph.inputs[*number as usize].distribution.standard_uncertainty();
+        let products: Vec<f64> = left.iter().zip(right).map(|(c, d)| (c * uncertainty) * (d * uncertainty)).collect();
+        Some((Source::Input(*number), numeric::sum::sum(products)))
+    });
+    let estimators = a.estimators.iter().filter_map(|(number, left)| {
+        let right = b.estimators.get(number)?;
+        let own = &graph.estimators[*number as usize].estimate.own_covariance;
+        let term = own.iter().zip(left).map(|(row, c)| c * row.iter().zip(right).map(|(cell, d)| cell * d).sum::<f64>()).sum();
+        Some((Source::Estimator(*number), term))
+    });
+    inputs.chain(estimators).filter(|(_, term)| *term != 0.0).collect()
+}
+
+/// Covariance of two measurands, in the product of their coherent SI units.
+pub fn covariance(graph: &Graph, a: &Sensitivities, b: &Sensitivities) -> f64 {
+    let terms: Vec<f64> = variance_terms(graph, a, b).into_iter().map(|(_, term)| term).collect();
+    numeric::sum::sum(terms)
+}
+
+/// Combined standard uncertainty of a measurand, in its coherent SI unit.
+pub fn standard_uncertainty(graph: &Graph, of: &Sensitivities) -> f64 {
+    covariance(graph, of, of).max(0.0).sqrt()
+}
+
+/// Correlation coefficient of two measurands; zero when one has no uncertainty.
+pub fn correlation(graph: &Graph, a: &Sensitivities, b: &Sensitivities) -> f64 {
+    let scale = standard_uncertainty(graph, a) * standard_uncertainty(graph, b);
+    if scale == 0.0 { 0.0 } else { (covariance(graph, a, b) / scale).clamp(-1.0, 1.0) }
+}
+
+/// Degrees of freedom of one source.
+pub(super) fn source_degrees_of_freedom(graph: &Graph, source: Source) -> f64 {
+    match source {
+        Source::Input(number) => graph.inputs[number as usize].degrees_of_freedom,
+        Source::Estimator(number) => graph.estimators[number as usize].estimate.degrees_of_freedom,
+    }
+}
+
+/// Effective degrees of freedom of a measurand (JCGM 100, G.4.1); infinite when no source has finitely many.
+pub fn degrees_of_freedom(graph: &Graph, of: &Sensitivities) -> f64 {
+    let terms = variance_terms(graph, of, of);
+    let total: f64 = terms.iter().map(|(_, term)| term).sum();
+    let weighted: f64 = terms.iter().map(|(source, term)| term * term / source_degrees_of_freedom(graph, *source)).sum();
+    if weighted > 0.0 { total * total / weighted } else { f64::INFINITY }
+}
+
+/// How the coverage factor uses effective degrees of freedom (JCGM 100, G.4.1, NOTE 1).
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Default)]
+pub enum DegreesOfFreedomRule {
+    /// Truncated to the next lower whole number.
+    #[default]
+    Truncated,
+    /// Used as computed.
+    AsComputed,
+}
+
+/// What the laboratory has settled about coverage.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Settings {
+    pub coverage_probability: f64,
+    pub degrees_of_freedom: DegreesOfFreedomRule,
+}
+
+/// Probability that a normal variable lies within two standard deviations, erf(√2).
+pub const TWO_SIGMA: f64 = 0.954_499_736_103_641_6;
+
+impl Settings {
+    /// A settled probability; 95.45 % is understood as the two-sigma probability it abbreviates (JCGM 100, table G.1).
+    pub fn new(probability: f64, degrees_of_freedom: DegreesOfFreedomRule) -> Self {
+        let coverage_probability = if (probability - 0.9545).abs() < 1e-12 { TWO_SIGMA } else { probability };
+        Self { coverage_probability, degrees_of_freedom }
+    }
+}
+
+/// A result with its expanded uncertainty.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Coverage {
+    pub standard_uncertainty: f64,
+    pub effective_degrees_of_freedom: f64,
+    /// The degrees of freedom the factor was taken at.
+    pub degrees_of_freedom: f64,
+    pub probability: f64,
+    pub factor: f64,
+    pub expanded_uncertainty: f64,
+}
+
+/// Coverage factor and expanded uncertainty of a measurand.
+pub fn coverage(graph: &Graph, of: &Sensitivities, settings: Settings) -> Coverage {
+    let standard_uncertainty = standard_uncertainty(graph, of);
+    let effective = degrees_of_freedom(graph, of);
+    let used = match settings.degrees_of_freedom {
+        // A hair of rounding must not turn 19 into 18.
+        DegreesOfFreedomRule::Truncated if effective.is_finite() => (effective * (1.0 + 1e-12)).floor().max(1.0),
+        _ => effective,
+    };
+    let factor = numeric::distribution::coverage_factor(settings.coverage_probability, used);
+    Coverage {
+        standard_uncertainty,
+        effective_degrees_of_freedom: effective,
+        degrees_of_freedom: used,
+        probability: settings.coverage_probability,
+        factor,
+        expanded_uncertainty: factor * standard_uncertainty,
+    }
+}

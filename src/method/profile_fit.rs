@@ -1,0 +1,166 @@
+//! Profile of the geometric factor of a moving coil, from velocity and voltage gate by gate.
+//!
+//! # Source    least squares on the moving-mode model of a two-mode Kibble balance (Metrologia 2025,
+//!             doi 10.1088/1681-7575/ae1dfc, section on the moving mode); gate averages by exact integration.
+//! # Formula   U_i = v_i [Σ_k b_k <ζ^k>_i + b_d τ_i] + E_0 + E_1 τ_i
+//!             <ζ^k> = [(ζ + D/2)^(k+1) − (ζ − D/2)^(k+1)] / [(k + 1) D],   D = |v| · gate
+//!     U_i   voltage of the coil in gate i                         V
+//!     v_i   velocity in gate i                                    m/s
+//!     ζ_i   position from the weighing position at mid gate       m
+//!     τ_i   time from the middle of the weighing                  h
+//!     b_0   geometric factor at the weighing position and time    T m
+//!     E_0   thermal voltage                                       V
+//! Multiplying by v leaves the thermal voltage an additive term: sweeps up and down tell it from b_0.
+//! # Valid for sweeps in both directions that enclose the weighing position.
+
+use super::{scaled, Method, WorkedExample};
+use crate::diagnostic::{Code, Problem};
+use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
+use crate::numeric::elementary::powi;
+use crate::numeric::{self, least_squares::fit};
+
+/// The registry's line.
+pub static METHOD: Method = Method {
+    info: MethodInfo {
+        name: "profile-fit",
+        title: "Profile fit of the moving mode",
+        source: "two-mode Kibble balance, moving-mode model; Metrologia 2025, doi 10.1088/1681-7575/ae1dfc",
+        formula: "U_i = v_i [Σ_k b_k <ζ^k>_i + b_d τ_i] + E_0 + E_1 τ_i",
+        symbols: &[
+            ("U_i", "voltage of the coil in one gate", "V"),
+            ("v_i", "velocity in one gate", "m/s"),
+            ("ζ_i", "position from the weighing position", "m"),
+            ("τ_i", "time from the middle of the weighing", "s"),
+            ("b_0", "geometric factor at weighing position and time", "T m"),
+            ("E_0", "thermal voltage", "V"),
+        ],
+        valid_for: "sweeps in both directions enclosing the weighing position",
+    },
+    examples: &[WorkedExample {
+        source: "parameters put in by hand: b_0 = 540 T m, b_1 = 3 T, b_2 = −200 T/m, E_0 = 0.2 µV",
+        given: "two noiseless sweeps of 41 gates, gate averages by exact integration",
+        quantity: "b_0/(T m)",
+        printed: "540.000000",
+        found: noiseless_example,
+    }],
+};
+
+/// The rule: columns v and U; outputs b_0 … b_K, b_d (per hour), E_0, E_1 (per hour).
+#[derive(Debug, Clone)]
+pub struct ProfileFit {
+    /// Sweep of each gate; serial correlation is looked for inside a sweep only.
+    pub sweeps: Vec<i64>,
+    /// ζ at mid gate, m.
+    pub positions: Vec<f64>,
+    /// τ at mid gate, h.
+    pub hours: Vec<f64>,
+    /// Length of a gate, s.
+    pub gate: f64,
+    /// Order K of the polynomial.
+    pub order: usize,
+    /// Whether drift of b and of the thermal voltage are fitted.
+    pub drift: bool,
+}
+
+impl ProfileFit {
+    /// The regressors that multiply v, and those that stand alone. Positions are scaled to centimetres inside.
+    fn design(&self, v: &[f64]) -> (Vec<Vec<f64>>, Vec<Vec<f64>>) {
+        let mut shaped: Vec<Vec<f64>> = (0..=self.order)
+            .map(|k| self.positions.iter().zip(v).map(|(z, v)| gate_average(*z, v.abs() * self.gate, k)).collect())
+            .collect();
+        let mut alone = vec![vec![1.0; v.len()]];
+        if self.drift {
+            shaped.push(self.hours.clone());
+            alone.push(self.hours.clone());
+        }
+        (shaped, alone)
+    }
+
+    /// Lag-1 autocorrelation of residuals, averaged over sweeps.
+    fn autocorrelation(&self, residuals: &[f64]) -> f64 {
+        let (mut products, mut squares) = (0.0, 0.0);
+        for index in 0..residuals.len() {
+            squares += residuals[index] * residuals[index];
+            if index > 0 && self.sweeps[index] == self.sweeps[index - 1] {
+                products += residuals[index] * residuals[index - 1];
+            }
+        }
+        if squares > 0.0 { products / squares } else { 0.0 }
+    }
+}
+
+impl Estimator for ProfileFit {
+    fn outputs(&self) -> usize {
+        self.order + 2 + if self.drift { 2 } else { 0 }
+    }
+
+    fn estimate(&self, columns: &[&[f64]]) -> Result<Estimate, Problem> {
+        let [v, u] = columns else { return Err(Problem::new(Code::DesignIncomplete, "A profile fit needs velocity and voltage.")) };
+        if v.len() != self.positions.len() || u.len() != v.len() || self.hours.len() != v.len() || self.sweeps.len() != v.len() {
+            return Err(Problem::new(Code::DesignIncomplete, "The columns of a moving phase have unlike numbers of gates."));
+        }
+        let (shaped, alone) = self.design(v);
+        let regressors: Vec<Vec<f64>> = shaped
+            .iter()
+            .map(|shape| shape.iter().zip(*v).map(|(shape, v)| shape * v).collect())
+            .chain(alone.iter().cloned())
+            .collect();
+        let references: Vec<&[f64]> = regressors.iter().map(Vec::as_slice).collect();
+        let found = fit(&references, u, None)?;
+        let r1 = self.autocorrelation(&found.residuals);
+        let inflation = if r1 > 0.0 { (1.0 + r1) / (1.0 - r1) } else { 1.0 };
+        let variance = inflation * found.residual_sum_of_squares / found.degrees_of_freedom;
+        let by_velocity = velocity_response(&found, &shaped);
+        Ok(Estimate {
+            own_covariance: scaled(&found.unscaled_covariance, variance),
+            degrees_of_freedom: found.degrees_of_freedom,
+            decisions: vec![
+                Decision { what: "order of the profile".into(), decided: format!("{}", self.order) },
+                Decision { what: "lag-1 autocorrelation of residuals".into(), decided: format!("{r1:.3}, variance × {inflation:.3}") },
+            ],
+            residuals: found.residuals.clone(),
+            values: found.coefficients.clone(),
+            jacobian: vec![by_velocity, found.jacobian],
+        })
+    }
+}
+
+/// d coefficient / d v_i: v_i shapes every regressor it multiplies.
+fn velocity_response(found: &numeric::least_squares::Fit, shaped: &[Vec<f64>]) -> Vec<Vec<f64>> {
+    let mut response = vec![vec![0.0; shaped[0].len()]; found.coefficients.len()];
+    for (column, shape) in shaped.iter().enumerate() {
+        for (row, by_entry) in response.iter_mut().zip(found.design_response(column)) {
+            row.iter_mut().zip(by_entry).zip(shape).for_each(|((cell, derivative), shape)| *cell += derivative * shape);
+        }
+    }
+    response
+}
+
+/// Mean of ζ^k over a gate of length `d` about `zeta`.
+fn gate_average(zeta: f64, d: f64, k: usize) -> f64 {
+    let exponent = k as i32;
+    if d == 0.0 || k < 2 {
+        return powi(zeta, exponent);
+    }
+    let (upper, lower) = (zeta + d / 2.0, zeta - d / 2.0);
+    (powi(upper, exponent + 1) - powi(lower, exponent + 1)) / (f64::from(exponent + 1) * d)
+}
+
+fn noiseless_example() -> f64 {
+    let gates = 41;
+    let position = |index: usize| (index as f64 - 20.0) * 1e-3;
+    let mut rule = ProfileFit { sweeps: vec![], positions: vec![], hours: vec![], gate: 0.1, order: 2, drift: false };
+    let (mut v, mut u) = (Vec::new(), Vec::new());
+    for sweep in [1i64, -1] {
+        for index in 0..gates {
+            let speed = sweep as f64 * 2e-3;
+            let zeta = position(index);
+            rule.sweeps.push(sweep);
+            rule.positions.push(zeta);
+            rule.hours.push(0.0);
+            v.push(speed);
+            u.push(speed * (540.0 + 3.0 * zeta - 200.0 * gate_average(zeta, 2e-4, 2)) + 0.2e-6);
+        }
+    }
+    rule.estimate(&[&v, &u]).map_or(f64::NAN, |estimate| estimate.values[0])
+}

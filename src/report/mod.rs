@@ -1,0 +1,16 @@
+//! From results and prose to pages.
+//!
+//! Prose becomes Typst markup ([`prose`]), a template arranges it ([`template`]), the typesetter makes the pages and
+//! the PDF ([`typeset`]).
+
+pub mod chart;
+pub mod literal;
+pub mod markup;
+pub mod math;
+pub mod page;
+pub mod prose;
+pub mod template;
+pub mod typeset;
+mod world;
+
+pub use markup::Markup;
