@@ -1,1 +1,5 @@
-fn main(){}
+//! Arguments, one command, exit status.
+
+fn main() -> std::process::ExitCode {
+    libripens::command::run()
+}

@@ -60,6 +60,7 @@ codes! {
     OutOfRange "out_of_range" Fault "A reading lies outside the range of its instrument.";
     OutOfValidity "out_of_validity" Fault "A value lies outside the range in which a formula is valid.";
     PathOutside "path_outside" Fault "A path leaves the laboratory folder.";
+    PdfUnreadable "pdf_unreadable" Fault "A PDF cannot be read back as a report.";
     ProseUnreadable "prose_unreadable" Fault "Prose uses something a report cannot typeset.";
     RecordUnreadable "record_unreadable" Fault "A record is no readable text, or its front matter is damaged.";
     RuleDated "rule_dated" Fault "A rule is dated after the data it judges.";

@@ -134,8 +134,8 @@ pub fn draw(chart: &Chart, width_mm: f64, height_mm: f64) -> String {
 
     let mut parts = vec![bands(chart, &frame)];
     parts.push(ticks_drawn(&frame, &x_ticks, &y_ticks));
-    parts.extend(series.iter().enumerate().map(|(index, series)| marks::series(series, index, &frame)));
     parts.push(levels(chart, &frame));
+    parts.extend(series.iter().enumerate().map(|(index, series)| marks::series(series, index, &frame)));
     parts.push(labels(chart, &frame, &x_ticks, &y_ticks, height_mm));
     parts.push(legend_drawn(&legend, &frame));
     format!(

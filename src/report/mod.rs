@@ -4,6 +4,7 @@
 //! the PDF ([`typeset`]).
 
 pub mod chart;
+pub mod listing;
 pub mod literal;
 pub mod markup;
 pub mod math;
@@ -14,3 +15,6 @@ pub mod typeset;
 mod world;
 
 pub use markup::Markup;
+
+/// Complaints of report records, without typesetting them.
+pub fn examine_reports(_engine: &crate::block::Engine) {}

@@ -1,0 +1,9 @@
+//! `audit`.
+use super::{Outcome, Stopped};
+/// x
+#[derive(Debug, clap::Args)]
+pub struct Audit {}
+impl Audit {
+    /// Runs the command.
+    pub fn run(self) -> Result<Outcome, Stopped> { Err(Stopped::because("not yet")) }
+}

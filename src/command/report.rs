@@ -1,0 +1,9 @@
+//! `report`.
+use super::{Outcome, Stopped};
+/// x
+#[derive(Debug, clap::Args)]
+pub struct Report {}
+impl Report {
+    /// Runs the command.
+    pub fn run(self) -> Result<Outcome, Stopped> { Err(Stopped::because("not yet")) }
+}

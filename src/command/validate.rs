@@ -1,0 +1,9 @@
+//! `validate`.
+use super::{Outcome, Stopped};
+/// x
+#[derive(Debug, clap::Args)]
+pub struct Validate {}
+impl Validate {
+    /// Runs the command.
+    pub fn run(self) -> Result<Outcome, Stopped> { Err(Stopped::because("not yet")) }
+}
