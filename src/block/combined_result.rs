@@ -68,6 +68,7 @@ fn combine<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
 
 fn name<'e>(engine: &'e Engine<'e>, block: &Block, combined: Quantity<'e>, listed: &str) {
     let subject = subject(block);
+    let of_item = block.fields().text("item").and_then(|item| engine.blocks().get(&item.text)).map(Block::label);
     let (path, symbol, words, shown) = match combined.kind() {
         Kind::Mass => ("mass", format!("m_{subject}"), "mass", "kg"),
         Kind::ConventionalMass => ("conventional_mass", format!("m_c,{subject}"), "conventional mass", "kg"),
@@ -75,7 +76,8 @@ fn name<'e>(engine: &'e Engine<'e>, block: &Block, combined: Quantity<'e>, liste
         kind => ("value", format!("y_{subject}"), kind.word(), kind.default_unit()),
     };
     let _scope = engine.builder.scope(block.name(), Some(&combination::METHOD.info));
-    combined.alias().result(path, &symbol, &format!("{words}, mean of {listed}"), &unit(shown));
+    let label = of_item.map_or_else(|| format!("{words}, mean of {listed}"), |label| format!("{words} of {label}"));
+    combined.alias().result(path, &symbol, &label, &unit(shown));
 }
 
 /// The conventional mass of a combined mass, with the density of the item.

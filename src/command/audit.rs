@@ -1,9 +1,75 @@
-//! `audit`.
-use super::{Outcome, Stopped};
-/// x
+//! `audit`: does a report prove itself?
+
+use super::{Outcome, Stopped, disk, terminal};
+use crate::register::audit::CANNOT_SAY;
+use crate::register::{Audit as Checks, audit_report, originals};
+use std::path::{Path, PathBuf};
+
+/// Checks a report from its PDF alone: attachments against their list, every result re-computed from the attached
+/// readings, every page set anew and compared byte for byte. One line a check. Needs no network and no laboratory folder.
 #[derive(Debug, clap::Args)]
-pub struct Audit {}
+pub struct Audit {
+    /// The report
+    pdf: PathBuf,
+    /// Print the checks as JSON
+    #[arg(long)]
+    json: bool,
+    /// Write the attached records and raw data into this folder, which must not exist, instead of checking
+    #[arg(long, value_name = "FOLDER", conflicts_with = "json")]
+    extract: Option<PathBuf>,
+}
+
+/// A report larger than this is not read.
+const LARGEST: u64 = 1 << 30;
+
 impl Audit {
     /// Runs the command.
-    pub fn run(self) -> Result<Outcome, Stopped> { Err(Stopped::because("not yet")) }
+    pub fn run(self) -> Result<Outcome, Stopped> {
+        let bytes = read(&self.pdf)?;
+        if let Some(folder) = &self.extract {
+            return extract(&bytes, folder);
+        }
+        let progress = terminal::progress("re-computing the report");
+        let audit = audit_report(&bytes).map_err(|problem| Stopped(format!("{}: {}", self.pdf.display(), problem.message)))?;
+        progress.finish_and_clear();
+        match self.json {
+            true => terminal::print(&format!("{}\n", serde_json::to_string_pretty(&audit).unwrap_or_default())),
+            false => terminal::print(&lines(&audit)),
+        }
+        Ok(if audit.is_clean() { Outcome::AllWell } else { Outcome::Faults })
+    }
+}
+
+fn read(path: &Path) -> Result<Vec<u8>, Stopped> {
+    let unreadable = |error: std::io::Error| Stopped(format!("{} cannot be read: {error}", path.display()));
+    let size = std::fs::metadata(path).map_err(unreadable)?.len();
+    if size > LARGEST {
+        return Err(Stopped(format!("{} has {size} bytes; a report has at most {LARGEST}", path.display())));
+    }
+    std::fs::read(path).map_err(unreadable)
+}
+
+fn lines(audit: &Checks) -> String {
+    let rows: Vec<Vec<String>> =
+        audit.checks.iter().map(|check| vec![check.verdict.word().to_string(), check.what.to_string(), check.says.clone()]).collect();
+    format!("{}\n{CANNOT_SAY}\n", terminal::columns(&rows, &[false, false, false]))
+}
+
+/// Writes the original files; nothing is overwritten and nothing leaves the folder.
+fn extract(bytes: &[u8], folder: &Path) -> Result<Outcome, Stopped> {
+    if folder.exists() {
+        return Err(Stopped(format!("{} exists already; name a folder that does not", folder.display())));
+    }
+    let files = originals(bytes).map_err(|problem| Stopped(problem.message))?;
+    let mut written = 0;
+    for (path, content) in files.iter().filter(|(path, _)| !path.is_empty()) {
+        let inside = crate::block::engine::resolve(path, "").map_err(|problem| Stopped(problem.message))?;
+        let target = folder.join(inside);
+        let parent = target.parent().unwrap_or(folder);
+        std::fs::create_dir_all(parent).map_err(|error| Stopped(format!("{} cannot be made: {error}", parent.display())))?;
+        disk::write_whole(&target, content)?;
+        written += 1;
+    }
+    terminal::print(&format!("{}: {written} files as they were attached\n", folder.display()));
+    Ok(Outcome::AllWell)
 }

@@ -62,8 +62,13 @@ impl Intake for Disk {
     }
 
     fn today(&self) -> NaiveDate {
-        chrono::Local::now().date_naive()
+        today()
     }
+}
+
+/// Today's date where the program runs.
+pub fn today() -> NaiveDate {
+    chrono::Local::now().date_naive()
 }
 
 /// Writes a file whole or not at all: into a neighbour first, which then takes its name.

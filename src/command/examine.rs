@@ -24,7 +24,9 @@ impl Examine {
         let complaints = engine.complaints();
         terminal::print(&terminal::complaints_text(&engine, &complaints));
         if complaints.list.is_empty() {
-            terminal::print(&format!("{} records, {} blocks: nothing to complain of.\n", engine.records.len(), engine.blocks().len()));
+            let records = terminal::counted(engine.records.len(), "record");
+            let blocks = terminal::counted(engine.blocks().len(), "measurement block");
+            terminal::print(&format!("{records}, {blocks}: nothing to complain of.\n"));
         }
         Ok(terminal::outcome(&complaints))
     }

@@ -2,7 +2,7 @@
 
 use super::folder::Folder;
 use super::{Outcome, Stopped, terminal};
-use crate::report::listing::{Results, list_results};
+use crate::report::listing::{Listed, Results, list_results};
 use std::path::PathBuf;
 
 /// Re-runs every computation from the records and raw data, and prints each result with its standard uncertainty.
@@ -40,14 +40,19 @@ impl Reduce {
 }
 
 fn table(results: &Results, all: bool) -> String {
-    let shown = results.quantities.iter().filter(|one| all || one.origin.what == "computed");
-    let rows: Vec<Vec<String>> = shown
-        .map(|one| {
-            let freedom = one.degrees_of_freedom.map_or_else(|| "∞".to_string(), |freedom| format!("{freedom:.1}"));
-            let freedom = if one.standard_uncertainty.is_some_and(|u| u > 0.0) { freedom } else { String::new() };
-            vec![one.name.clone(), one.printed.clone(), freedom, one.label.clone()]
-        })
-        .collect();
+    let shown: Vec<&Listed> = results.quantities.iter().filter(|one| all || one.origin.what == "computed").collect();
+    if shown.is_empty() {
+        return String::new();
+    }
     let heads = vec!["result".to_string(), "value(u)".into(), "ν_eff".into(), "what it is".into()];
-    terminal::columns(&[vec![heads], rows].concat(), &[false, true, true, false])
+    let rows: Vec<Vec<String>> = std::iter::once(heads).chain(shown.into_iter().map(row)).collect();
+    terminal::columns(&rows, &[false, true, true, false])
+}
+
+fn row(one: &Listed) -> Vec<String> {
+    let printed = one.rows.map_or_else(|| one.printed.clone(), |rows| terminal::counted(rows, "value"));
+    // A column has its degrees of freedom row by row, an exact value none.
+    let uncertain = one.standard_uncertainty.is_some_and(|uncertainty| uncertainty > 0.0);
+    let freedom = if uncertain { terminal::degrees_of_freedom(one.degrees_of_freedom.unwrap_or(f64::INFINITY)) } else { String::new() };
+    vec![one.name.clone(), printed, freedom, one.label.clone()]
 }

@@ -1,7 +1,7 @@
 //! Latitudes and longitudes: `47.312° N`, `8° 24′ 54″ E`.
 
+use super::cursor::Cursor;
 use super::decimal::Decimal;
-use super::number::Cursor;
 use super::unit::Unit;
 use crate::diagnostic::{Code, Problem};
 
@@ -130,7 +130,8 @@ mod tests {
     #[test]
     fn what_is_wrong_is_said() {
         let code = |text, axis| parse_coordinate(text, axis).unwrap_err().code;
-        for bad in ["", "47.312", "47.312°", "47.312 N", "47.312° E", "-47.3° N", "47.3° N x", "°N", "47.312° n"] {
+        for bad in ["", "47.312", "47.312°", "47.312 N", "47.312° E", "-47.3° N", "47.3° N x", "°N", "47.312° n"]
+        {
             assert_eq!(code(bad, Axis::Latitude), Code::NotationUnreadable, "{bad}");
         }
         assert_eq!(code("47,3° N", Axis::Latitude), Code::DecimalComma);

@@ -258,7 +258,9 @@ mod tests {
         assert_eq!(sum.map(|sum| sum.plain_text()).as_deref(), Some("293.284"));
         assert_eq!(decimal("1").minus(&decimal("1.000")).map(|zero| zero.negative), Some(false));
         assert!(decimal("1e300").plus(&decimal("1e-300")).is_none());
-        assert!(decimal("-2") < decimal("-1.99") && decimal("1.0") == decimal("1.00") && decimal("0") == decimal("-0.0"));
+        assert!(
+            decimal("-2") < decimal("-1.99") && decimal("1.0") == decimal("1.00") && decimal("0") == decimal("-0.0")
+        );
     }
 
     proptest! {

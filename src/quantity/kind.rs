@@ -220,7 +220,10 @@ mod tests {
     #[test]
     fn every_rule_keeps_the_dimension_and_sums_commute() {
         for &a in Kind::ALL {
-            assert_eq!(Unit::parse(a.default_unit()).ok().map(|unit| unit.dimension()), a.dimension().or(Some(Dimension::ONE)));
+            assert_eq!(
+                Unit::parse(a.default_unit()).ok().map(|unit| unit.dimension()),
+                a.dimension().or(Some(Dimension::ONE))
+            );
             for &b in Kind::ALL {
                 assert_eq!(Kind::sum(a, b), Kind::sum(b, a));
                 for result in [Kind::sum(a, b), Kind::difference(a, b)].into_iter().flatten() {

@@ -5,6 +5,7 @@
 //! Nothing here knows places in files; what is wrong is a [`Problem`](crate::diagnostic::Problem) with a byte range.
 
 mod coordinate;
+mod cursor;
 mod decimal;
 mod dimension;
 mod exact;
@@ -17,6 +18,8 @@ mod notation_tests;
 mod number;
 mod pieces;
 mod print;
+#[cfg(test)]
+mod print_tests;
 mod rounding;
 mod stated;
 mod symbol;

@@ -20,7 +20,10 @@ const MOST_BYTES: usize = 400;
 /// without coverage factor or distribution), `UnitUnknown`, or `NotationUnreadable` for everything else.
 pub fn parse_value(text: &str, kind: Kind) -> Result<StatedValue, Problem> {
     if text.len() > MOST_BYTES {
-        return Err(unreadable("the value is too long; expected a number with its unit and uncertainty", (0, text.len())));
+        return Err(unreadable(
+            "the value is too long; expected a number with its unit and uncertainty",
+            (0, text.len()),
+        ));
     }
     let Pieces { first, deviation, upper_limit, spread, trailer } = Pieces::read(text)?;
     let mut value = match (first, deviation, upper_limit) {
@@ -28,7 +31,12 @@ pub fn parse_value(text: &str, kind: Kind) -> Result<StatedValue, Problem> {
         (Some(lower), None, Some(upper)) => between_limits(lower, upper, spread, &trailer, kind)?,
         (Some(nominal), Some(deviation), None) => nominal_and_deviation(nominal, deviation, spread, &trailer, kind)?,
         (Some(value), None, None) => single(value, spread, &trailer, kind)?,
-        _ => return Err(unreadable("limits stand beside a deviation or ±; expected as in 1 mg to 2 mg", (0, text.len()))),
+        _ => {
+            return Err(unreadable(
+                "limits stand beside a deviation or ±; expected as in 1 mg to 2 mg",
+                (0, text.len()),
+            ));
+        }
     };
     value.text = text.into();
     Ok(value)
@@ -61,7 +69,8 @@ fn nominal_and_deviation(
     check(&nominal, Role::value(kind))?;
     check(&deviation, Role::difference(kind, &nominal))?;
     if nominal.uncertainty.or(nominal.spread).is_some() {
-        let message = "the nominal value carries an uncertainty; expected it on the deviation, as in 1 kg + 0.123(12) mg";
+        let message =
+            "the nominal value carries an uncertainty; expected it on the deviation, as in 1 kg + 0.123(12) mg";
         return Err(unreadable(message, nominal.number_range));
     }
     let uncertainty = uncertainty(&deviation, spread, trailer, kind)?;
@@ -115,13 +124,7 @@ fn spread_alone(spread: Option<Operand>, trailer: &Trailer, kind: Kind) -> Resul
     Ok(stated(0.0, unit, &number, uncertainty, trailer))
 }
 
-fn stated(
-    value: f64,
-    unit: Unit,
-    typed: &Decimal,
-    uncertainty: StatedUncertainty,
-    trailer: &Trailer,
-) -> StatedValue {
+fn stated(value: f64, unit: Unit, typed: &Decimal, uncertainty: StatedUncertainty, trailer: &Trailer) -> StatedValue {
     StatedValue {
         text: String::new(),
         value,
@@ -157,8 +160,11 @@ fn uncertainty(
 
 fn standard_uncertainty(value: &Operand, typed: &Decimal, trailer: &Trailer) -> Result<StatedUncertainty, Problem> {
     if trailer.coverage_factor.is_some() || trailer.shape.is_some() {
-        let message = "the digits in parentheses are a standard uncertainty, but a coverage factor or distribution follows";
-        return Err(unreadable(message, trailer.range).hint("write an expanded uncertainty as in 1.234 mg ± 0.024 mg (k = 2)"));
+        let message =
+            "the digits in parentheses are a standard uncertainty, but a coverage factor or distribution follows";
+        return Err(
+            unreadable(message, trailer.range).hint("write an expanded uncertainty as in 1.234 mg ± 0.024 mg (k = 2)")
+        );
     }
     Ok(StatedUncertainty::Standard { u: value.unit.difference_decimal_to_si(typed) })
 }
@@ -181,10 +187,15 @@ fn spread_uncertainty(spread: &Operand, trailer: &Trailer) -> Result<StatedUncer
     match (trailer.coverage_factor, trailer.shape) {
         (Some(coverage_factor), None) => Ok(StatedUncertainty::Expanded { expanded: width, coverage_factor }),
         (None, Some(shape)) => Ok(StatedUncertainty::HalfWidth { half_width: width, shape }),
-        (Some(_), Some(_)) => Err(unreadable("both a coverage factor and a distribution are stated; expected one", trailer.range)),
+        (Some(_), Some(_)) => {
+            Err(unreadable("both a coverage factor and a distribution are stated; expected one", trailer.range))
+        }
         (None, None) => {
             let end = spread.unit_range.1.max(spread.number_range.1);
-            Err(incomplete("the uncertainty behind ± has no coverage factor and no distribution", (spread.number_range.0, end)))
+            Err(incomplete(
+                "the uncertainty behind ± has no coverage factor and no distribution",
+                (spread.number_range.0, end),
+            ))
         }
     }
 }
@@ -241,7 +252,9 @@ fn check(operand: &Operand, role: Role) -> Result<(), Problem> {
     }
     if unit.is_celsius() && (role.is_difference || !role.kind.is_scale_temperature()) {
         let message = "the unit °C belongs to a point on a temperature scale; expected K for a difference";
-        return Err(Problem::new(Code::KindMismatch, message).hint("write K").range(operand.unit_range.0, operand.unit_range.1));
+        return Err(Problem::new(Code::KindMismatch, message)
+            .hint("write K")
+            .range(operand.unit_range.0, operand.unit_range.1));
     }
     Ok(())
 }
@@ -266,7 +279,9 @@ fn wrong_dimension(operand: &Operand, role: Role) -> Problem {
 
 fn incomplete(message: &str, (start, end): (usize, usize)) -> Problem {
     let problem = Problem::new(Code::UncertaintyIncomplete, format!("{message}; expected (k = …) or a distribution"));
-    problem.hint("add (k = 2) for an expanded uncertainty, or rectangular, triangular or arcsine for limits").range(start, end)
+    problem
+        .hint("add (k = 2) for an expanded uncertainty, or rectangular, triangular or arcsine for limits")
+        .range(start, end)
 }
 
 fn unreadable(message: &str, (start, end): (usize, usize)) -> Problem {

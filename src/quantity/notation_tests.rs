@@ -67,7 +67,8 @@ fn nominal_value_plus_deviation() {
     assert_eq!((mass.standard_uncertainty(), mass.decimals), (Some(1.2e-8), 3));
     assert_eq!(mass.unit.text(), "mg");
     assert_eq!(mass.nominal_unit.map(|unit| unit.text()).as_deref(), Some("kg"));
-    for minus in ["1 kg - 0.123(12) mg", "1 kg \u{2212} 0.123(12) mg", "1\u{a0}kg\u{a0}\u{2212}\u{a0}0.123(12)\u{a0}mg"] {
+    for minus in ["1 kg - 0.123(12) mg", "1 kg \u{2212} 0.123(12) mg", "1\u{a0}kg\u{a0}\u{2212}\u{a0}0.123(12)\u{a0}mg"]
+    {
         assert_eq!(value(minus, Kind::ConventionalMass).value, 0.999999877, "{minus}");
     }
     let certificate = value("1 kg + 0.119 mg ± 0.026 mg (k = 2)", Kind::Mass);
@@ -193,7 +194,12 @@ fn every_wrong_form_has_its_code() {
     for (text, kind, code) in rows {
         let problem = problem(text, kind);
         assert_eq!(problem.code, code, "{text}: {}", problem.message);
-        assert!(problem.range.is_some_and(|(start, end)| start <= end && end <= text.len() && text.get(start..end).is_some()), "{text}");
+        assert!(
+            problem
+                .range
+                .is_some_and(|(start, end)| start <= end && end <= text.len() && text.get(start..end).is_some()),
+            "{text}"
+        );
     }
 }
 
@@ -214,8 +220,39 @@ fn messages_say_what_was_found_and_expected() {
 /// Fragments that a value is made of, whole and broken.
 fn fragments() -> impl Strategy<Value = String> {
     let pieces = [
-        "1", "0.123", "(12)", "(", ")", "±", " ", "mg", "kg", "°C", "K", "/", "k", "=", "2", "ν", ",", "rectangular", "to",
-        "+", "-", "\u{2212}", "e-6", "× 10⁻⁶", "\u{202f}", ".", "m³", "%", "∞", "e", "×", "é", "10",
+        "1",
+        "0.123",
+        "(12)",
+        "(",
+        ")",
+        "±",
+        " ",
+        "mg",
+        "kg",
+        "°C",
+        "K",
+        "/",
+        "k",
+        "=",
+        "2",
+        "ν",
+        ",",
+        "rectangular",
+        "to",
+        "+",
+        "-",
+        "\u{2212}",
+        "e-6",
+        "× 10⁻⁶",
+        "\u{202f}",
+        ".",
+        "m³",
+        "%",
+        "∞",
+        "e",
+        "×",
+        "é",
+        "10",
     ];
     proptest::collection::vec(proptest::sample::select(pieces.to_vec()), 0..14).prop_map(|pieces| pieces.concat())
 }

@@ -1,7 +1,7 @@
 //! The pieces of a stated value, in the order in which they stand, before anybody asks whether they fit together.
 
+use super::cursor::{Cursor, Numeral};
 use super::decimal::Decimal;
-use super::number::{Cursor, Numeral};
 use super::stated::Shape;
 use super::unit::Unit;
 use crate::diagnostic::{Code, Problem};
@@ -59,7 +59,9 @@ impl Pieces {
 
 /// `+/-` and `+-` are typewriter forms of ±.
 fn refuse_typewriter_sign(cursor: &Cursor) -> Result<(), Problem> {
-    let Some(form) = ["+/-", "+-", "-/+"].into_iter().find(|form| cursor.rest().starts_with(form)) else { return Ok(()) };
+    let Some(form) = ["+/-", "+-", "-/+"].into_iter().find(|form| cursor.rest().starts_with(form)) else {
+        return Ok(());
+    };
     let problem = Problem::new(Code::NotationUnreadable, format!("\"{form}\" stands where ± is expected"));
     Err(problem.hint("write ±").range(cursor.at, cursor.at + form.len()))
 }
@@ -93,7 +95,9 @@ fn bracketed(cursor: &mut Cursor, start: usize) -> Result<(Decimal, Option<Decim
     let spread = cursor.numeral()?;
     cursor.skip_spaces();
     if !cursor.take(')') {
-        return Err(cursor.unreadable("the bracket before ± is not closed behind the number that follows".into(), start));
+        return Err(
+            cursor.unreadable("the bracket before ± is not closed behind the number that follows".into(), start)
+        );
     }
     if value.uncertainty.or(spread.uncertainty).is_some() {
         return Err(cursor.unreadable("an uncertainty stands in parentheses and another behind ±".into(), start));
@@ -175,7 +179,7 @@ fn unit_length(text: &str) -> usize {
 fn starts_with_own_word(text: &str) -> bool {
     let word = first_word(text);
     let named = |name: &&str| word == *name;
-    word == "to" || Shape::from_word(word).is_some() || OTHER_SHAPES.iter().any(|name| named(name)) || NAMES.iter().any(named)
+    word == "to" || Shape::from_word(word).is_some() || OTHER_SHAPES.iter().any(named) || NAMES.iter().any(named)
 }
 
 /// Names of distributions that need another notation here.
@@ -246,7 +250,8 @@ fn settings(cursor: &mut Cursor, trailer: &mut Trailer) -> Result<(), Problem> {
         if !cursor.take(',') && !cursor.take(';') {
             let start = cursor.at;
             cursor.at = cursor.text.trim_end().len();
-            return Err(cursor.unreadable("a bracket behind the value is not closed; expected as in (k = 2, ν = 20)".into(), start));
+            return Err(cursor
+                .unreadable("a bracket behind the value is not closed; expected as in (k = 2, ν = 20)".into(), start));
         }
     }
 }
@@ -274,7 +279,9 @@ fn setting(cursor: &mut Cursor, trailer: &mut Trailer) -> Result<(), Problem> {
     }
     let number = cursor.numeral()?;
     if number.value.negative || number.value.is_zero() || number.uncertainty.is_some() {
-        return Err(cursor.unreadable(format!("{} is unreadable; expected a number above zero", cursor.since(start)), start));
+        return Err(
+            cursor.unreadable(format!("{} is unreadable; expected a number above zero", cursor.since(start)), start)
+        );
     }
     *slot = Some(number.value.to_f64());
     Ok(())

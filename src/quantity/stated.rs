@@ -55,7 +55,9 @@ impl StatedUncertainty {
             StatedUncertainty::Standard { u } => Some(u),
             StatedUncertainty::Expanded { expanded, coverage_factor } => Some(expanded / coverage_factor),
             StatedUncertainty::HalfWidth { half_width, shape } => Some(shape.standard_uncertainty(half_width)),
-            StatedUncertainty::Limits { lower, upper, shape } => Some(shape.standard_uncertainty((upper - lower) / 2.0)),
+            StatedUncertainty::Limits { lower, upper, shape } => {
+                Some(shape.standard_uncertainty((upper - lower) / 2.0))
+            }
         }
     }
 }

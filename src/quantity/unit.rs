@@ -156,11 +156,11 @@ impl Unit {
         }
     }
 
-    /// The same unit with another prefix on its first symbol; `None` where it takes none.
+    /// The same unit with another prefix on its first symbol; `None` where it takes none or stands below a solidus.
     pub(super) fn with_prefix(&self, prefix: i32) -> Option<Unit> {
         symbol::prefix_of(prefix)?;
         let mut parts = self.parts.clone();
-        let first = parts.first_mut().filter(|part| part.symbol.prefixable)?;
+        let first = parts.first_mut().filter(|part| part.symbol.prefixable && part.exponent > 0)?;
         first.prefix = prefix;
         Unit::from_parts(parts)
     }

@@ -103,7 +103,7 @@ impl Reader<'_> {
 
     fn power(&mut self, sign: i32) -> Result<(), Problem> {
         let (symbol, prefix) = self.symbol()?;
-        let exponent = self.exponent()?;
+        let exponent = if symbol::is_one(symbol) { 1 } else { self.exponent()? };
         self.parts.push(Part { symbol, prefix, exponent: sign * exponent });
         Ok(())
     }
@@ -217,7 +217,9 @@ mod tests {
 
     #[test]
     fn all_ways_to_write_a_density() {
-        for text in ["kg/m3", "kg m-3", "kg·m⁻³", "kg/m^3", "kg m^-3", "kg*m-3", "kg\u{a0}m⁻³", " kg / m³ ", "kg m\u{2212}3"] {
+        for text in
+            ["kg/m3", "kg m-3", "kg·m⁻³", "kg/m^3", "kg m^-3", "kg*m-3", "kg\u{a0}m⁻³", " kg / m³ ", "kg m\u{2212}3"]
+        {
             assert_eq!(unit(text).dimension(), Dimension::DENSITY, "{text}");
             assert_eq!(unit(text).text(), "kg m⁻³", "{text}");
         }
@@ -267,9 +269,34 @@ mod tests {
         for bad in ["ug", "Kg", "hpa", "m°C", "ha", "xyz", "kPA", "%RH", "µ", "ppb", "k1"] {
             assert_eq!(code(bad), Code::UnitUnknown, "{bad}");
         }
-        for bad in ["", " ", "/", "kg/", "kg/m/s2", "J/kg K", "kg//m", "kg/(m s2", "m^", "m0", "m13", "m2kg", "m·", "/°C",
-            "°C/h", "°C2", "kg)", "·m", "2 m", "m 2", "m-", "Da12 Da12", "m⁻"]
-        {
+        for bad in [
+            "",
+            " ",
+            "/",
+            "kg/",
+            "kg/m/s2",
+            "J/kg K",
+            "kg//m",
+            "kg/(m s2",
+            "m^",
+            "m0",
+            "m13",
+            "m2kg",
+            "m·",
+            "/°C",
+            "°C/h",
+            "°C2",
+            "kg)",
+            "·m",
+            "2 m",
+            "m 2",
+            "m-",
+            "12",
+            "1²",
+            "10/K",
+            "Da12 Da12",
+            "m⁻",
+        ] {
             assert_eq!(code(bad), Code::NotationUnreadable, "{bad}");
         }
         let problem = Unit::parse("kg/ug").unwrap_err();

@@ -249,7 +249,7 @@ mod tests {
     #[test]
     fn an_appended_revision_counts() {
         let original = sample();
-        let mut update = lopdf::IncrementalDocument::load_mem(&original).expect("loads");
+        let mut update = lopdf::IncrementalDocument::create_from(original.clone(), Document::load_mem(&original).expect("loads"));
         update.new_document.add_object(Object::string_literal("later"));
         let mut bytes = Vec::new();
         update.save_to(&mut bytes).expect("saves");

@@ -3,18 +3,25 @@
 //! Prose becomes Typst markup ([`prose`]), a template arranges it ([`template`]), the typesetter makes the pages and
 //! the PDF ([`typeset`]).
 
+mod world;
 pub mod chart;
+pub mod compile;
+pub mod derivation;
+pub mod dossier;
+pub mod expression;
+pub mod figures;
+pub mod front;
 pub mod listing;
 pub mod literal;
 pub mod markup;
 pub mod math;
 pub mod page;
+pub mod parts;
 pub mod prose;
+pub mod prose_text;
+pub mod table;
 pub mod template;
 pub mod typeset;
-mod world;
 
+pub use compile::{Report, examine_reports, make_report, report_records};
 pub use markup::Markup;
-
-/// Complaints of report records, without typesetting them.
-pub fn examine_reports(_engine: &crate::block::Engine) {}
