@@ -77,6 +77,7 @@ pub static KIND: BlockKind = BlockKind {
         Output { path: "buoyancy", meaning: "buoyancy correction of the difference", unit: "mg" },
         Output { path: "series.N", meaning: "mean of series N, corrected for buoyancy", unit: "mg" },
         Output { path: "air.density", meaning: "mean air density over the weighings", unit: "kg m⁻³" },
+        Output { path: "air.density_at_weighings", meaning: "air density at each weighing", unit: "kg m⁻³" },
         Output { path: "air.temperature", meaning: "mean air temperature over the weighings", unit: "°C" },
         Output { path: "air.pressure", meaning: "mean air pressure over the weighings", unit: "hPa" },
     ],
@@ -538,8 +539,9 @@ fn surroundings<'e>(engine: &'e Engine<'e>, block: &Block, weighings: &Weighings
     let logged = LoggedAir::find(engine, &name, name.place)?;
     let times: Vec<f64> = weighings.list.iter().map(|weighing| weighing.time).collect();
     let air = logged.at(&times, |row| weighings.place(engine, row))?;
-    let _scope = engine.builder.scope(block.name(), Some(&air_density::METHOD.info));
-    let density = air_density::density(&engine.builder, air);
+    let _scope = engine.builder.scope(&format!("{}.air", block.name()), Some(&air_density::METHOD.info));
+    let label = format!("air density at the weighings of {}", block.name());
+    let density = air_density::density(&engine.builder, air).result("density_at_weighings", "ρ_i", &label, &unit("kg/m3"));
     Some(Surroundings { density, temperature: Some(air.temperature), pressure: Some(air.pressure) })
 }
 

@@ -9,7 +9,7 @@ use super::{BlockKind, Output, no_check};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Quantity, State};
 use crate::intake::Place;
-use crate::method::{self, conventional_mass, unit, volume};
+use crate::method::{conventional_mass, mass_on_day, unit, volume};
 use crate::quantity::Kind;
 use crate::record::Text;
 use chrono::NaiveDate;
@@ -180,12 +180,9 @@ impl<'e> Weight<'e> {
         let certified = self.certified(calibration)?;
         let drift = engine.bound(fields, "drift_since_calibration", &format!("{name}.drift"), "δ_drift", &format!("change of {} since its calibration", self.block.label()), Kind::MassDifference);
         let state = if calibration.words("state") == "vacuum" { State::Vacuum } else { State::Air };
-        let total = match drift {
-            Some(drift) => certified + drift,
-            None => certified.alias(),
-        };
+        let total = mass_on_day::on_day(certified, drift);
         let made = total.in_state(Some(state)).on_basis(calibration.text("basis").map(|basis| basis.text.into()));
-        let _scope = engine.builder.scope("", Some(&method::instrument_correction::METHOD.info));
+        let _scope = engine.builder.scope("", Some(&mass_on_day::METHOD.info));
         let label = format!("mass of {}", self.block.label());
         engine.builder.name(made.id, crate::graph::Name { path, symbol: format!("m_{name}"), label, unit: unit("kg") });
         Some(made)

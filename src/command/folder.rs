@@ -76,7 +76,9 @@ fn unknown_quantity(engine: &Engine, name: &str, path: &str) -> Stopped {
         graph.names.iter().filter(|(known, id)| known.starts_with(&prefix) && is_result(id)).map(|(known, _)| known.as_str()).collect();
     let lower = path.to_lowercase();
     let in_other_case = graph.names.keys().find(|known| known.to_lowercase() == lower).map(String::as_str);
-    let near = in_other_case.or_else(|| nearest(path, graph.names.keys().map(String::as_str)));
+    let longer = graph.names.keys().find(|known| known.strip_prefix(path).is_some_and(|rest| rest.starts_with('.'))).map(String::as_str);
+    let longer = longer.filter(|_| path.contains('.'));
+    let near = in_other_case.or(longer).or_else(|| nearest(path, graph.names.keys().map(String::as_str)));
     let advice = match near {
         Some(near) => format!("did you mean {near}?"),
         None if !of_block.is_empty() => format!("{name} gives {}", of_block.join(", ")),

@@ -107,7 +107,7 @@ impl Check {
             line("quantity", self.quantity.into()),
             line("printed", self.printed.into()),
             line("found", self.found_text()),
-            line("difference", format!("{:.1e}", self.difference)),
+            line("difference", if self.difference == 0.0 { "0".into() } else { format!("{:.1e}", self.difference) }),
             line("tolerance", format!("{:.1e}", self.tolerance)),
             line("agrees", verdict.into()),
             vec![String::new()],

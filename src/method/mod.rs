@@ -8,6 +8,7 @@ pub mod combination;
 pub mod comparator_sensitivity;
 pub mod conventional_mass;
 pub mod instrument_correction;
+pub mod mass_on_day;
 pub mod profile_fit;
 pub mod straight_line;
 pub mod substitution;
@@ -69,6 +70,7 @@ pub static METHODS: &[&Method] = &[
     &comparator_sensitivity::METHOD,
     &conventional_mass::METHOD,
     &instrument_correction::METHOD,
+    &mass_on_day::METHOD,
     &profile_fit::METHOD,
     &straight_line::METHOD,
     &substitution::METHOD,

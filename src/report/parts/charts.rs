@@ -9,6 +9,8 @@ use crate::report::chart::{Axis, Chart, Mean, Series, Style, figure};
 use crate::report::figures::Figure;
 
 const WIDTH_MM: f64 = 150.0;
+/// Two charts beside each other.
+const HALF_WIDTH_MM: f64 = 76.0;
 
 /// The chart that suits a block: of a comparison, of logged conditions, or of a combined result.
 pub fn chart_of(engine: &Engine, name: &str) -> Option<Markup> {
@@ -85,7 +87,7 @@ fn series_means(engine: &Engine, name: &str, comparison: &Comparison) -> Vec<(f6
 fn conditions(engine: &Engine, name: &str) -> Option<Markup> {
     let logged = engine.conditions(name)?;
     let density = ("air density", "ρ_a", crate::method::unit("kg/m3"), logged.density);
-    let mut made = Markup::new();
+    let mut made = Markup::code("#grid(columns: (1fr, 1fr), column-gutter: 6mm, ");
     for (words, symbol, unit, id) in logged.columns.iter().cloned().chain([density]) {
         let rows = engine.graph().value(id).rows().to_vec();
         let points = logged.times.iter().zip(&rows).map(|(time, value)| (*time, unit.from_si(*value), None)).collect();
@@ -99,8 +101,9 @@ fn conditions(engine: &Engine, name: &str) -> Option<Markup> {
             decimal_marker: marker(engine),
             ..Chart::default()
         };
-        made.push(&figure(&chart, WIDTH_MM, 36.0)).push_code("\n\n");
+        made.push_content(&figure(&chart, HALF_WIDTH_MM, 42.0)).push_code(", ");
     }
+    made.push_code(");\n\n");
     Some(made)
 }
 
