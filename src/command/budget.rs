@@ -3,7 +3,9 @@
 use super::folder::{Folder, find_quantity};
 use super::{Outcome, Stopped, terminal};
 use crate::block::Engine;
-use crate::graph::{Budget as GraphBudget, BudgetLine, Coverage, Graph, NodeId, Sensitivities, Source, budget, coverage, sensitivities};
+use crate::graph::{
+    Budget as GraphBudget, BudgetLine, Coverage, Graph, NodeId, Sensitivities, Source, budget, coverage, sensitivities,
+};
 use crate::quantity::{Decimal, Style, Unit, choose_unit};
 use crate::report::listing::print_quantity;
 use serde::Serialize;
@@ -102,7 +104,10 @@ impl Sheet {
     fn text(&self, all: bool) -> String {
         let title = format!("{}: {}\n\n", self.path, self.label);
         if self.budget.lines.is_empty() {
-            return format!("{title}  {}\n\nIt is exact, or nothing it rests on has an uncertainty: there is no budget.\n", self.printed);
+            return format!(
+                "{title}  {}\n\nIt is exact, or nothing it rests on has an uncertainty: there is no budget.\n",
+                self.printed
+            );
         }
         format!("{title}{}\n{}", self.result(), self.table(all))
     }
@@ -135,7 +140,8 @@ impl Sheet {
         let contribution = if unit.is_one() { "|c| u".to_string() } else { format!("|c| u/{}", bracketed(&unit)) };
         let heads = ["quantity", "symbol", "estimate", "u", "type", "distribution", "ν", "c", &contribution, "share"];
         let mut rows = vec![heads.map(String::from).to_vec()];
-        let (shown, folded): (Vec<_>, Vec<_>) = self.budget.lines.iter().partition(|line| all || line.share >= SMALLEST_SHARE);
+        let (shown, folded): (Vec<_>, Vec<_>) =
+            self.budget.lines.iter().partition(|line| all || line.share >= SMALLEST_SHARE);
         rows.extend(shown.iter().map(|line| self.row(line, &unit)));
         if !folded.is_empty() {
             let share: f64 = folded.iter().map(|line| line.share).sum();
@@ -214,7 +220,9 @@ impl Sheet {
         let decimal = |amount: f64, unit: &Unit| unit.difference_decimal_from_si(amount);
         let Some(whole) = decimal(self.budget.standard_uncertainty, unit) else { return String::new() };
         let decimals = whole.rounded_to_digits(3).decimals().max(0);
-        let Some(rounded) = decimal(contribution, unit).map(|amount| amount.rounded(decimals)) else { return String::new() };
+        let Some(rounded) = decimal(contribution, unit).map(|amount| amount.rounded(decimals)) else {
+            return String::new();
+        };
         if rounded.is_zero() && contribution > 0.0 {
             let last_digit = Decimal { negative: false, digits: 1, exponent: -decimals };
             return format!("< {}", self.style.number(&last_digit));
@@ -249,7 +257,9 @@ impl Sheet {
 /// The rows of every input that is a column.
 fn rows_of_columns(graph: &Graph) -> BTreeMap<Source, usize> {
     let columns = graph.inputs.iter().enumerate();
-    columns.filter_map(|(number, input)| Some((Source::Input(number as u32), graph.value(input.node).length()?))).collect()
+    columns
+        .filter_map(|(number, input)| Some((Source::Input(number as u32), graph.value(input.node).length()?)))
+        .collect()
 }
 
 /// An estimator of which the measurand uses the first output alone has that output as estimate.
@@ -257,9 +267,12 @@ fn complete(mut budget: GraphBudget, graph: &Graph, derivatives: &Sensitivities)
     for line in &mut budget.lines {
         let Source::Estimator(number) = line.source else { continue };
         let weights = derivatives.estimators.get(&number).map_or(&[][..], Vec::as_slice);
-        if let [first, rest @ ..] = weights && rest.iter().all(|weight| *weight == 0.0) {
+        if let [first, rest @ ..] = weights
+            && rest.iter().all(|weight| *weight == 0.0)
+        {
             line.sensitivity_coefficient = Some(*first);
-            line.estimate = graph.estimators.get(number as usize).and_then(|node| node.estimate.values.first().copied());
+            line.estimate =
+                graph.estimators.get(number as usize).and_then(|node| node.estimate.values.first().copied());
         }
     }
     budget

@@ -17,12 +17,15 @@ const DEEPEST: usize = 12;
 impl Disk {
     /// The folder at `root`.
     pub fn new(root: &Path) -> Result<Disk, Stopped> {
-        let root = root.canonicalize().map_err(|error| Stopped(format!("the folder {} cannot be read: {error}", root.display())))?;
+        let root = root
+            .canonicalize()
+            .map_err(|error| Stopped(format!("the folder {} cannot be read: {error}", root.display())))?;
         Ok(Disk { root })
     }
 
     fn walk(&self, folder: &Path, prefix: &str, depth: usize, found: &mut Vec<String>) -> Result<(), IntakeError> {
-        let unreadable = |error: std::io::Error| IntakeError::Unreadable { path: prefix.to_string(), reason: error.to_string() };
+        let unreadable =
+            |error: std::io::Error| IntakeError::Unreadable { path: prefix.to_string(), reason: error.to_string() };
         for entry in std::fs::read_dir(folder).map_err(unreadable)? {
             let entry = entry.map_err(unreadable)?;
             let Some(name) = entry.file_name().to_str().map(String::from) else { continue };

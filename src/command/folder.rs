@@ -20,15 +20,20 @@ pub struct Folder {
 impl Folder {
     /// Finds the laboratory folder that holds `path`: the nearest folder upwards with a `laboratory.md`.
     pub fn find(path: &Path) -> Result<Folder, Stopped> {
-        let given = path.canonicalize().map_err(|error| Stopped(format!("{} cannot be read: {error}", path.display())))?;
+        let given =
+            path.canonicalize().map_err(|error| Stopped(format!("{} cannot be read: {error}", path.display())))?;
         let root = given.ancestors().find(|folder| folder.join("laboratory.md").is_file()).ok_or_else(|| {
             Stopped(format!(
                 "{} is no laboratory folder: neither it nor a folder above it holds a laboratory.md; `libripens start FOLDER` writes one",
                 path.display()
             ))
         })?;
-        let names: Vec<String> =
-            given.strip_prefix(root).unwrap_or(Path::new("")).iter().map(|name| name.to_string_lossy().into_owned()).collect();
+        let names: Vec<String> = given
+            .strip_prefix(root)
+            .unwrap_or(Path::new(""))
+            .iter()
+            .map(|name| name.to_string_lossy().into_owned())
+            .collect();
         let campaign = match names.as_slice() {
             [campaigns, name, ..] if campaigns == "campaigns" => Some(name.clone()),
             _ => None,
@@ -72,11 +77,19 @@ fn unknown_quantity(engine: &Engine, name: &str, path: &str) -> Stopped {
     let graph = engine.graph();
     let prefix = format!("{name}.");
     let is_result = |id: &NodeId| matches!(graph.node(*id).origin, Origin::Computed(_));
-    let of_block: Vec<&str> =
-        graph.names.iter().filter(|(known, id)| known.starts_with(&prefix) && is_result(id)).map(|(known, _)| known.as_str()).collect();
+    let of_block: Vec<&str> = graph
+        .names
+        .iter()
+        .filter(|(known, id)| known.starts_with(&prefix) && is_result(id))
+        .map(|(known, _)| known.as_str())
+        .collect();
     let lower = path.to_lowercase();
     let in_other_case = graph.names.keys().find(|known| known.to_lowercase() == lower).map(String::as_str);
-    let longer = graph.names.keys().find(|known| known.strip_prefix(path).is_some_and(|rest| rest.starts_with('.'))).map(String::as_str);
+    let longer = graph
+        .names
+        .keys()
+        .find(|known| known.strip_prefix(path).is_some_and(|rest| rest.starts_with('.')))
+        .map(String::as_str);
     let longer = longer.filter(|_| path.contains('.'));
     let near = in_other_case.or(longer).or_else(|| nearest(path, graph.names.keys().map(String::as_str)));
     let advice = match near {

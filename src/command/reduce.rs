@@ -53,6 +53,10 @@ fn row(one: &Listed) -> Vec<String> {
     let printed = one.rows.map_or_else(|| one.printed.clone(), |rows| terminal::counted(rows, "value"));
     // A column has its degrees of freedom row by row, an exact value none.
     let uncertain = one.standard_uncertainty.is_some_and(|uncertainty| uncertainty > 0.0);
-    let freedom = if uncertain { terminal::degrees_of_freedom(one.degrees_of_freedom.unwrap_or(f64::INFINITY)) } else { String::new() };
+    let freedom = if uncertain {
+        terminal::degrees_of_freedom(one.degrees_of_freedom.unwrap_or(f64::INFINITY))
+    } else {
+        String::new()
+    };
     vec![one.name.clone(), printed, freedom, one.label.clone()]
 }

@@ -51,7 +51,9 @@ fn start_laboratory(root: &Path) -> Result<Outcome, Stopped> {
 fn start_campaign(place: &Path, name: &str) -> Result<Outcome, Stopped> {
     let plain = |c: char| c.is_ascii_alphanumeric() || c == '-' || c == '_';
     if name.is_empty() || !name.chars().all(plain) {
-        return Err(Stopped(format!("a campaign cannot be called {name:?}: its folder's name is made of letters, digits, - and _")));
+        return Err(Stopped(format!(
+            "a campaign cannot be called {name:?}: its folder's name is made of letters, digits, - and _"
+        )));
     }
     let folder = Folder::find(place)?;
     if folder.root.join("campaigns").join(name).symlink_metadata().is_ok() {
@@ -78,7 +80,11 @@ fn refuse_inside_a_laboratory(root: &Path) -> Result<(), Stopped> {
     }
     let full = std::path::absolute(root).map_err(Stopped::because)?;
     match full.ancestors().skip(1).find(|folder| folder.join("laboratory.md").is_file()) {
-        Some(outer) => Err(Stopped(format!("{} lies inside the laboratory folder {}; nothing was written", root.display(), outer.display()))),
+        Some(outer) => Err(Stopped(format!(
+            "{} lies inside the laboratory folder {}; nothing was written",
+            root.display(),
+            outer.display()
+        ))),
         None => Ok(()),
     }
 }
@@ -150,8 +156,11 @@ impl Words {
     /// A template with every word in its place.
     fn fill(&self, template: &str) -> String {
         let [client, item, ambient, comparison] = Words::campaign_names(self.number);
-        let height = if self.has_height { "mass_centre_height: 27.0(10) mm\n" } else { "" };
+        let height = if self.has_height { "mass_centre_height: 27.@DIGIT@(10) mm\n" } else { "" };
         let words = [
+            ("@HEIGHT@", height.into()),
+            // Two campaigns with the very same values would rightly be asked whether these are one input or two.
+            ("@DIGIT@", ((self.number - 1) % 10).to_string()),
             ("@LABORATORY@", LABORATORY_NAME.to_string()),
             ("@TODAY@", self.today.to_string()),
             ("@BEFORE@", self.days_ago(7).to_string()),
@@ -166,7 +175,6 @@ impl Words {
             ("@COMPARISON@", comparison),
             ("@STANDARD@", self.standard.clone()),
             ("@NOMINAL@", self.nominal.clone()),
-            ("@HEIGHT@", height.into()),
             ("@COMPARATOR@", self.comparator.clone()),
             ("@THERMOMETER@", self.thermometer.clone()),
             ("@BAROMETER@", self.barometer.clone()),
@@ -239,7 +247,8 @@ fn sheet(path: &str, front: &impl Serialize, body: &str, words: &Words) -> Resul
 }
 
 fn record_sheet(path: &str, record: &str, body: &str, words: &Words) -> Result<Sheet, Stopped> {
-    let front = RecordFront { record: record.into(), date: words.today, performed_by: "duty metrologist", report: None };
+    let front =
+        RecordFront { record: record.into(), date: words.today, performed_by: "duty metrologist", report: None };
     sheet(path, &front, body, words)
 }
 
@@ -252,7 +261,10 @@ fn shared_sheets(words: &Words) -> Result<Vec<Sheet>, Stopped> {
         coverage_probability: "95.45 %",
         decimal_marker: "point",
         degrees_of_freedom: "truncated",
-        unit_bases: vec![UnitBasis { id: "consensus_1", label: "consensus value of the kilogram named in the certificate" }],
+        unit_bases: vec![UnitBasis {
+            id: "consensus_1",
+            label: "consensus value of the kilogram named in the certificate",
+        }],
     };
     Ok(vec![
         record_sheet("standards/k1.md", "STD-K1", include_str!("scaffold/standard.md"), words)?,
@@ -266,7 +278,12 @@ fn shared_sheets(words: &Words) -> Result<Vec<Sheet>, Stopped> {
 fn campaign_sheets(name: &str, words: &Words) -> Result<Vec<Sheet>, Stopped> {
     let path = |file: &str| format!("campaigns/{name}/{file}");
     let record = |number: u32| format!("{name}-{number:02}");
-    let report = RecordFront { record: record(3), date: words.today, performed_by: "duty metrologist", report: Some(report_front(words)) };
+    let report = RecordFront {
+        record: record(3),
+        date: words.today,
+        performed_by: "duty metrologist",
+        report: Some(report_front(words)),
+    };
     Ok(vec![
         record_sheet(&path("order.md"), &record(1), include_str!("scaffold/order.md"), words)?,
         record_sheet(&path("weighing.md"), &record(2), include_str!("scaffold/weighing.md"), words)?,
@@ -314,7 +331,8 @@ fn write_all(root: &Path, sheets: &[Sheet]) -> Result<(), Stopped> {
 
 fn write_one(path: &Path, text: &str) -> Result<(), Stopped> {
     if let Some(folder) = path.parent() {
-        std::fs::create_dir_all(folder).map_err(|error| Stopped(format!("the folder {} cannot be made: {error}", folder.display())))?;
+        std::fs::create_dir_all(folder)
+            .map_err(|error| Stopped(format!("the folder {} cannot be made: {error}", folder.display())))?;
     }
     write_whole(path, text.as_bytes())
 }

@@ -117,7 +117,8 @@ pub fn counted(number: usize, noun: &str) -> String {
 /// Columns of text padded to their widest cell; `right` says which columns are flush right.
 pub fn columns(rows: &[Vec<String>], right: &[bool]) -> String {
     let count = rows.iter().map(Vec::len).max().unwrap_or(0);
-    let widest = |column: usize| rows.iter().filter_map(|row| row.get(column)).map(|cell| cell.width()).max().unwrap_or(0);
+    let widest =
+        |column: usize| rows.iter().filter_map(|row| row.get(column)).map(|cell| cell.width()).max().unwrap_or(0);
     let widths: Vec<usize> = (0..count).map(widest).collect();
     let mut text = String::new();
     for row in rows {

@@ -78,7 +78,11 @@ impl Walk<'_> {
     /// What a quantity also rests on, set out elsewhere in the trail.
     fn mention(&mut self, elsewhere: &[(NodeId, bool)], depth: usize) {
         for (seen, words) in [(true, "see above"), (false, "see below")] {
-            let names: Vec<String> = elsewhere.iter().filter(|(_, above)| *above == seen).map(|(id, _)| path(self.graph.node(*id))).collect();
+            let names: Vec<String> = elsewhere
+                .iter()
+                .filter(|(_, above)| *above == seen)
+                .map(|(id, _)| path(self.graph.node(*id)))
+                .collect();
             if !names.is_empty() {
                 self.line(depth, &format!("{}: {words}", names.join(", ")));
             }
@@ -154,7 +158,12 @@ impl Walk<'_> {
 
     fn column(&self, column: &ReadingColumn) -> String {
         let rows = terminal::counted(column.lines.len(), "reading");
-        format!("{rows} in {}, column {}, {}", self.sources.file(column.file).path, column.column, line_ranges(&column.lines))
+        format!(
+            "{rows} in {}, column {}, {}",
+            self.sources.file(column.file).path,
+            column.column,
+            line_ranges(&column.lines)
+        )
     }
 
     fn list(&self, places: &[Place]) -> String {

@@ -117,7 +117,9 @@ impl Check {
 
 impl ValidationRecord {
     fn make(date: NaiveDate) -> ValidationRecord {
-        let of_methods = METHODS.iter().flat_map(|method| method.examples.iter().map(|example| Check::of(method.info.name, example)));
+        let of_methods = METHODS
+            .iter()
+            .flat_map(|method| method.examples.iter().map(|example| Check::of(method.info.name, example)));
         let of_factors = COVERAGE_FACTORS.iter().map(|example| Check::of("coverage factor", example));
         let checks: Vec<Check> = of_methods.chain(of_factors).collect();
         let agreeing = checks.iter().filter(|check| check.agrees).count();
@@ -125,7 +127,8 @@ impl ValidationRecord {
     }
 
     fn text(&self) -> String {
-        let rows: Vec<Vec<String>> = self.checks.iter().enumerate().flat_map(|(index, check)| check.rows(index + 1)).collect();
+        let rows: Vec<Vec<String>> =
+            self.checks.iter().enumerate().flat_map(|(index, check)| check.rows(index + 1)).collect();
         format!(
             "Validation record\n\nprogram  libripens {}\ndate     {}\nchecks   {}\n\n{}{} of {} checks agree.\n",
             self.engine,

@@ -10,8 +10,10 @@
 //! | `evaluate`      | the graph with some inputs displaced                                     |
 //! | `sensitivity`   | one reverse sweep per measurand                                          |
 //! | `uncertainty`   | standard uncertainty, covariance, effective degrees of freedom, coverage |
+//! | `tape`          | scalars as operations on rows of trials                                   |
 //! | `budget`        | the uncertainty budget                                                   |
 //! | `trail`         | from a result down to readings                                           |
+//! | `interval`      | estimate, uncertainty and coverage intervals of a run of trials           |
 //! | `monte_carlo`   | propagation of distributions in blocks of trials                         |
 //!
 //! Values are in coherent SI units. A sum of unlike dimensions, kinds, states or unit bases cannot be built.
@@ -21,9 +23,11 @@ mod build;
 mod estimator;
 mod evaluate;
 mod handle;
+mod interval;
 mod monte_carlo;
 mod node;
 mod sensitivity;
+mod tape;
 mod trail;
 mod uncertainty;
 mod value;
@@ -33,7 +37,8 @@ pub use build::{Assumption, Builder, InputDraft, ScopeGuard};
 pub use estimator::{Decision, Estimate, Estimator, EstimatorId, EstimatorNode};
 pub use evaluate::evaluate_displaced;
 pub use handle::Quantity;
-pub use monte_carlo::{MonteCarlo, Trials, linearity_departure, propagate_distributions};
+pub use interval::{Distributed, Histogram, Validation, distributed, histogram, numerical_tolerance};
+pub use monte_carlo::{Trials, linearity_departure, propagate_distributions};
 pub use node::{
     Basis, Distribution, Evaluation, Graph, Input, MethodInfo, Name, Node, NodeId, Op, Origin, ReadingColumn, State,
 };

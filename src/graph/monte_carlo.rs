@@ -9,8 +9,10 @@
 //! and blocks may run on any number of threads.
 
 use super::evaluate::evaluate_displaced;
+use super::interval::{Distributed, distributed};
 use super::node::*;
-use super::sensitivity::linear_response;
+use super::sensitivity::{Sensitivities, linear_response};
+use super::tape::{CHUNK, Register, Tape};
 use super::value::Value;
 use crate::diagnostic::Problem;
 use crate::numeric::linear::covariance_factor;
@@ -28,30 +30,10 @@ pub struct Trials {
     pub values: Vec<Vec<f64>>,
 }
 
-/// What a run says of one measurand.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct MonteCarlo {
-    pub estimate: f64,
-    pub standard_uncertainty: f64,
-    /// Probabilistically symmetric coverage interval.
-    pub symmetric_interval: (f64, f64),
-    pub trials: usize,
-}
-
 impl Trials {
-    /// Estimate, standard uncertainty and symmetric interval of measurand number `index` (JCGM 101, 7.6 and 7.7).
-    pub fn summary(&self, index: usize, coverage_probability: f64) -> MonteCarlo {
-        let values = &self.values[index];
-        let mut sorted = values.clone();
-        sorted.sort_by(f64::total_cmp);
-        let tail = (1.0 - coverage_probability) / 2.0;
-        let at = |p: f64| sorted[((p * sorted.len() as f64) as usize).min(sorted.len() - 1)];
-        MonteCarlo {
-            estimate: numeric::sum::mean(values).unwrap_or(f64::NAN),
-            standard_uncertainty: numeric::sum::experimental_standard_deviation(values).unwrap_or(0.0),
-            symmetric_interval: (at(tail), at(1.0 - tail)),
-            trials: values.len(),
-        }
+    /// Estimate, standard uncertainty and intervals of measurand number `index`.
+    pub fn summary(&self, index: usize, coverage_probability: f64) -> Distributed {
+        distributed(&mut self.values[index].clone(), coverage_probability)
     }
 }
 
@@ -93,146 +75,124 @@ pub fn linearity_departure(graph: &Graph, boundary: NodeId) -> Result<f64, Probl
     Ok(if largest > 0.0 { worst / largest } else { 0.0 })
 }
 
-/// How one needed scalar gets its trial values.
-enum Step {
-    Fixed,
-    Draw(u32),
-    Compute,
-    /// Linear response: the node's estimate plus weights times departures of scalars, plus noise by number.
-    Respond { weights: Vec<(NodeId, f64)>, noise: Option<usize> },
-}
-
-/// Which scalars to evaluate, in which order.
+/// What is drawn and evaluated in every trial.
 struct Plan<'g> {
     graph: &'g Graph,
-    measurands: Vec<NodeId>,
-    steps: Vec<(NodeId, Step)>,
+    measurands: usize,
+    tape: Tape,
+    /// Inputs drawn, by number, each with its row.
+    draws: Vec<(u32, Register)>,
     noise: Noise,
+    noise_rows: Vec<Register>,
 }
 
 impl<'g> Plan<'g> {
     fn new(graph: &'g Graph, measurands: &[NodeId]) -> Result<Self, Problem> {
-        let mut needed = BTreeSet::new();
-        let mut responses = BTreeMap::new();
-        let mut waiting: Vec<NodeId> = measurands.to_vec();
-        while let Some(id) = waiting.pop() {
-            if !needed.insert(id) {
+        let (needed, responses) = survey(graph, measurands);
+        let noise = Noise::new(graph, responses.iter().map(|(id, (_, below))| (*id, &below.inputs)))?;
+        let mut tape = Tape::default();
+        let noise_rows: Vec<Register> = noise.nodes.iter().map(|_| tape.reserve()).collect();
+        let mut draws = Vec::new();
+        for id in &needed {
+            if let Some((scalars, _)) = responses.get(id) {
+                let weights: Vec<(NodeId, f64, f64)> =
+                    scalars.iter().map(|(scalar, weight)| (*scalar, *weight, graph.number(*scalar))).collect();
+                let own: Vec<(Register, f64)> = noise.number_of(*id).map(|number| (noise_rows[number], 1.0)).into_iter().collect();
+                tape.respond(*id, graph.number(*id), &weights, &own);
                 continue;
             }
-            if is_boundary(graph, id) {
-                let (scalars, below) = linear_response(graph, id);
-                waiting.extend(scalars.keys().copied());
-                responses.insert(id, (scalars, below));
-            } else {
-                waiting.extend(graph.node(id).op.operands());
+            match &graph.node(*id).op {
+                Op::Input(number) if !graph.inputs[*number as usize].distribution.is_exact() => {
+                    let register = tape.reserve();
+                    tape.bind(*id, register);
+                    draws.push((*number, register));
+                }
+                Op::Input(_) | Op::Constant(_) => tape.fix(*id, graph.number(*id)),
+                _ => tape.add(graph, *id),
             }
         }
-        let noise = Noise::new(graph, responses.iter().map(|(id, (_, below))| (*id, &below.inputs)))?;
-        let mut uncertain = BTreeSet::new();
-        let steps = needed
-            .iter()
-            .map(|id| {
-                let step = step_of(graph, *id, &responses, &noise, &uncertain);
-                if !matches!(step, Step::Fixed) {
-                    uncertain.insert(*id);
-                }
-                (*id, step)
-            })
-            .collect();
-        Ok(Self { graph, measurands: measurands.to_vec(), steps, noise })
+        tape.ask(measurands);
+        Ok(Self { graph, measurands: measurands.len(), tape, draws, noise, noise_rows })
     }
 
     /// The measurands in the trials of one block.
     fn block(&self, block: u64, length: usize) -> Vec<Vec<f64>> {
-        let mut rows: BTreeMap<NodeId, Vec<f64>> = BTreeMap::new();
+        let mut rows = vec![[0.0; CHUNK]; self.tape.registers()];
+        let mut streams: Vec<(Draw<'_>, Register)> =
+            self.draws.iter().map(|(number, register)| (Draw::new(self.graph, *number, block), *register)).collect();
         let noise = self.noise.draw(self.graph, block, length);
-        for (id, step) in &self.steps {
-            let values = match step {
-                Step::Fixed => continue,
-                Step::Draw(number) => draw(self.graph, *number, block, length),
-                Step::Compute => self.compute(*id, &rows, length),
-                Step::Respond { weights, noise: number } => {
-                    self.respond(*id, weights, number.map(|number| &noise[number]), &rows, length)
-                }
-            };
-            rows.insert(*id, values);
-        }
-        self.measurands
-            .iter()
-            .map(|id| rows.get(id).cloned().unwrap_or_else(|| vec![self.graph.number(*id); length]))
-            .collect()
-    }
-
-    fn compute(&self, id: NodeId, rows: &BTreeMap<NodeId, Vec<f64>>, length: usize) -> Vec<f64> {
-        let value = |operand: &NodeId, trial: usize| rows.get(operand).map_or_else(|| self.graph.number(*operand), |r| r[trial]);
-        let op = &self.graph.node(id).op;
-        let pair = |a: &NodeId, b: &NodeId, f: fn(f64, f64) -> f64| {
-            (0..length).map(|trial| f(value(a, trial), value(b, trial))).collect()
-        };
-        match op {
-            Op::Add(a, b) => pair(a, b, |a, b| a + b),
-            Op::Subtract(a, b) => pair(a, b, |a, b| a - b),
-            Op::Multiply(a, b) => pair(a, b, |a, b| a * b),
-            Op::Divide(a, b) => pair(a, b, |a, b| a / b),
-            op => {
-                let operand = op.operands().first().copied().unwrap_or(id);
-                let single = |trial: usize| super::value::apply_scalar(op, value(&operand, trial));
-                (0..length).map(single).collect()
+        let mut values = vec![vec![0.0; length]; self.measurands];
+        for start in (0..length).step_by(CHUNK) {
+            let count = CHUNK.min(length - start);
+            for (draw, register) in &mut streams {
+                draw.fill(&mut rows[*register][..count]);
             }
-        }
-    }
-
-    fn respond(
-        &self,
-        id: NodeId,
-        weights: &[(NodeId, f64)],
-        noise: Option<&Vec<f64>>,
-        rows: &BTreeMap<NodeId, Vec<f64>>,
-        length: usize,
-    ) -> Vec<f64> {
-        let mut values = vec![self.graph.number(id); length];
-        for (scalar, weight) in weights {
-            let Some(drawn) = rows.get(scalar) else { continue };
-            let centre = self.graph.number(*scalar);
-            values.iter_mut().zip(drawn).for_each(|(value, drawn)| *value += weight * (drawn - centre));
-        }
-        if let Some(noise) = noise {
-            values.iter_mut().zip(noise).for_each(|(value, noise)| *value += noise);
+            for (register, row) in self.noise_rows.iter().zip(&noise) {
+                rows[*register][..count].copy_from_slice(&row[start..start + count]);
+            }
+            self.tape.run(&mut rows, count);
+            for (measurand, into) in values.iter_mut().enumerate() {
+                self.tape.read(measurand, &rows, &mut into[start..start + count]);
+            }
         }
         values
     }
+}
+
+/// Linear responses by node: weights of scalars, and what lies below.
+type Responses = BTreeMap<NodeId, (BTreeMap<NodeId, f64>, Sensitivities)>;
+
+/// The scalars that the measurands need, in order, and the responses of those taken from columns.
+fn survey(graph: &Graph, measurands: &[NodeId]) -> (BTreeSet<NodeId>, Responses) {
+    let mut needed = BTreeSet::new();
+    let mut responses = BTreeMap::new();
+    let mut waiting: Vec<NodeId> = measurands.to_vec();
+    while let Some(id) = waiting.pop() {
+        if !needed.insert(id) {
+            continue;
+        }
+        if is_boundary(graph, id) {
+            let (scalars, below) = linear_response(graph, id);
+            waiting.extend(scalars.keys().copied());
+            responses.insert(id, (scalars, below));
+        } else {
+            waiting.extend(graph.node(id).op.operands());
+        }
+    }
+    (needed, responses)
 }
 
 fn is_boundary(graph: &Graph, id: NodeId) -> bool {
     matches!(graph.node(id).op, Op::Sum(_) | Op::Row(..) | Op::Output(..))
 }
 
-fn step_of<R>(
-    graph: &Graph,
-    id: NodeId,
-    responses: &BTreeMap<NodeId, (BTreeMap<NodeId, f64>, R)>,
-    noise: &Noise,
-    uncertain: &BTreeSet<NodeId>,
-) -> Step {
-    if let Some((scalars, _)) = responses.get(&id) {
-        let weights: Vec<(NodeId, f64)> =
-            scalars.iter().filter(|(scalar, _)| uncertain.contains(scalar)).map(|(scalar, weight)| (*scalar, *weight)).collect();
-        let noise = noise.number_of(id);
-        return if weights.is_empty() && noise.is_none() { Step::Fixed } else { Step::Respond { weights, noise } };
-    }
-    match &graph.node(id).op {
-        Op::Input(number) if !graph.inputs[*number as usize].distribution.is_exact() => Step::Draw(*number),
-        op if op.operands().iter().any(|operand| uncertain.contains(operand)) => Step::Compute,
-        _ => Step::Fixed,
-    }
+/// The draws of one input in one block.
+struct Draw<'g> {
+    input: &'g Input,
+    centre: f64,
+    stream: Stream,
 }
 
-fn draw(graph: &Graph, number: u32, block: u64, length: usize) -> Vec<f64> {
-    let input = &graph.inputs[number as usize];
-    let centre = graph.number(input.node);
-    let path = graph.node(input.node).name.as_ref().map_or("", |name| name.path.as_str());
-    let mut stream = Stream::new(path, block);
-    (0..length).map(|_| centre + departure(input, &mut stream)).collect()
+impl<'g> Draw<'g> {
+    fn new(graph: &'g Graph, number: u32, block: u64) -> Self {
+        let input = &graph.inputs[number as usize];
+        let path = graph.node(input.node).name.as_ref().map_or("", |name| name.path.as_str());
+        Self { input, centre: graph.number(input.node), stream: Stream::new(path, block) }
+    }
+
+    fn fill(&mut self, row: &mut [f64]) {
+        match self.input.distribution {
+            Distribution::Normal { standard_uncertainty } => {
+                self.stream.fill_normal(row);
+                row.iter_mut().for_each(|value| *value = self.centre + standard_uncertainty * *value);
+            }
+            Distribution::Rectangular { half_width } => {
+                self.stream.fill_uniform(row);
+                row.iter_mut().for_each(|value| *value = self.centre + half_width * (2.0 * *value - 1.0));
+            }
+            _ => row.iter_mut().for_each(|value| *value = self.centre + departure(self.input, &mut self.stream)),
+        }
+    }
 }
 
 /// One draw of an input about its estimate (JCGM 101, 6.4).

@@ -1,0 +1,270 @@
+//! Scalars of the graph as a tape of operations on rows of trials.
+//!
+//! Only scalars that depend on something uncertain are on the tape; all others are numbers in it. Runs of sums,
+//! differences and products with numbers are gathered into one weighted sum. Rows are short enough to stay in the
+//! processor's cache, loops run without branches, and no fused multiply-add is used, so that the bits are the same
+//! on every machine.
+
+use super::node::*;
+use super::value::apply_scalar;
+use std::collections::BTreeMap;
+
+/// Trials worked on at a time.
+pub(super) const CHUNK: usize = 256;
+
+/// A row of trials in the working memory.
+pub(super) type Register = usize;
+
+/// One operation on rows.
+#[derive(Debug, Clone)]
+enum Step {
+    /// constant + Σ weight × row
+    Weighted { to: Register, constant: f64, terms: Vec<(Register, f64)> },
+    Product { to: Register, a: Register, b: Register },
+    Ratio { to: Register, a: Register, b: Register },
+    /// number / row
+    Reciprocal { to: Register, number: f64, b: Register },
+    Square { to: Register, a: Register },
+    Single { to: Register, op: Op, a: Register },
+}
+
+/// A scalar as a weighted sum of rows, not yet worked out.
+#[derive(Debug, Clone)]
+struct Form {
+    constant: f64,
+    terms: Vec<(Register, f64)>,
+}
+
+impl Form {
+    fn number(constant: f64) -> Form {
+        Form { constant, terms: Vec::new() }
+    }
+
+    fn row(register: Register) -> Form {
+        Form { constant: 0.0, terms: vec![(register, 1.0)] }
+    }
+
+    fn plus(&self, other: &Form, sign: f64) -> Form {
+        let mut terms: BTreeMap<Register, f64> = self.terms.iter().copied().collect();
+        for (register, weight) in &other.terms {
+            *terms.entry(*register).or_insert(0.0) += sign * weight;
+        }
+        Form { constant: self.constant + sign * other.constant, terms: terms.into_iter().collect() }
+    }
+
+    fn times(&self, factor: f64) -> Form {
+        Form { constant: self.constant * factor, terms: self.terms.iter().map(|(register, weight)| (*register, weight * factor)).collect() }
+    }
+
+    fn is_number(&self) -> bool {
+        self.terms.is_empty()
+    }
+}
+
+/// The longest weighted sum carried on before it is worked out once.
+const LONGEST_SUM: usize = 8;
+
+/// The tape of some measurands.
+#[derive(Debug, Default)]
+pub(super) struct Tape {
+    steps: Vec<Step>,
+    registers: usize,
+    forms: BTreeMap<NodeId, Form>,
+    /// Registers of the measurands, or the number of one that nothing uncertain reaches.
+    outputs: Vec<Result<Register, f64>>,
+}
+
+impl Tape {
+    /// A row that the caller fills: an input's draws, a response's noise.
+    pub fn reserve(&mut self) -> Register {
+        self.registers += 1;
+        self.registers - 1
+    }
+
+    /// How many rows the working memory needs.
+    pub fn registers(&self) -> usize {
+        self.registers
+    }
+
+    /// The scalar `id` is the row `register`.
+    pub fn bind(&mut self, id: NodeId, register: Register) {
+        self.forms.insert(id, Form::row(register));
+    }
+
+    /// The scalar `id` never changes.
+    pub fn fix(&mut self, id: NodeId, number: f64) {
+        self.forms.insert(id, Form::number(number));
+    }
+
+    /// The scalar `id` answers other scalars linearly about their estimates, with rows of noise added.
+    pub fn respond(&mut self, id: NodeId, estimate: f64, weights: &[(NodeId, f64, f64)], noise: &[(Register, f64)]) {
+        let mut form = Form { constant: estimate, terms: noise.to_vec() };
+        for (scalar, weight, centre) in weights {
+            let departure = self.form(*scalar).plus(&Form::number(*centre), -1.0);
+            form = form.plus(&departure.times(*weight), 1.0);
+        }
+        self.keep(id, form);
+    }
+
+    /// Adds a scalar operation; operands must be there.
+    pub fn add(&mut self, graph: &Graph, id: NodeId) {
+        let form = match &graph.node(id).op {
+            Op::Add(a, b) => self.form(*a).plus(&self.form(*b), 1.0),
+            Op::Subtract(a, b) => self.form(*a).plus(&self.form(*b), -1.0),
+            Op::Negate(a) => self.form(*a).times(-1.0),
+            Op::Power(a, 1) => self.form(*a),
+            Op::Multiply(a, b) => self.product(*a, *b),
+            Op::Divide(a, b) => self.ratio(*a, *b),
+            Op::Power(a, 2) => self.single(*a, |to, a| Step::Square { to, a }, |x| x * x),
+            op => {
+                let operand = op.operands().first().copied().unwrap_or(id);
+                let op = op.clone();
+                let number = op.clone();
+                self.single(operand, |to, a| Step::Single { to, op, a }, |x| apply_scalar(&number, x))
+            }
+        };
+        self.keep(id, form);
+    }
+
+    /// Which scalars are asked for.
+    pub fn ask(&mut self, measurands: &[NodeId]) {
+        for id in measurands {
+            let form = self.form(*id);
+            let output = if form.is_number() { Err(form.constant) } else { Ok(self.work_out(&form)) };
+            self.outputs.push(output);
+        }
+    }
+
+    fn form(&self, id: NodeId) -> Form {
+        self.forms.get(&id).cloned().unwrap_or_else(|| Form::number(f64::NAN))
+    }
+
+    /// Long sums are worked out once, so that several users share them.
+    fn keep(&mut self, id: NodeId, form: Form) {
+        let form = if form.terms.len() > LONGEST_SUM { Form::row(self.work_out(&form)) } else { form };
+        self.forms.insert(id, form);
+    }
+
+    fn work_out(&mut self, form: &Form) -> Register {
+        if let [(register, weight)] = form.terms.as_slice() && *weight == 1.0 && form.constant == 0.0 {
+            return *register;
+        }
+        let to = self.reserve();
+        self.steps.push(Step::Weighted { to, constant: form.constant, terms: form.terms.clone() });
+        to
+    }
+
+    fn product(&mut self, a: NodeId, b: NodeId) -> Form {
+        let (left, right) = (self.form(a), self.form(b));
+        if left.is_number() {
+            return right.times(left.constant);
+        }
+        if right.is_number() {
+            return left.times(right.constant);
+        }
+        let (a, b) = (self.shared(a), self.shared(b));
+        let to = self.reserve();
+        self.steps.push(if a == b { Step::Square { to, a } } else { Step::Product { to, a, b } });
+        Form::row(to)
+    }
+
+    fn ratio(&mut self, a: NodeId, b: NodeId) -> Form {
+        let (left, right) = (self.form(a), self.form(b));
+        if right.is_number() {
+            return left.times(1.0 / right.constant);
+        }
+        let b = self.shared(b);
+        let to;
+        if left.is_number() {
+            to = self.reserve();
+            self.steps.push(Step::Reciprocal { to, number: left.constant, b });
+        } else {
+            let a = self.shared(a);
+            to = self.reserve();
+            self.steps.push(Step::Ratio { to, a, b });
+        }
+        Form::row(to)
+    }
+
+    fn single(&mut self, a: NodeId, step: impl FnOnce(Register, Register) -> Step, number: impl FnOnce(f64) -> f64) -> Form {
+        let form = self.form(a);
+        if form.is_number() {
+            return Form::number(number(form.constant));
+        }
+        let a = self.shared(a);
+        let to = self.reserve();
+        self.steps.push(step(to, a));
+        Form::row(to)
+    }
+
+    /// The row of a scalar, worked out once for all its users.
+    fn shared(&mut self, id: NodeId) -> Register {
+        let register = self.work_out(&self.form(id));
+        self.forms.insert(id, Form::row(register));
+        register
+    }
+
+    /// Runs the tape over the first `length` trials of every row.
+    pub fn run(&self, rows: &mut [[f64; CHUNK]], length: usize) {
+        for step in &self.steps {
+            match step {
+                Step::Weighted { to, constant, terms } => weighted(rows, *to, *constant, terms),
+                Step::Product { to, a, b } => binary(rows, *to, *a, *b, |a, b| a * b),
+                Step::Ratio { to, a, b } => binary(rows, *to, *a, *b, |a, b| a / b),
+                Step::Reciprocal { to, number, b } => unary(rows, *to, *b, CHUNK, |b| number / b),
+                Step::Square { to, a } => unary(rows, *to, *a, CHUNK, |a| a * a),
+                Step::Single { to, op, a } => unary(rows, *to, *a, length, |a| apply_scalar(op, a)),
+            }
+        }
+    }
+
+    /// Copies a measurand's trials out of the working memory.
+    pub fn read(&self, measurand: usize, rows: &[[f64; CHUNK]], into: &mut [f64]) {
+        match self.outputs.get(measurand) {
+            Some(Ok(register)) => into.copy_from_slice(&rows[*register][..into.len()]),
+            Some(Err(number)) => into.fill(*number),
+            None => into.fill(f64::NAN),
+        }
+    }
+}
+
+/// Rows are written in order of register, each from rows before it, so that the borrow can be split.
+fn binary(rows: &mut [[f64; CHUNK]], to: Register, a: Register, b: Register, f: impl Fn(f64, f64) -> f64) {
+    let (before, rest) = rows.split_at_mut(to);
+    let (a, b, to) = (&before[a], &before[b], &mut rest[0]);
+    for index in 0..CHUNK {
+        to[index] = f(a[index], b[index]);
+    }
+}
+
+fn unary(rows: &mut [[f64; CHUNK]], to: Register, a: Register, length: usize, f: impl Fn(f64) -> f64) {
+    let (before, rest) = rows.split_at_mut(to);
+    let (a, to) = (&before[a], &mut rest[0]);
+    for index in 0..length {
+        to[index] = f(a[index]);
+    }
+}
+
+fn weighted(rows: &mut [[f64; CHUNK]], to: Register, constant: f64, terms: &[(Register, f64)]) {
+    let (before, rest) = rows.split_at_mut(to);
+    let to = &mut rest[0];
+    match terms {
+        [(a, v)] => {
+            let a = &before[*a];
+            (0..CHUNK).for_each(|index| to[index] = constant + v * a[index]);
+        }
+        [(a, v), (b, w)] => {
+            let (a, b) = (&before[*a], &before[*b]);
+            (0..CHUNK).for_each(|index| to[index] = constant + v * a[index] + w * b[index]);
+        }
+        [(a, v), (b, w), others @ ..] => {
+            let (a, b) = (&before[*a], &before[*b]);
+            (0..CHUNK).for_each(|index| to[index] = constant + v * a[index] + w * b[index]);
+            for (c, x) in others {
+                let c = &before[*c];
+                (0..CHUNK).for_each(|index| to[index] += x * c[index]);
+            }
+        }
+        [] => to.fill(constant),
+    }
+}
