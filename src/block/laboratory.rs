@@ -20,6 +20,7 @@ const FIELDS: &[Field] = &[
     optional("coverage_probability", Shape::AnyValue, "coverage probability of expanded uncertainties, such as 95.45 %"),
     optional("decimal_marker", Shape::Choice(&["point", "comma"]), "decimal marker in reports"),
     optional("degrees_of_freedom", Shape::Choice(&["truncated", "as computed"]), "how effective degrees of freedom enter the coverage factor"),
+    optional("trials", Shape::Number, "number of Monte Carlo trials where a report asks for them"),
     optional("unit_bases", Shape::Mappings(BASIS_FIELDS), "the unit bases masses may refer to"),
 ];
 
@@ -30,11 +31,16 @@ pub struct Laboratory {
     pub address: String,
     pub settings: Settings,
     pub style: Style,
+    /// Monte Carlo trials where a report asks for them.
+    pub trials: usize,
     /// Name and label of each unit basis.
     pub unit_bases: Vec<(String, String)>,
     /// Values used that `laboratory.md` does not state.
     pub assumed: Vec<String>,
 }
+
+/// Trials where the laboratory states no number.
+const DEFAULT_TRIALS: usize = 200_000;
 
 impl Default for Laboratory {
     fn default() -> Self {
@@ -43,6 +49,7 @@ impl Default for Laboratory {
             address: String::new(),
             settings: Settings::new(0.9545, DegreesOfFreedomRule::Truncated),
             style: Style::POINT,
+            trials: DEFAULT_TRIALS,
             unit_bases: Vec::new(),
             assumed: Vec::new(),
         }
@@ -92,6 +99,14 @@ impl Laboratory {
         };
         self.settings = Settings::new(probability, rule);
         self.style = if fields.words("decimal_marker") == "comma" { Style::COMMA } else { Style::POINT };
+        if let Some(trials) = fields.number("trials") {
+            if !(1e4..=1e8).contains(&trials) || trials.fract() != 0.0 {
+                let message = format!("{trials} Monte Carlo trials are not a whole number from 10 000 to 100 000 000.");
+                complaints.add_at(Problem::new(Code::OutOfRange, message), fields.place_of("trials"));
+            } else {
+                self.trials = trials as usize;
+            }
+        }
         self.unit_bases = fields.mappings("unit_bases").iter().map(|basis| (basis.words("id"), basis.words("label"))).collect();
     }
 

@@ -82,6 +82,7 @@ static FUNCTIONS: &[Function] = &[
     Function { name: "chart", usage: "chart(W1)", answer: chart },
     Function { name: "conditions", usage: "conditions(A1)", answer: conditions },
     Function { name: "deviation", usage: "deviation(W1.mass, \"mg\")", answer: |engine, asked| deviation(engine, asked, false) },
+    Function { name: "distribution", usage: "distribution(W1.mass)", answer: |engine, asked| block(parts::distribution::distribution_part(engine, asked.quantity(engine)?)?) },
     Function { name: "excluded", usage: "excluded()", answer: |engine, _| block(parts::excluded::excluded_table(engine)) },
     Function { name: "expanded", usage: "expanded(W1.mass)", answer: |engine, asked| inline(&asked.figure(engine)?.expanded()) },
     Function { name: "expanded_deviation", usage: "expanded_deviation(W1.mass, \"mg\")", answer: |engine, asked| deviation(engine, asked, true) },

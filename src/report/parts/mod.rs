@@ -4,6 +4,7 @@ pub mod annex;
 pub mod budget;
 pub mod charts;
 pub mod conditions;
+pub mod distribution;
 pub mod excluded;
 pub mod readings;
 pub mod results;

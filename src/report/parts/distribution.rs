@@ -1,0 +1,141 @@
+//! First-order propagation beside propagation of distributions: table, histogram, verdict.
+//!
+//! # Source   JCGM 101:2008, clause 8 (validation of first-order propagation by trials).
+
+use crate::block::Engine;
+use crate::diagnostic::Problem;
+use crate::graph::{Distributed, Histogram, NodeId, Validation, distributed, histogram, propagate_distributions};
+use crate::quantity::{Marker, Style, Unit, choose_unit};
+use crate::report::Markup;
+use crate::report::chart::{Chart, Series, Style as Look, figure};
+use crate::report::figures::{Figure, fixed, per_cent, significant};
+use crate::report::parts::results::nominal_probability;
+use crate::report::table::{Cell, Table, head};
+
+/// Significant digits of u that the comparison is to be meaningful to.
+const DIGITS: usize = 1;
+const CLASSES: usize = 60;
+
+/// Both propagations of one result.
+pub struct Comparison {
+    pub figure: Figure,
+    pub found: Distributed,
+    pub histogram: Histogram,
+    pub validation: Validation,
+}
+
+impl Comparison {
+    /// Runs the trials of one result.
+    ///
+    /// # Errors
+    /// When a covariance on the way is impossible.
+    pub fn of(engine: &Engine, result: NodeId) -> Result<Option<Comparison>, Problem> {
+        let Some(figure) = Figure::of(engine, result) else { return Ok(None) };
+        let trials = engine.laboratory.trials;
+        let mut values = propagate_distributions(&engine.graph(), &[result], trials)?.values.swap_remove(0);
+        let found = distributed(&mut values, figure.coverage.probability);
+        let expanded = figure.coverage.expanded_uncertainty;
+        let validation = Validation::new(figure.value, expanded, found.symmetric, figure.coverage.standard_uncertainty, DIGITS);
+        Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation }))
+    }
+
+    /// The verdict in a sentence.
+    pub fn verdict(&self) -> String {
+        match self.validation.is_valid() {
+            true => "Both ends agree within the numerical tolerance: first-order propagation is validated, and its interval is stated.".into(),
+            false => "An end departs by more than the numerical tolerance: first-order propagation is not validated, and the interval found by the trials is the valid one.".into(),
+        }
+    }
+}
+
+/// The comparison as table, chart and verdict.
+///
+/// # Errors
+/// As [`Comparison::of`].
+pub fn distribution_part(engine: &Engine, result: NodeId) -> Result<Markup, Problem> {
+    let Some(comparison) = Comparison::of(engine, result)? else { return Ok(Markup::new()) };
+    engine.builder.assume(
+        format!("Monte Carlo trials: {} with the constant seed “{}”", comparison.found.trials, crate::numeric::stream::SEED),
+        None,
+    );
+    let mut made = table(engine, &comparison);
+    made.push(&figure(&chart(engine, &comparison), 150.0, 62.0)).push_code("\n\n");
+    made.push_code("#note[").push_text(&comparison.verdict()).push_code("]\n\n");
+    Ok(made)
+}
+
+fn unit_of(comparison: &Comparison) -> Unit {
+    choose_unit(comparison.figure.coverage.standard_uncertainty, &comparison.figure.unit)
+}
+
+/// Values as departures from the first-order estimate, which keeps their digits beside a large value.
+fn table(engine: &Engine, comparison: &Comparison) -> Markup {
+    let style = engine.laboratory.style;
+    let unit = unit_of(comparison);
+    let estimate = comparison.figure.value;
+    let shown = |value: f64| -> Cell { departure(style, &unit, value) };
+    let probability = per_cent(style, nominal_probability(comparison.found.probability));
+    let unit_text = style.unit(&unit);
+    let header = vec![
+        "Propagation".into(),
+        head("y", &unit_text),
+        head("u", &unit_text),
+        format!("lower end/{unit_text}").into(),
+        format!("upper end/{unit_text}").into(),
+    ];
+    let caption = format!(
+        "{}: first order and {} trials, {probability} coverage intervals, as departures from {}",
+        comparison.figure.label,
+        style.digits(&comparison.found.trials.to_string()),
+        comparison.figure.standard()
+    );
+    let mut table = Table::new(caption, header);
+    table.align = vec!["left", "right", "right", "right", "right"];
+    let row = |name: &str, y: f64, u: f64, ends: (f64, f64)| vec![name.into(), shown(y - estimate), shown(u), shown(ends.0 - estimate), shown(ends.1 - estimate)];
+    let (found, validation) = (&comparison.found, &comparison.validation);
+    table.rows.push(row("first order", estimate, comparison.figure.coverage.standard_uncertainty, validation.first_order));
+    table.rows.push(row("trials, symmetric interval", found.estimate, found.standard_uncertainty, found.symmetric));
+    table.rows.push(row("trials, shortest interval", found.estimate, found.standard_uncertainty, found.shortest));
+    let blank = || Cell::from("");
+    table.closing.push(vec!["difference of the ends".into(), blank(), blank(), shown(validation.low_difference), shown(validation.high_difference)]);
+    table.closing.push(vec!["numerical tolerance δ".into(), blank(), blank(), significant(style, unit.difference_from_si(validation.tolerance), 1).into(), blank()]);
+    table.markup()
+}
+
+fn departure(style: Style, unit: &Unit, value: f64) -> Cell {
+    fixed(style, unit.difference_from_si(value), 4).into()
+}
+
+fn chart(engine: &Engine, comparison: &Comparison) -> Chart {
+    let unit = unit_of(comparison);
+    let (estimate, u) = (comparison.figure.value, comparison.figure.coverage.standard_uncertainty);
+    let at = |value: f64| unit.difference_from_si(value - estimate);
+    let classes = &comparison.histogram;
+    let width = (classes.to - classes.from) / classes.counts.len() as f64;
+    let total: f64 = classes.counts.iter().map(|count| *count as f64).sum();
+    let density = |count: u64| count as f64 / (total * unit.difference_from_si(width));
+    let mut steps: Vec<(f64, f64, Option<f64>)> =
+        classes.counts.iter().enumerate().map(|(index, count)| (at(classes.from + width * index as f64), density(*count), None)).collect();
+    steps.push((at(classes.to), 0.0, None));
+    let highest = steps.iter().map(|(_, y, _)| *y).fold(0.0, f64::max);
+    let scale = unit.difference_from_si(u);
+    let normal = (0..=80).map(|index| {
+        let z = -4.0 + f64::from(index) * 0.1;
+        (z * scale, crate::numeric::distribution::normal_density(z) / scale, None)
+    });
+    let bar = |ends: (f64, f64), height: f64| vec![(at(ends.0), height * highest, None), (at(ends.1), height * highest, None)];
+    let probability = per_cent(engine.laboratory.style, nominal_probability(comparison.found.probability));
+    Chart {
+        title: format!("{}: distribution of the trials, and the density of first-order propagation", comparison.figure.label),
+        x_label: format!("departure/{}", engine.laboratory.style.unit(&unit)),
+        y_label: format!("density × {}", engine.laboratory.style.unit(&unit)),
+        series: vec![
+            Series { name: "trials".into(), points: steps, style: Look::Steps },
+            Series { name: "first order".into(), points: normal.collect(), style: Look::Line },
+            Series { name: format!("{probability} interval, trials"), points: bar(comparison.found.symmetric, 0.10), style: Look::Line },
+            Series { name: format!("{probability} interval, first order"), points: bar(comparison.validation.first_order, 0.05), style: Look::Line },
+        ],
+        decimal_marker: if engine.laboratory.style.marker == Marker::Comma { ',' } else { '.' },
+        ..Chart::default()
+    }
+}
