@@ -33,10 +33,18 @@ pub static KIND: BlockKind = BlockKind {
         needed("barometer", Shape::Name, "the instrument for air pressure"),
         optional("hygrometer", Shape::Name, "the instrument for relative humidity"),
         optional("dew_point_meter", Shape::Name, "the instrument for the dew point"),
-        optional("carbon_dioxide", Shape::Value(Kind::AmountFraction), "mole fraction of carbon dioxide for the whole log"),
+        optional(
+            "carbon_dioxide",
+            Shape::Value(Kind::AmountFraction),
+            "mole fraction of carbon dioxide for the whole log",
+        ),
         optional("carbon_dioxide_meter", Shape::Name, "the instrument for carbon dioxide, read with the others"),
         optional("readings", Shape::Mappings(READING_FIELDS), "the log, written here"),
-        optional("data", Shape::Name, "the log, as raw data with the columns time, temperature, pressure, humidity or dew_point"),
+        optional(
+            "data",
+            Shape::Name,
+            "the log, as raw data with the columns time, temperature, pressure, humidity or dew_point",
+        ),
     ],
     outputs: &[
         Output { path: "temperature", meaning: "air temperature, corrected, at the times of the log", unit: "°C" },
@@ -56,7 +64,8 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     let place = fields.place();
     if fields.get("readings").is_some() == fields.get("data").is_some() {
         let problem = Problem::new(Code::FieldMissing, "Conditions need either readings or data.");
-        complaints.add_at(problem.hint("Write the log as `readings:` here, or name a raw-data block as `data:`."), place);
+        complaints
+            .add_at(problem.hint("Write the log as `readings:` here, or name a raw-data block as `data:`."), place);
     }
     if fields.get("hygrometer").is_some() == fields.get("dew_point_meter").is_some() {
         let problem = Problem::new(Code::FieldMissing, "Conditions need either a hygrometer or a dew_point_meter.");
@@ -65,9 +74,19 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     for reading in fields.mappings("readings") {
         for name in ["temperature", "pressure", "humidity", "dew_point", "carbon_dioxide"] {
             let (kind, _) = kinds_of(name);
-            if let Some(super::given::Given::Stated { value, place }) = reading.given(name, kind) && value.standard_uncertainty().is_some() {
-                let problem = Problem::new(Code::DoubleUncertainty, format!("The reading {} carries its own uncertainty beside that of its instrument.", value.text));
-                complaints.add_at(problem.hint("Write the indication alone; correction, resolution and drift stand with the instrument."), place);
+            if let Some(super::given::Given::Stated { value, place }) = reading.given(name, kind)
+                && value.standard_uncertainty().is_some()
+            {
+                let problem = Problem::new(
+                    Code::DoubleUncertainty,
+                    format!("The reading {} carries its own uncertainty beside that of its instrument.", value.text),
+                );
+                complaints.add_at(
+                    problem.hint(
+                        "Write the indication alone; correction, resolution and drift stand with the instrument.",
+                    ),
+                    place,
+                );
             }
         }
     }
@@ -129,9 +148,14 @@ impl<'e> LoggedAir<'e> {
             Some(name_column(engine, block, corrected, measures))
         };
         let (temperature, pressure) = (column("thermometer", "temperature"), column("barometer", "pressure"));
-        let moisture = if is_dew_point { column("dew_point_meter", "dew_point") } else { column("hygrometer", "humidity") };
+        let moisture =
+            if is_dew_point { column("dew_point_meter", "dew_point") } else { column("hygrometer", "humidity") };
         let logged = fields.get("carbon_dioxide_meter").is_some();
-        let carbon_dioxide = if logged { column("carbon_dioxide_meter", "carbon_dioxide") } else { stated_carbon_dioxide(engine, block) };
+        let carbon_dioxide = if logged {
+            column("carbon_dioxide_meter", "carbon_dioxide")
+        } else {
+            stated_carbon_dioxide(engine, block)
+        };
         let air = Self {
             engine,
             name: block.name().into(),
@@ -189,7 +213,11 @@ impl<'e> LoggedAir<'e> {
         Air {
             temperature: self.temperature,
             pressure: self.pressure,
-            humidity: if self.is_dew_point { Humidity::DewPoint(self.moisture) } else { Humidity::Relative(self.moisture) },
+            humidity: if self.is_dew_point {
+                Humidity::DewPoint(self.moisture)
+            } else {
+                Humidity::Relative(self.moisture)
+            },
             carbon_dioxide: self.carbon_dioxide,
         }
     }
@@ -199,8 +227,12 @@ impl<'e> LoggedAir<'e> {
         let mut weights = Vec::with_capacity(times.len());
         for (row, time) in times.iter().enumerate() {
             match bracket(&self.times, *time) {
-                Some((first, second, weight)) if first == second || weight == 0.0 => weights.push(vec![(first as u32, 1.0)]),
-                Some((first, second, weight)) => weights.push(vec![(first as u32, 1.0 - weight), (second as u32, weight)]),
+                Some((first, second, weight)) if first == second || weight == 0.0 => {
+                    weights.push(vec![(first as u32, 1.0)])
+                }
+                Some((first, second, weight)) => {
+                    weights.push(vec![(first as u32, 1.0 - weight), (second as u32, weight)])
+                }
                 None => {
                     self.engine.complain(self.out_of_span(*time), places(row));
                     return None;
@@ -222,8 +254,15 @@ impl<'e> LoggedAir<'e> {
 
     fn out_of_span(&self, time: f64) -> Problem {
         let (first, last) = (self.times.first().copied().unwrap_or(0.0), self.times.last().copied().unwrap_or(0.0));
-        let message = format!("Conditions are needed at {}, but {} was logged from {} to {}.", clock(time), self.name, clock(first), clock(last));
-        Problem::new(Code::ConditionsOutOfSpan, message).hint("Enter the readings that enclose the weighing; conditions are not carried beyond the log.")
+        let message = format!(
+            "Conditions are needed at {}, but {} was logged from {} to {}.",
+            clock(time),
+            self.name,
+            clock(first),
+            clock(last)
+        );
+        Problem::new(Code::ConditionsOutOfSpan, message)
+            .hint("Enter the readings that enclose the weighing; conditions are not carried beyond the log.")
     }
 }
 
@@ -231,7 +270,9 @@ impl Log<'_> {
     fn times(&self, engine: &Engine) -> Option<Vec<f64>> {
         match self {
             Log::File(raw) => raw.times(engine),
-            Log::Written(readings) => readings.iter().map(|reading| Some(seconds_since(epoch(), reading.instant("time")?))).collect(),
+            Log::Written(readings) => {
+                readings.iter().map(|reading| Some(seconds_since(epoch(), reading.instant("time")?))).collect()
+            }
         }
     }
 
@@ -239,12 +280,21 @@ impl Log<'_> {
     fn place(&self, engine: &Engine, row: usize, field: &str) -> Place {
         match self {
             Log::File(raw) => raw.line(engine, row),
-            Log::Written(readings) => readings.get(row).map_or(Place::new(crate::intake::FileId(0), 0, 0), |reading| reading.place_of(field)),
+            Log::Written(readings) => {
+                readings.get(row).map_or(Place::new(crate::intake::FileId(0), 0, 0), |reading| reading.place_of(field))
+            }
         }
     }
 
     /// The indications of one instrument as an input, each inside the instrument's range.
-    fn indications<'e>(&self, engine: &'e Engine<'e>, block: &str, instrument: Instrument<'e>, measures: &str, field: &str) -> Option<Quantity<'e>> {
+    fn indications<'e>(
+        &self,
+        engine: &'e Engine<'e>,
+        block: &str,
+        instrument: Instrument<'e>,
+        measures: &str,
+        field: &str,
+    ) -> Option<Quantity<'e>> {
         let (kind, _) = kinds_of(measures);
         let path = format!("{block}.{measures}_indications");
         let label = format!("indications of {}", instrument.block.label());
@@ -256,14 +306,25 @@ impl Log<'_> {
                 let mut places = Vec::new();
                 for reading in readings {
                     let Some(node) = reading.get(measures) else {
-                        let problem = Problem::new(Code::FieldMissing, format!("The reading lacks {measures}, which the {field} gives."));
+                        let problem = Problem::new(
+                            Code::FieldMissing,
+                            format!("The reading lacks {measures}, which the {field} gives."),
+                        );
                         engine.complain(problem, reading.place());
                         return None;
                     };
                     rows.push(stated_number(node, kind)?);
                     places.push(node.place);
                 }
-                let mut draft = InputDraft::new(&path, symbol, &label, kind, unit(shown_unit(measures)), Value::column(rows), Origin::ReadingList(places.into()));
+                let mut draft = InputDraft::new(
+                    &path,
+                    symbol,
+                    &label,
+                    kind,
+                    unit(shown_unit(measures)),
+                    Value::column(rows),
+                    Origin::ReadingList(places.into()),
+                );
                 draft.distribution = instrument.resolution();
                 engine.builder.input(draft)
             }
@@ -273,8 +334,17 @@ impl Log<'_> {
             if let Some(row) = outside {
                 let shown = unit(shown_unit(measures));
                 let show = |value: f64| format!("{} {}", (shown.from_si(value) * 1e6).round() / 1e6, shown.text());
-                let message = format!("The reading {} lies outside the range {} to {} of {}.", show(made.rows()[row]), show(from), show(to), instrument.block.label());
-                engine.complain(Problem::new(Code::OutOfRange, message).hint("Check the reading for a slip of digits or unit."), self.place(engine, row, measures));
+                let message = format!(
+                    "The reading {} lies outside the range {} to {} of {}.",
+                    show(made.rows()[row]),
+                    show(from),
+                    show(to),
+                    instrument.block.label()
+                );
+                engine.complain(
+                    Problem::new(Code::OutOfRange, message).hint("Check the reading for a slip of digits or unit."),
+                    self.place(engine, row, measures),
+                );
                 return None;
             }
         }
@@ -292,8 +362,12 @@ fn stated_number(node: &Node, kind: Kind) -> Option<f64> {
 /// Refuses a log whose times do not rise.
 fn check_times(engine: &Engine, log: &Log<'_>, times: &[f64], block: &Block) -> Option<()> {
     if let Some(row) = times.windows(2).position(|pair| pair[0] >= pair[1]) {
-        let message = format!("The log of {} steps back: {} follows {}.", block.name(), clock(times[row + 1]), clock(times[row]));
-        engine.complain(Problem::new(Code::TimeUnreadable, message).hint("Put the readings in order of time, each time once."), log.place(engine, row + 1, "time"));
+        let message =
+            format!("The log of {} steps back: {} follows {}.", block.name(), clock(times[row + 1]), clock(times[row]));
+        engine.complain(
+            Problem::new(Code::TimeUnreadable, message).hint("Put the readings in order of time, each time once."),
+            log.place(engine, row + 1, "time"),
+        );
         return None;
     }
     Some(())
@@ -310,7 +384,8 @@ fn stated_carbon_dioxide<'e>(engine: &'e Engine<'e>, block: &Block) -> Option<Qu
         Some(block.raw.name.place),
     );
     let origin = Origin::Assumed("mole fraction of carbon dioxide not recorded");
-    let mut draft = InputDraft::new(&path, "x_CO₂", label, Kind::AmountFraction, unit("µmol/mol"), Value::Scalar(400e-6), origin);
+    let mut draft =
+        InputDraft::new(&path, "x_CO₂", label, Kind::AmountFraction, unit("µmol/mol"), Value::Scalar(400e-6), origin);
     draft.distribution = Distribution::Rectangular { half_width: 50e-6 };
     Some(engine.builder.input(draft))
 }

@@ -21,7 +21,11 @@ pub static KIND: BlockKind = BlockKind {
     ],
     outputs: &[
         Output { path: "mass", meaning: "combined mass, where masses are combined", unit: "kg" },
-        Output { path: "conventional_mass", meaning: "combined conventional mass; from the mass where an item is named", unit: "kg" },
+        Output {
+            path: "conventional_mass",
+            meaning: "combined conventional mass; from the mass where an item is named",
+            unit: "kg",
+        },
         Output { path: "difference", meaning: "combined mass difference, where differences are combined", unit: "mg" },
         Output { path: "value", meaning: "combined value of any other kind", unit: "" },
     ],
@@ -36,22 +40,40 @@ fn build(engine: &Engine, block: &Block) {
 fn combine<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
     let fields = block.fields();
     let paths = fields.texts("results");
-    let results: Vec<Quantity<'e>> = paths.iter().map(|path| engine.result(path)).collect::<Vec<_>>().into_iter().collect::<Option<_>>()?;
+    let results: Vec<Quantity<'e>> =
+        paths.iter().map(|path| engine.result(path)).collect::<Vec<_>>().into_iter().collect::<Option<_>>()?;
     let first = *results.first().or_else(|| {
-        engine.complain(Problem::new(Code::DesignIncomplete, "There is no result to combine."), fields.place_of("results"));
+        engine.complain(
+            Problem::new(Code::DesignIncomplete, "There is no result to combine."),
+            fields.place_of("results"),
+        );
         None
     })?;
-    if let Some((other, path)) = results.iter().zip(&paths).find(|(other, _)| other.kind() != first.kind() || other.dimension() != first.dimension()) {
-        let message = format!("{} is {}, but {} is {}; only results of one kind are combined.", path.text, other.kind().phrase(), paths[0].text, first.kind().phrase());
+    if let Some((other, path)) = results
+        .iter()
+        .zip(&paths)
+        .find(|(other, _)| other.kind() != first.kind() || other.dimension() != first.dimension())
+    {
+        let message = format!(
+            "{} is {}, but {} is {}; only results of one kind are combined.",
+            path.text,
+            other.kind().phrase(),
+            paths[0].text,
+            first.kind().phrase()
+        );
         engine.complain(Problem::new(Code::KindMismatch, message), path.place);
         return None;
     }
     let weights = match fields.words("weights").as_str() {
         "inverse_variance" => {
             let graph = engine.graph();
-            let uncertainties: Vec<f64> = results.iter().map(|result| standard_uncertainty(&graph, &sensitivities(&graph, result.id))).collect();
+            let uncertainties: Vec<f64> =
+                results.iter().map(|result| standard_uncertainty(&graph, &sensitivities(&graph, result.id))).collect();
             if let Some(index) = uncertainties.iter().position(|u| *u <= 0.0) {
-                let problem = Problem::new(Code::UncertaintyMissing, format!("{} has no uncertainty, so it cannot be weighted by it.", paths[index].text));
+                let problem = Problem::new(
+                    Code::UncertaintyMissing,
+                    format!("{} has no uncertainty, so it cannot be weighted by it.", paths[index].text),
+                );
                 drop(graph);
                 engine.complain(problem, paths[index].place);
                 return None;

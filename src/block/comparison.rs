@@ -35,7 +35,11 @@ const LEFT_OUT_OF_DATA_FIELDS: &[Field] = &[
 const SERIES_FIELDS: &[Field] = &[
     optional("start", Shape::Instant, "time of the first weighing"),
     optional("interval", Shape::Value(Kind::Duration), "time between weighings"),
-    optional("times", Shape::Either(&Shape::Texts, &Shape::Grid), "the time of each weighing, instead of start and interval"),
+    optional(
+        "times",
+        Shape::Either(&Shape::Texts, &Shape::Grid),
+        "the time of each weighing, instead of start and interval",
+    ),
     needed("indications", Shape::Grid, "the indications, one list a cycle"),
     optional("excluded", Shape::Mappings(LEFT_OUT_FIELDS), "cycles left out, with rule and reason"),
 ];
@@ -60,20 +64,40 @@ pub static KIND: BlockKind = BlockKind {
         optional("ambient", Shape::Name, "the logged conditions"),
         optional("air_density", Shape::Value(Kind::Density), "a stated density of the air, instead of conditions"),
         optional("air_temperature", Shape::Value(Kind::Temperature), "the air temperature that goes with it"),
-        needed("type_a", Shape::Choice(&["own", "pooled"]), "scatter of this comparison, or the comparator's repeatability"),
+        needed(
+            "type_a",
+            Shape::Choice(&["own", "pooled"]),
+            "scatter of this comparison, or the comparator's repeatability",
+        ),
         optional("unit", Shape::Text, "the unit of the indications written here"),
         optional("series", Shape::Mappings(SERIES_FIELDS), "series of cycles, written here"),
         optional("data", Shape::Name, "raw data with the columns series, cycle, which, time, indication"),
-        optional("excluded", Shape::Mappings(LEFT_OUT_OF_DATA_FIELDS), "cycles of the raw data left out, with rule and reason"),
+        optional(
+            "excluded",
+            Shape::Mappings(LEFT_OUT_OF_DATA_FIELDS),
+            "cycles of the raw data left out, with rule and reason",
+        ),
         optional("added", Shape::Mapping(ADDED_FIELDS), "small weights added on either pan"),
         optional("mass_of_a", Shape::Value(Kind::Mass), "the mass of a, instead of that of its calibration"),
     ],
     outputs: &[
         Output { path: "difference", meaning: "mass difference b − a (several b: NAME.B.difference)", unit: "mg" },
         Output { path: "mass", meaning: "mass of b (several b: NAME.B.mass)", unit: "kg" },
-        Output { path: "conventional_mass", meaning: "conventional mass of b (several b: NAME.B.conventional_mass)", unit: "kg" },
-        Output { path: "indication_difference", meaning: "mean difference of the indications times the sensitivity, before buoyancy", unit: "mg" },
-        Output { path: "corrected_difference", meaning: "mean difference of the weighings corrected for buoyancy", unit: "mg" },
+        Output {
+            path: "conventional_mass",
+            meaning: "conventional mass of b (several b: NAME.B.conventional_mass)",
+            unit: "kg",
+        },
+        Output {
+            path: "indication_difference",
+            meaning: "mean difference of the indications times the sensitivity, before buoyancy",
+            unit: "mg",
+        },
+        Output {
+            path: "corrected_difference",
+            meaning: "mean difference of the weighings corrected for buoyancy",
+            unit: "mg",
+        },
         Output { path: "buoyancy", meaning: "buoyancy correction of the difference", unit: "mg" },
         Output { path: "series.N", meaning: "mean of series N, corrected for buoyancy", unit: "mg" },
         Output { path: "air.density", meaning: "mean air density over the weighings", unit: "kg m⁻³" },
@@ -90,7 +114,10 @@ pub static KIND: BlockKind = BlockKind {
 fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     if fields.get("series").is_some() == fields.get("data").is_some() {
         let problem = Problem::new(Code::FieldMissing, "A comparison needs either series or data.");
-        complaints.add_at(problem.hint("Write the indications as `series:`, or name a raw-data block as `data:`."), fields.place());
+        complaints.add_at(
+            problem.hint("Write the indications as `series:`, or name a raw-data block as `data:`."),
+            fields.place(),
+        );
     }
     if fields.get("ambient").is_some() == fields.get("air_density").is_some() {
         let problem = Problem::new(Code::FieldMissing, "A comparison needs either ambient or air_density.");
@@ -98,14 +125,29 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     }
     let several = fields.words("cycle").starts_with("AB1");
     if !several && fields.texts("b").len() > 1 {
-        let message = format!("The cycle {} compares one weight with a, but b names {}.", fields.words("cycle"), fields.texts("b").len());
-        complaints.add_at(Problem::new(Code::DesignIncomplete, message).hint("Write `cycle: AB1…BnA`, or one comparison for each weight."), fields.place_of("b"));
+        let message = format!(
+            "The cycle {} compares one weight with a, but b names {}.",
+            fields.words("cycle"),
+            fields.texts("b").len()
+        );
+        complaints.add_at(
+            Problem::new(Code::DesignIncomplete, message)
+                .hint("Write `cycle: AB1…BnA`, or one comparison for each weight."),
+            fields.place_of("b"),
+        );
     }
-    let left_out = fields.mappings("excluded").into_iter().chain(fields.mappings("series").into_iter().flat_map(|series| series.mappings("excluded")));
+    let left_out = fields
+        .mappings("excluded")
+        .into_iter()
+        .chain(fields.mappings("series").into_iter().flat_map(|series| series.mappings("excluded")));
     for cycle in left_out {
         if cycle.get("rule").is_none() || cycle.words("reason").trim().is_empty() {
             let message = format!("Cycle {} is left out without a rule and a reason.", cycle.words("cycle"));
-            complaints.add_at(Problem::new(Code::ExclusionWithoutReason, message).hint("Write `rule:` with the name of a rule dated before the weighing, and `reason:`."), cycle.place());
+            complaints.add_at(
+                Problem::new(Code::ExclusionWithoutReason, message)
+                    .hint("Write `rule:` with the name of a rule dated before the weighing, and `reason:`."),
+                cycle.place(),
+            );
         }
     }
 }
@@ -166,7 +208,13 @@ impl<'e> Work<'e> {
         let weight_a = Weight::find(engine, &a_name)?;
         let a_is_known = fields.get("mass_of_a").is_some() || weight_a.is_calibrated();
         let m_a = match fields.given("mass_of_a", Kind::Mass) {
-            Some(given) => engine.given(&given, &format!("{}.mass_of_a", block.name()), &format!("m_{}", a_name.text), &format!("mass of {}", weight_a.block.label()), Kind::Mass)?,
+            Some(given) => engine.given(
+                &given,
+                &format!("{}.mass_of_a", block.name()),
+                &format!("m_{}", a_name.text),
+                &format!("mass of {}", weight_a.block.label()),
+                Kind::Mass,
+            )?,
             None if a_is_known => weight_a.mass(day, a_name.place)?,
             None => weight_a.nominal()?,
         };
@@ -176,14 +224,36 @@ impl<'e> Work<'e> {
         for name in &names {
             b.push(load(engine, Weight::find(engine, name)?, None, gradient, name.place)?);
         }
-        Some(Work { engine, block, several, pans, comparator, weighings, cycles, excluded, surroundings, day, m_a, a_is_known, a, b })
+        Some(Work {
+            engine,
+            block,
+            several,
+            pans,
+            comparator,
+            weighings,
+            cycles,
+            excluded,
+            surroundings,
+            day,
+            m_a,
+            a_is_known,
+            a,
+            b,
+        })
     }
 
     /// Reduces the comparison and names its results.
     fn finish(self) -> Option<()> {
         self.name_air();
         let k = self.comparator.sensitivity()?;
-        let several_series = self.cycles.iter().filter(|cycle| !cycle.excluded).map(|cycle| cycle.series).collect::<std::collections::BTreeSet<_>>().len() > 1;
+        let several_series = self
+            .cycles
+            .iter()
+            .filter(|cycle| !cycle.excluded)
+            .map(|cycle| cycle.series)
+            .collect::<std::collections::BTreeSet<_>>()
+            .len()
+            > 1;
         let dispersion = match self.block.fields().words("type_a").as_str() {
             "own" => Dispersion::Own,
             _ => self.comparator.repeatability(several_series, self.block.fields().place_of("type_a"))?,
@@ -216,7 +286,12 @@ impl<'e> Work<'e> {
         let air = self.surroundings;
         let name = |quantity: Quantity<'e>, path: &str, symbol: &str, label: &str, shown: &str| {
             let mean = if quantity.rows().len() > 1 { quantity.mean() } else { quantity.alias() };
-            mean.result(path, symbol, &format!("mean {label} over the weighings of {}", self.block.name()), &unit(shown));
+            mean.result(
+                path,
+                symbol,
+                &format!("mean {label} over the weighings of {}", self.block.name()),
+                &unit(shown),
+            );
         };
         name(air.density, "density", "ρ_a", "air density", "kg/m3");
         if let Some(temperature) = air.temperature {
@@ -254,7 +329,8 @@ impl<'e> Work<'e> {
         };
         let mut y = k * self.weighings.indications.as_kind(Kind::Plain);
         for (pan, load) in [&self.a].into_iter().chain(&self.b).enumerate() {
-            let mask: Vec<f64> = self.weighings.list.iter().map(|weighing| f64::from(u8::from(weighing.on_pan == pan as u32))).collect();
+            let mask: Vec<f64> =
+                self.weighings.list.iter().map(|weighing| f64::from(u8::from(weighing.on_pan == pan as u32))).collect();
             y = y + buoyancy(load) * builder.column(mask);
         }
         y
@@ -263,7 +339,8 @@ impl<'e> Work<'e> {
     fn by_cycles(&self, y: Quantity<'e>, dispersion: Dispersion) -> Option<Vec<Quantity<'e>>> {
         let (engine, name) = (self.engine, self.block.name());
         let place = self.block.raw.name.place;
-        let rule = engine.keep(MeanDifference::new(&self.cycles, dispersion), self.block.fields().place_of("type_a"))?;
+        let rule =
+            engine.keep(MeanDifference::new(&self.cycles, dispersion), self.block.fields().place_of("type_a"))?;
         let series = rule.series().to_vec();
         let outputs = vec![(Dimension::MASS, Kind::MassDifference); series.len() + 1];
         let label = format!("repeatability of the comparison {name}");
@@ -271,9 +348,19 @@ impl<'e> Work<'e> {
         let made = engine.keep(made, place)?;
         let _scope = engine.builder.scope(name, Some(&weighing_cycle::METHOD.info));
         for (series, mean) in series.iter().zip(&made[1..]) {
-            mean.result(&format!("series.{series}"), &format!("D_{series}"), &format!("mean of series {series}"), &unit("mg"));
+            mean.result(
+                &format!("series.{series}"),
+                &format!("D_{series}"),
+                &format!("mean of series {series}"),
+                &unit("mg"),
+            );
         }
-        Some(vec![made[0].result("corrected_difference", "D", &format!("mean difference of the corrected weighings of {name}"), &unit("mg"))])
+        Some(vec![made[0].result(
+            "corrected_difference",
+            "D",
+            &format!("mean difference of the corrected weighings of {name}"),
+            &unit("mg"),
+        )])
     }
 
     fn averaged(&self, y: Quantity<'e>, dispersion: Dispersion) -> Option<Vec<Quantity<'e>>> {
@@ -291,7 +378,12 @@ impl<'e> Work<'e> {
         let made = engine.keep(made, self.block.raw.name.place)?;
         let named = made.iter().enumerate().map(|(index, difference)| {
             let _scope = engine.builder.scope(&self.scope_name(index), Some(&averaging_cycle::METHOD.info));
-            difference.result("corrected_difference", "D", &format!("mean difference of the corrected weighings of {}", self.b[index].weight.block.label()), &unit("mg"))
+            difference.result(
+                "corrected_difference",
+                "D",
+                &format!("mean difference of the corrected weighings of {}", self.b[index].weight.block.label()),
+                &unit("mg"),
+            )
         });
         Some(named.collect())
     }
@@ -306,14 +398,35 @@ impl<'e> Work<'e> {
             let place = fields.place_of("resolution");
             for (side, on) in [("a", &self.a), ("b", &self.b[index])] {
                 let path = format!("{}.rounding_{side}", self.scope_name(index));
-                let label = format!("rounding of the indications of {} with {} on the pan", comparator.block.label(), on.weight.block.label());
-                let input = engine.derived_input(&path, &format!("δ_d,{side}"), &label, Kind::MassDifference, &unit("µg"), rounding, place);
+                let label = format!(
+                    "rounding of the indications of {} with {} on the pan",
+                    comparator.block.label(),
+                    on.weight.block.label()
+                );
+                let input = engine.derived_input(
+                    &path,
+                    &format!("δ_d,{side}"),
+                    &label,
+                    Kind::MassDifference,
+                    &unit("µg"),
+                    rounding,
+                    place,
+                );
                 bounds.push(if side == "a" { -input } else { input });
             }
         }
-        for (field, symbol, words) in [("eccentricity", "δ_E", "eccentric loading of"), ("linearity", "δ_lin", "departure from linearity of")] {
+        for (field, symbol, words) in
+            [("eccentricity", "δ_E", "eccentric loading of"), ("linearity", "δ_lin", "departure from linearity of")]
+        {
             let label = format!("{words} {}", comparator.block.label());
-            bounds.extend(engine.bound(fields, field, &format!("{name}.{field}"), symbol, &label, Kind::MassDifference));
+            bounds.extend(engine.bound(
+                fields,
+                field,
+                &format!("{name}.{field}"),
+                symbol,
+                &label,
+                Kind::MassDifference,
+            ));
         }
         bounds
     }
@@ -327,9 +440,19 @@ impl<'e> Work<'e> {
             for name in added.texts(side) {
                 let small = Weight::find(self.engine, &name)?;
                 let mass = small.mass(self.day, name.place)?;
-                if let (Some(known), Some(reference)) = (self.basis_of(mass), self.basis_of(self.m_a)) && known != reference {
-                    let message = format!("{} is on the unit basis {known}, but {} on {reference}; they cannot be added.", name.text, self.a.weight.block.name());
-                    self.engine.complain(Problem::new(Code::BasisMismatch, message).hint("Use the certificate on the same basis, or state the shift between the two."), name.place);
+                if let (Some(known), Some(reference)) = (self.basis_of(mass), self.basis_of(self.m_a))
+                    && known != reference
+                {
+                    let message = format!(
+                        "{} is on the unit basis {known}, but {} on {reference}; they cannot be added.",
+                        name.text,
+                        self.a.weight.block.name()
+                    );
+                    self.engine.complain(
+                        Problem::new(Code::BasisMismatch, message)
+                            .hint("Use the certificate on the same basis, or state the shift between the two."),
+                        name.place,
+                    );
                     return None;
                 }
                 let volume = small.volume(Some(mass), name.place)?;
@@ -350,7 +473,12 @@ impl<'e> Work<'e> {
     }
 
     /// Difference, mass and conventional mass of weight number `index`.
-    fn name_results(&self, index: usize, corrected: Quantity<'e>, indications: Quantity<'e>) -> Option<crate::graph::NodeId> {
+    fn name_results(
+        &self,
+        index: usize,
+        corrected: Quantity<'e>,
+        indications: Quantity<'e>,
+    ) -> Option<crate::graph::NodeId> {
         let (engine, load) = (self.engine, self.b[index]);
         let (name, label) = (load.weight.block.name(), load.weight.block.label());
         let total = self.comparator_bounds(index).into_iter().fold(corrected, |sum, bound| sum + bound);
@@ -360,9 +488,15 @@ impl<'e> Work<'e> {
         let from_stated_volume = substitution::mass_difference(total, self.m_a, self.a.gradient, load.gradient, added);
         let difference = self.with_own_density(load, from_stated_volume)?;
         let basis_label = format!("mass difference {label} − {}", self.a.weight.block.label());
-        let difference = difference.in_state(self.m_a.state()).result("difference", &format!("Δm_{name}"), &basis_label, &unit("mg"));
+        let difference = difference.in_state(self.m_a.state()).result(
+            "difference",
+            &format!("Δm_{name}"),
+            &basis_label,
+            &unit("mg"),
+        );
         if self.a_is_known {
-            let mass = (self.m_a + difference).result("mass", &format!("m_{name}"), &format!("mass of {label}"), &unit("kg"));
+            let mass =
+                (self.m_a + difference).result("mass", &format!("m_{name}"), &format!("mass of {label}"), &unit("kg"));
             let density = load.weight.density(Some(mass))?;
             let _scope = engine.builder.scope("", Some(&conventional_mass::METHOD.info));
             conventional_mass::from_mass(&engine.builder, mass, density).result(
@@ -382,17 +516,28 @@ impl<'e> Work<'e> {
             return Some(difference);
         }
         let ratio = self.mean_density()?.as_kind(Kind::Plain) / load.weight.density(None)?.as_kind(Kind::Plain);
-        let departure = (self.m_a.as_kind(Kind::Plain) - load.weight.nominal()?.as_kind(Kind::Plain)) + difference.as_kind(Kind::Plain);
+        let departure = (self.m_a.as_kind(Kind::Plain) - load.weight.nominal()?.as_kind(Kind::Plain))
+            + difference.as_kind(Kind::Plain);
         Some((difference.as_kind(Kind::Plain) + departure * (ratio / (1.0 - ratio))).as_kind(Kind::MassDifference))
     }
 
     /// The part of the difference seen by the comparator, and the buoyancy added to it.
-    fn name_indication_difference(&self, index: usize, corrected: Quantity<'e>, indications: Quantity<'e>) -> Option<()> {
+    fn name_indication_difference(
+        &self,
+        index: usize,
+        corrected: Quantity<'e>,
+        indications: Quantity<'e>,
+    ) -> Option<()> {
         let weights = self.row_weights(index)?;
         let columns: Vec<(u32, f64)> = weights.iter().map(|(row, weight)| (*row as u32, *weight)).collect();
         let label = self.b[index].weight.block.label();
         let seen = indications.mix(vec![columns]).row(0).as_kind(Kind::MassDifference);
-        let seen = seen.result("indication_difference", "k ΔI", &format!("mean difference of the indications with {label}, in mass"), &unit("mg"));
+        let seen = seen.result(
+            "indication_difference",
+            "k ΔI",
+            &format!("mean difference of the indications with {label}, in mass"),
+            &unit("mg"),
+        );
         let buoyancy = (corrected.as_kind(Kind::Plain) - seen.as_kind(Kind::Plain)).as_kind(Kind::MassDifference);
         buoyancy.result("buoyancy", "B", &format!("buoyancy correction of the difference with {label}"), &unit("mg"));
         Some(())
@@ -413,8 +558,12 @@ impl<'e> Work<'e> {
         let freedom = graph.estimators[estimator as usize].estimate.degrees_of_freedom;
         drop(graph);
         if freedom <= 2.0 {
-            let message = format!("The Type A evaluation of {} has {freedom} degrees of freedom; a t distribution with so few has no variance.", self.block.name());
-            let problem = Problem::new(Code::FewReadings, message).hint("Weigh more series, or use the comparator's repeatability: `type_a: pooled`.");
+            let message = format!(
+                "The Type A evaluation of {} has {freedom} degrees of freedom; a t distribution with so few has no variance.",
+                self.block.name()
+            );
+            let problem = Problem::new(Code::FewReadings, message)
+                .hint("Weigh more series, or use the comparator's repeatability: `type_a: pooled`.");
             self.engine.complain(problem, self.block.fields().place_of("type_a"));
         }
     }
@@ -432,7 +581,12 @@ impl<'e> Work<'e> {
         let decisions = {
             let graph = self.engine.graph();
             match graph.node(found[0].id).op {
-                Op::Output(estimator, _) => graph.estimators[estimator.index()].estimate.decisions.iter().map(|d| (d.what.clone(), d.decided.clone())).collect(),
+                Op::Output(estimator, _) => graph.estimators[estimator.index()]
+                    .estimate
+                    .decisions
+                    .iter()
+                    .map(|d| (d.what.clone(), d.decided.clone()))
+                    .collect(),
                 _ => Vec::new(),
             }
         };
@@ -461,7 +615,8 @@ impl<'e> Work<'e> {
             let reference = (y[*first] + y[*last]) / 2.0;
             return cycle.rows[1..cycle.rows.len() - 1].iter().map(|row| y[*row] - reference).collect();
         }
-        weighing_cycle::cycle_weights(cycle).map_or(Vec::new(), |weights| vec![weights.iter().map(|(row, weight)| weight * y[*row]).sum()])
+        weighing_cycle::cycle_weights(cycle)
+            .map_or(Vec::new(), |weights| vec![weights.iter().map(|(row, weight)| weight * y[*row]).sum()])
     }
 
     /// The mean corrected difference had no cycle been left out.
@@ -480,10 +635,19 @@ fn pans_of(scheme: Scheme) -> Vec<u32> {
     scheme.order().iter().map(|b| u32::from(*b)).collect()
 }
 
-fn load<'e>(engine: &'e Engine<'e>, weight: Weight<'e>, mass: Option<Quantity<'e>>, gradient: Option<Quantity<'e>>, used_at: Place) -> Option<Load<'e>> {
+fn load<'e>(
+    engine: &'e Engine<'e>,
+    weight: Weight<'e>,
+    mass: Option<Quantity<'e>>,
+    gradient: Option<Quantity<'e>>,
+    used_at: Place,
+) -> Option<Load<'e>> {
     let volume = weight.volume(mass, used_at)?;
     if volume.expansion.is_none() {
-        engine.builder.assume(format!("{}: thermal expansion neglected, because no coefficient is recorded", weight.block.label()), Some(weight.block.raw.name.place));
+        engine.builder.assume(
+            format!("{}: thermal expansion neglected, because no coefficient is recorded", weight.block.label()),
+            Some(weight.block.raw.name.place),
+        );
     }
     let gradient = match (gradient, weight.mass_centre_height()) {
         (Some(gradient), Some(height)) => gradient.as_kind(Kind::Plain) * height.as_kind(Kind::Plain),
@@ -501,7 +665,8 @@ fn load<'e>(engine: &'e Engine<'e>, weight: Weight<'e>, mass: Option<Quantity<'e
 /// The cycles left out, with their rules.
 fn left_out(engine: &Engine<'_>, fields: Fields<'_>, day: NaiveDate) -> Option<Vec<Excluded>> {
     let mut excluded = Vec::new();
-    let of_data = fields.mappings("excluded").into_iter().map(|cycle| (cycle.number("series").unwrap_or(1.0) as u32, cycle));
+    let of_data =
+        fields.mappings("excluded").into_iter().map(|cycle| (cycle.number("series").unwrap_or(1.0) as u32, cycle));
     let of_series = fields.mappings("series").into_iter().enumerate().flat_map(|(index, series)| {
         series.mappings("excluded").into_iter().map(move |cycle| (index as u32 + 1, cycle))
     });
@@ -509,8 +674,13 @@ fn left_out(engine: &Engine<'_>, fields: Fields<'_>, day: NaiveDate) -> Option<V
         let name = cycle.text("rule")?;
         let rule = engine.block(&name, &["rule"])?;
         if let Some(date) = rule.fields().date("date").filter(|date| *date > day) {
-            let message = format!("The rule {} is dated {date}, after the weighing of {day} that it judges.", name.text);
-            engine.complain(Problem::new(Code::RuleDated, message).hint("A cycle is left out only by a rule laid down before the data."), name.place);
+            let message =
+                format!("The rule {} is dated {date}, after the weighing of {day} that it judges.", name.text);
+            engine.complain(
+                Problem::new(Code::RuleDated, message)
+                    .hint("A cycle is left out only by a rule laid down before the data."),
+                name.place,
+            );
             return None;
         }
         excluded.push(Excluded {
@@ -528,9 +698,21 @@ fn left_out(engine: &Engine<'_>, fields: Fields<'_>, day: NaiveDate) -> Option<V
 fn surroundings<'e>(engine: &'e Engine<'e>, block: &Block, weighings: &Weighings<'e>) -> Option<Surroundings<'e>> {
     let fields = block.fields();
     if let Some(given) = fields.given("air_density", Kind::Density) {
-        let density = engine.given(&given, &format!("{}.stated_air_density", block.name()), "ρ_a", "stated density of the air", Kind::Density)?;
+        let density = engine.given(
+            &given,
+            &format!("{}.stated_air_density", block.name()),
+            "ρ_a",
+            "stated density of the air",
+            Kind::Density,
+        )?;
         let temperature = match fields.given("air_temperature", Kind::Temperature) {
-            Some(given) => Some(engine.given(&given, &format!("{}.stated_air_temperature", block.name()), "t", "stated temperature of the air", Kind::Temperature)?),
+            Some(given) => Some(engine.given(
+                &given,
+                &format!("{}.stated_air_temperature", block.name()),
+                "t",
+                "stated temperature of the air",
+                Kind::Temperature,
+            )?),
             None => None,
         };
         return Some(Surroundings { density, temperature, pressure: None });
@@ -541,7 +723,8 @@ fn surroundings<'e>(engine: &'e Engine<'e>, block: &Block, weighings: &Weighings
     let air = logged.at(&times, |row| weighings.place(engine, row))?;
     let _scope = engine.builder.scope(&format!("{}.air", block.name()), Some(&air_density::METHOD.info));
     let label = format!("air density at the weighings of {}", block.name());
-    let density = air_density::density(&engine.builder, air).result("density_at_weighings", "ρ_i", &label, &unit("kg/m3"));
+    let density =
+        air_density::density(&engine.builder, air).result("density_at_weighings", "ρ_i", &label, &unit("kg/m3"));
     Some(Surroundings { density, temperature: Some(air.temperature), pressure: Some(air.pressure) })
 }
 

@@ -3,8 +3,8 @@
 //! The engine holds the blocks of a laboratory folder and one graph. Asking for a result builds the block that
 //! gives it and, before that, every block it rests on; what was not asked for is not built. Complaints gather here.
 
-use super::laboratory::Laboratory;
 use super::given::{Given, distribution_of};
+use super::laboratory::Laboratory;
 use super::{BlockKind, Fields, KINDS, field::check_fields, find_kind};
 use crate::diagnostic::{Code, Complaints, Problem, nearest};
 use crate::graph::{Builder, Distribution, Graph, InputDraft, NodeId, Origin, Quantity, Value};
@@ -84,14 +84,15 @@ impl<'i> Engine<'i> {
             complaints.extend(found);
             records.push(record);
         }
-        let laboratory = match sources.find("laboratory.md").and_then(|file| records.iter().find(|record| record.file == file)) {
-            Some(record) => Laboratory::read(record, &mut complaints),
-            None => {
-                let problem = Problem::new(Code::FileMissing, "The laboratory folder has no laboratory.md.");
-                complaints.add(problem.hint("`libripens start FOLDER` writes one to begin with.").anywhere());
-                Laboratory::default()
-            }
-        };
+        let laboratory =
+            match sources.find("laboratory.md").and_then(|file| records.iter().find(|record| record.file == file)) {
+                Some(record) => Laboratory::read(record, &mut complaints),
+                None => {
+                    let problem = Problem::new(Code::FileMissing, "The laboratory folder has no laboratory.md.");
+                    complaints.add(problem.hint("`libripens start FOLDER` writes one to begin with.").anywhere());
+                    Laboratory::default()
+                }
+            };
         let blocks = gather(&records, &sources, &mut complaints);
         let progress = Progress { complaints, ..Progress::default() };
         Ok(Engine {
@@ -151,7 +152,8 @@ impl<'i> Engine<'i> {
     pub fn used_files(&self) -> BTreeSet<String> {
         let progress = self.progress.borrow();
         let of_blocks = progress.used.iter().filter_map(|name| self.blocks.get(name)).map(|block| block.path.clone());
-        let others = progress.files.iter().map(|file| self.sources.borrow().file(*file).path.clone()).collect::<Vec<_>>();
+        let others =
+            progress.files.iter().map(|file| self.sources.borrow().file(*file).path.clone()).collect::<Vec<_>>();
         of_blocks.chain(others).chain(["laboratory.md".to_string()]).collect()
     }
 
@@ -183,15 +185,27 @@ impl<'i> Engine<'i> {
         let Some(block) = self.blocks.get(&name.text) else {
             let problem = Problem::new(Code::UndefinedReference, format!("No block is named {}.", name.text));
             let fitting = self.blocks.values().filter(|block| kinds.contains(&block.kind.name)).map(Block::name);
-            self.complain(match nearest(&name.text, fitting) {
-                Some(near) => problem.hint(format!("Did you mean {near}?")),
-                None => problem.hint(format!("A block of the kind {} is expected here.", kinds.join(" or "))),
-            }, name.place);
+            self.complain(
+                match nearest(&name.text, fitting) {
+                    Some(near) => problem.hint(format!("Did you mean {near}?")),
+                    None => problem.hint(format!("A block of the kind {} is expected here.", kinds.join(" or "))),
+                },
+                name.place,
+            );
             return None;
         };
         if !kinds.contains(&block.kind.name) {
-            let message = format!("{} is of the kind {}, but {} is expected here.", name.text, block.kind.name, kinds.join(" or "));
-            self.progress.borrow_mut().complaints.add(Problem::new(Code::KindMismatch, message).at(name.place).hint_at("It stands here.", block.raw.name.place));
+            let message = format!(
+                "{} is of the kind {}, but {} is expected here.",
+                name.text,
+                block.kind.name,
+                kinds.join(" or ")
+            );
+            self.progress.borrow_mut().complaints.add(
+                Problem::new(Code::KindMismatch, message)
+                    .at(name.place)
+                    .hint_at("It stands here.", block.raw.name.place),
+            );
             return None;
         }
         self.mark_used(block.name());
@@ -212,8 +226,10 @@ impl<'i> Engine<'i> {
         {
             let mut progress = self.progress.borrow_mut();
             if let Some(start) = progress.open.iter().position(|open| open == name) {
-                let circle = progress.open[start..].iter().map(String::as_str).chain([name]).collect::<Vec<_>>().join(" → ");
-                let problem = Problem::new(Code::CircularReference, format!("These blocks need each other's results: {circle}."));
+                let circle =
+                    progress.open[start..].iter().map(String::as_str).chain([name]).collect::<Vec<_>>().join(" → ");
+                let problem =
+                    Problem::new(Code::CircularReference, format!("These blocks need each other's results: {circle}."));
                 progress.complaints.add_at(problem.hint("One of them must be given a value of its own."), asked_at);
                 return;
             }
@@ -240,16 +256,25 @@ impl<'i> Engine<'i> {
     pub fn result(&self, path: &Text) -> Option<Quantity<'_>> {
         let name = path.text.split('.').next().unwrap_or_default();
         if !self.blocks.contains_key(name) && self.graph().find(&path.text).is_none() {
-            let problem = Problem::new(Code::UndefinedReference, format!("{} refers to no block: none is named {name}.", path.text));
-            self.complain(match nearest(name, self.blocks.keys().map(String::as_str)) {
-                Some(near) => problem.hint(format!("Did you mean {near}?")),
-                None => problem,
-            }, path.place);
+            let problem = Problem::new(
+                Code::UndefinedReference,
+                format!("{} refers to no block: none is named {name}.", path.text),
+            );
+            self.complain(
+                match nearest(name, self.blocks.keys().map(String::as_str)) {
+                    Some(near) => problem.hint(format!("Did you mean {near}?")),
+                    None => problem,
+                },
+                path.place,
+            );
             return None;
         }
         self.build(name, path.place);
         let found = self.graph().find(&path.text);
-        if found.is_none() && self.blocks.get(name).is_some_and(|block| block.sound) && !self.progress.borrow().open.iter().any(|open| open == name) {
+        if found.is_none()
+            && self.blocks.get(name).is_some_and(|block| block.sound)
+            && !self.progress.borrow().open.iter().any(|open| open == name)
+        {
             self.complain_unknown_output(path, name);
         }
         found.map(|id| self.builder.at(id)).filter(|quantity| self.graph().value(quantity.id).is_finite())
@@ -258,13 +283,16 @@ impl<'i> Engine<'i> {
     fn complain_unknown_output(&self, path: &Text, name: &str) {
         // A block that was complained of says nothing twice.
         let place = self.blocks[name].raw.place;
-        let inside = |at: Option<Place>| at.is_some_and(|at| at.file == place.file && at.start >= place.start && at.end <= place.end);
+        let inside = |at: Option<Place>| {
+            at.is_some_and(|at| at.file == place.file && at.start >= place.start && at.end <= place.end)
+        };
         if self.progress.borrow().complaints.list.iter().any(|complaint| inside(complaint.place)) {
             return;
         }
         let graph = self.graph();
         let prefix = format!("{name}.");
-        let outputs: Vec<&str> = graph.names.keys().filter(|known| known.starts_with(&prefix)).map(String::as_str).collect();
+        let outputs: Vec<&str> =
+            graph.names.keys().filter(|known| known.starts_with(&prefix)).map(String::as_str).collect();
         let problem = Problem::new(Code::UndefinedReference, format!("{name} gives no result {}.", path.text));
         let problem = match nearest(&path.text, outputs.iter().copied()) {
             Some(near) => problem.hint(format!("Did you mean {near}?")),
@@ -276,19 +304,39 @@ impl<'i> Engine<'i> {
     }
 
     /// The node of a value given in a field: an input under `path`, or the result it refers to.
-    pub fn given<'e>(&'e self, given: &Given, path: &str, symbol: &str, label: &str, kind: Kind) -> Option<Quantity<'e>> {
+    pub fn given<'e>(
+        &'e self,
+        given: &Given,
+        path: &str,
+        symbol: &str,
+        label: &str,
+        kind: Kind,
+    ) -> Option<Quantity<'e>> {
         match given {
             Given::Reference(reference) => {
                 let found = self.result(reference)?;
                 if kind != Kind::Plain && found.kind() != kind && found.kind() != Kind::Plain {
-                    let message = format!("{} is {}, but {} is expected here.", reference.text, found.kind().phrase(), kind.phrase());
+                    let message = format!(
+                        "{} is {}, but {} is expected here.",
+                        reference.text,
+                        found.kind().phrase(),
+                        kind.phrase()
+                    );
                     self.complain(Problem::new(Code::KindMismatch, message), reference.place);
                     return None;
                 }
                 Some(found)
             }
             Given::Stated { value, place } => {
-                let mut draft = InputDraft::new(path, symbol, label, kind, value.unit.clone(), Value::Scalar(value.value), Origin::Stated(*place));
+                let mut draft = InputDraft::new(
+                    path,
+                    symbol,
+                    label,
+                    kind,
+                    value.unit.clone(),
+                    Value::Scalar(value.value),
+                    Origin::Stated(*place),
+                );
                 draft.distribution = distribution_of(value);
                 draft.degrees_of_freedom = value.degrees_of_freedom;
                 draft.text = Some(value.text.clone());
@@ -310,7 +358,8 @@ impl<'i> Engine<'i> {
             *v == value && *w == u && *kind == draft.kind && *at != place && other.split('.').next() != Some(block)
         });
         if let Some((other, .., first)) = twin.cloned() {
-            let message = format!("{path} and {other} are typed with the same value and uncertainty: one input or two?");
+            let message =
+                format!("{path} and {other} are typed with the same value and uncertainty: one input or two?");
             let problem = Problem::new(Code::SameValueTwice, message)
                 .hint(format!("If it is one quantity, write it once and refer to it: `from {other}`. If they are two, a digit more in either says so."));
             progress.complaints.add(problem.at(place).hint_at("The other stands here.", first));
@@ -319,14 +368,32 @@ impl<'i> Engine<'i> {
     }
 
     /// An input with an estimate of zero or one that a field gives as a bound; nothing when the field is absent.
-    pub fn bound<'e>(&'e self, fields: Fields<'_>, name: &str, path: &str, symbol: &str, label: &str, kind: Kind) -> Option<Quantity<'e>> {
+    pub fn bound<'e>(
+        &'e self,
+        fields: Fields<'_>,
+        name: &str,
+        path: &str,
+        symbol: &str,
+        label: &str,
+        kind: Kind,
+    ) -> Option<Quantity<'e>> {
         self.given(&fields.given(name, kind)?, path, symbol, label, kind)
     }
 
     /// An input made by the program from a stated number, such as half a scale interval.
     #[allow(clippy::too_many_arguments)]
-    pub fn derived_input<'e>(&'e self, path: &str, symbol: &str, label: &str, kind: Kind, unit: &Unit, distribution: Distribution, place: Place) -> Quantity<'e> {
-        let mut draft = InputDraft::new(path, symbol, label, kind, unit.clone(), Value::Scalar(0.0), Origin::Stated(place));
+    pub fn derived_input<'e>(
+        &'e self,
+        path: &str,
+        symbol: &str,
+        label: &str,
+        kind: Kind,
+        unit: &Unit,
+        distribution: Distribution,
+        place: Place,
+    ) -> Quantity<'e> {
+        let mut draft =
+            InputDraft::new(path, symbol, label, kind, unit.clone(), Value::Scalar(0.0), Origin::Stated(place));
         draft.distribution = distribution;
         self.builder.input(draft)
     }
@@ -383,7 +450,10 @@ fn gather(records: &[Record], sources: &Sources, complaints: &mut Complaints) ->
                 continue;
             };
             if let Some(first) = blocks.get(&raw.name.text) {
-                let problem = Problem::new(Code::DuplicateName, format!("Two blocks are named {}; names are unique in the laboratory folder.", raw.name.text));
+                let problem = Problem::new(
+                    Code::DuplicateName,
+                    format!("Two blocks are named {}; names are unique in the laboratory folder.", raw.name.text),
+                );
                 complaints.add(problem.at(raw.name.place).hint_at("The first stands here.", first.raw.name.place));
                 continue;
             }
@@ -418,7 +488,8 @@ fn unknown_kind(found: &str) -> Problem {
     let problem = Problem::new(Code::KindUnknown, format!("No kind of measurement block is called {found}."));
     match nearest(found, KINDS.iter().map(|kind| kind.name)) {
         Some(near) => problem.hint(format!("Did you mean {near}?")),
-        None => problem.hint(format!("The kinds are {}.", KINDS.iter().map(|kind| kind.name).collect::<Vec<_>>().join(", "))),
+        None => problem
+            .hint(format!("The kinds are {}.", KINDS.iter().map(|kind| kind.name).collect::<Vec<_>>().join(", "))),
     }
 }
 

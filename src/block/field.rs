@@ -108,7 +108,14 @@ pub fn check_fields(node: &Node, fields: &[Field], owner: &str, complaints: &mut
     }
     for field in fields.iter().filter(|field| field.needed && node.get(field.name).is_none()) {
         let message = format!("The field {} is missing from {owner}: {}.", field.name, field.meaning);
-        complaints.add_at(Problem::new(Code::FieldMissing, message).hint(format!("Write `{}:` with {}.", field.name, field.shape.words())), node.place);
+        complaints.add_at(
+            Problem::new(Code::FieldMissing, message).hint(format!(
+                "Write `{}:` with {}.",
+                field.name,
+                field.shape.words()
+            )),
+            node.place,
+        );
     }
 }
 
@@ -116,12 +123,16 @@ fn unknown_field(found: &str, fields: &[Field], owner: &str) -> Problem {
     let problem = Problem::new(Code::FieldUnknown, format!("The field {found} is not known in {owner}."));
     match nearest(found, fields.iter().map(|field| field.name)) {
         Some(near) => problem.hint(format!("Did you mean {near}?")),
-        None => problem.hint(format!("Known fields: {}.", fields.iter().map(|field| field.name).collect::<Vec<_>>().join(", "))),
+        None => problem
+            .hint(format!("Known fields: {}.", fields.iter().map(|field| field.name).collect::<Vec<_>>().join(", "))),
     }
 }
 
 fn mismatch(owner: &str, expected: String, node: &Node) -> Problem {
-    Problem::new(Code::ShapeMismatch, format!("{} holds {}, but {expected} is expected.", capital(owner), node.describe()))
+    Problem::new(
+        Code::ShapeMismatch,
+        format!("{} holds {}, but {expected} is expected.", capital(owner), node.describe()),
+    )
 }
 
 fn capital(text: &str) -> String {
@@ -132,7 +143,9 @@ fn capital(text: &str) -> String {
 fn check_shape(node: &Node, shape: Shape, owner: &str, complaints: &mut Complaints) {
     match shape {
         Shape::Mapping(fields) => check_fields(node, fields, owner, complaints),
-        Shape::Mappings(fields) => each(node, shape, owner, complaints, |item, complaints| check_fields(item, fields, owner, complaints)),
+        Shape::Mappings(fields) => {
+            each(node, shape, owner, complaints, |item, complaints| check_fields(item, fields, owner, complaints))
+        }
         Shape::Named(fields) => match node.as_map() {
             Some(entries) => entries.iter().for_each(|entry| {
                 check_fields(&entry.value, fields, &format!("{} in {owner}", entry.key.text), complaints);
@@ -143,7 +156,9 @@ fn check_shape(node: &Node, shape: Shape, owner: &str, complaints: &mut Complain
             let inner = if matches!(shape, Shape::Texts) { Shape::Text } else { Shape::Number };
             each(node, shape, owner, complaints, |item, complaints| check_shape(item, inner, owner, complaints));
         }
-        Shape::Grid => each(node, shape, owner, complaints, |item, complaints| check_shape(item, Shape::Numbers, owner, complaints)),
+        Shape::Grid => each(node, shape, owner, complaints, |item, complaints| {
+            check_shape(item, Shape::Numbers, owner, complaints)
+        }),
         Shape::Names | Shape::Results if node.as_list().is_some() => {
             let inner = if matches!(shape, Shape::Names) { Shape::Name } else { Shape::Results };
             each(node, shape, owner, complaints, |item, complaints| check_scalar(item, inner, owner, complaints));
@@ -151,7 +166,10 @@ fn check_shape(node: &Node, shape: Shape, owner: &str, complaints: &mut Complain
         Shape::Either(first, second) => {
             let mut tried = Complaints::default();
             check_shape(node, *first, owner, &mut tried);
-            let wrong_shape = tried.list.iter().any(|complaint| complaint.code == Code::ShapeMismatch && complaint.place == Some(node.place));
+            let wrong_shape = tried
+                .list
+                .iter()
+                .any(|complaint| complaint.code == Code::ShapeMismatch && complaint.place == Some(node.place));
             if wrong_shape { check_shape(node, *second, owner, complaints) } else { complaints.extend(tried) }
         }
         Shape::Value(_) | Shape::AnyValue => check_value(node, shape, owner, complaints),
@@ -159,7 +177,13 @@ fn check_shape(node: &Node, shape: Shape, owner: &str, complaints: &mut Complain
     }
 }
 
-fn each(node: &Node, shape: Shape, owner: &str, complaints: &mut Complaints, mut check: impl FnMut(&Node, &mut Complaints)) {
+fn each(
+    node: &Node,
+    shape: Shape,
+    owner: &str,
+    complaints: &mut Complaints,
+    mut check: impl FnMut(&Node, &mut Complaints),
+) {
     match node.as_list() {
         Some(items) => items.iter().for_each(|item| check(item, complaints)),
         None => complaints.add_at(mismatch(owner, shape.words(), node), node.place),
@@ -190,7 +214,10 @@ fn check_scalar(node: &Node, shape: Shape, owner: &str, complaints: &mut Complai
         }
         Shape::Name | Shape::Names if !is_name(text) => Err(Problem::new(
             Code::NameInvalid,
-            format!("{} is “{text}”, but a name is a letter followed by letters, digits and underscores.", capital(owner)),
+            format!(
+                "{} is “{text}”, but a name is a letter followed by letters, digits and underscores.",
+                capital(owner)
+            ),
         )),
         Shape::Number => number(text).map(|_| ()),
         Shape::Date => parse_date(text).map(|_| ()),

@@ -9,7 +9,10 @@ use crate::record::{Node, Text};
 /// What stands in a field for a value.
 #[derive(Debug, Clone, PartialEq)]
 pub enum Given {
-    Stated { value: Box<StatedValue>, place: Place },
+    Stated {
+        value: Box<StatedValue>,
+        place: Place,
+    },
     /// `from W3.mass`: the same node, not a copy.
     Reference(Text),
 }
@@ -36,14 +39,23 @@ pub fn read_given(node: &Node, kind: Kind, owner: &str) -> Result<Given, Box<Com
             .map_err(|problem| fail(naming(problem, owner), node.place));
     }
     let Some(entries) = node.as_map() else {
-        return Err(fail(Problem::new(Code::ShapeMismatch, format!("A value is expected as {owner}, found {}.", node.describe())), node.place));
+        return Err(fail(
+            Problem::new(Code::ShapeMismatch, format!("A value is expected as {owner}, found {}.", node.describe())),
+            node.place,
+        ));
     };
     if let Some(entry) = entries.iter().find(|entry| !LONG_FORM.contains(&entry.key.text.as_str())) {
         let message = format!("The field {} is not known in {owner}.", entry.key.text);
-        return Err(fail(Problem::new(Code::FieldUnknown, message).hint(format!("Known fields: {}.", LONG_FORM.join(", "))), entry.key.place));
+        return Err(fail(
+            Problem::new(Code::FieldUnknown, message).hint(format!("Known fields: {}.", LONG_FORM.join(", "))),
+            entry.key.place,
+        ));
     }
     let Some(inner) = node.get("value") else {
-        return Err(fail(Problem::new(Code::FieldMissing, format!("The field value is missing from {owner}.")), node.place));
+        return Err(fail(
+            Problem::new(Code::FieldMissing, format!("The field value is missing from {owner}.")),
+            node.place,
+        ));
     };
     let given = read_given(inner, kind, owner)?;
     with_stated_uncertainty(given, node, kind, owner)

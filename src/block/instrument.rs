@@ -13,10 +13,8 @@ use crate::quantity::Kind;
 use crate::record::Text;
 use chrono::NaiveDate;
 
-const RANGE_FIELDS: &[Field] = &[
-    needed("from", Shape::AnyValue, "the lower end"),
-    needed("to", Shape::AnyValue, "the upper end"),
-];
+const RANGE_FIELDS: &[Field] =
+    &[needed("from", Shape::AnyValue, "the lower end"), needed("to", Shape::AnyValue, "the upper end")];
 
 const POINT_FIELDS: &[Field] = &[
     needed("at", Shape::AnyValue, "the indication"),
@@ -37,7 +35,11 @@ pub static KIND: BlockKind = BlockKind {
     name: "instrument",
     meaning: "an instrument with its dated calibrations",
     fields: &[
-        needed("measures", Shape::Choice(&["temperature", "pressure", "humidity", "dew_point", "carbon_dioxide"]), "what it measures"),
+        needed(
+            "measures",
+            Shape::Choice(&["temperature", "pressure", "humidity", "dew_point", "carbon_dioxide"]),
+            "what it measures",
+        ),
         optional("label", Shape::Text, "what is printed for it"),
         optional("identification", Shape::Text, "marking, serial number, firmware"),
         optional("range", Shape::Mapping(RANGE_FIELDS), "the range of its indications"),
@@ -68,7 +70,9 @@ pub fn kinds_of(measures: &str) -> (Kind, Kind) {
 fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     let (kind, difference) = kinds_of(&fields.words("measures"));
     let mut verify = |holder: Fields<'_>, name: &str, kind: Kind| {
-        if let Some(node) = holder.get(name) && let Err(complaint) = super::given::read_given(node, kind, name) {
+        if let Some(node) = holder.get(name)
+            && let Err(complaint) = super::given::read_given(node, kind, name)
+        {
             complaints.add(*complaint);
         }
     };
@@ -87,13 +91,23 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     }
     for calibration in fields.mappings("calibrations") {
         if calibration.get("correction").is_some() == calibration.get("table").is_some() {
-            let message = format!("The certificate {} needs either a correction or a table.", calibration.words("certificate"));
+            let message =
+                format!("The certificate {} needs either a correction or a table.", calibration.words("certificate"));
             complaints.add_at(Problem::new(Code::FieldMissing, message), calibration.place());
         }
         let stated = [calibration].into_iter().chain(calibration.mappings("table"));
         for holder in stated {
-            if let Some(super::given::Given::Stated { value, place }) = holder.given("correction", difference) && value.standard_uncertainty().is_none() {
-                let problem = Problem::new(Code::UncertaintyMissing, format!("The correction {} of certificate {} has no uncertainty.", value.text, calibration.words("certificate")));
+            if let Some(super::given::Given::Stated { value, place }) = holder.given("correction", difference)
+                && value.standard_uncertainty().is_none()
+            {
+                let problem = Problem::new(
+                    Code::UncertaintyMissing,
+                    format!(
+                        "The correction {} of certificate {} has no uncertainty.",
+                        value.text,
+                        calibration.words("certificate")
+                    ),
+                );
                 complaints.add_at(problem.hint("Write it with the certificate's uncertainty, such as `-0.012(3) K` or `-0.012 K ± 0.006 K (k = 2)`."), place);
             }
         }
@@ -113,7 +127,10 @@ impl<'e> Instrument<'e> {
         let block = engine.block(name, &["instrument"])?;
         let found = block.fields().words("measures");
         if found != measures {
-            let problem = Problem::new(Code::KindMismatch, format!("{} measures {found}, but an instrument for {measures} is expected here.", name.text));
+            let problem = Problem::new(
+                Code::KindMismatch,
+                format!("{} measures {found}, but an instrument for {measures} is expected here.", name.text),
+            );
             engine.complain(problem, name.place);
             return None;
         }
@@ -124,7 +141,9 @@ impl<'e> Instrument<'e> {
     pub fn resolution(self) -> Distribution {
         let (_, difference) = kinds_of(&self.block.fields().words("measures"));
         match self.block.fields().given("resolution", difference) {
-            Some(super::given::Given::Stated { value, .. }) => Distribution::Rectangular { half_width: value.value / 2.0 },
+            Some(super::given::Given::Stated { value, .. }) => {
+                Distribution::Rectangular { half_width: value.value / 2.0 }
+            }
             _ => Distribution::Exact,
         }
     }
@@ -153,13 +172,27 @@ impl<'e> Instrument<'e> {
         };
         let mut corrected = indications.as_kind(Kind::Plain) + correction.as_kind(Kind::Plain);
         let drift_label = format!("change of {} since its calibration", self.block.label());
-        if let Some(drift) = engine.bound(fields, "drift_since_calibration", &format!("{name}.drift"), &format!("δ_{name}"), &drift_label, difference) {
+        if let Some(drift) = engine.bound(
+            fields,
+            "drift_since_calibration",
+            &format!("{name}.drift"),
+            &format!("δ_{name}"),
+            &drift_label,
+            difference,
+        ) {
             corrected = corrected + drift.as_kind(Kind::Plain);
         }
         Some(corrected.as_kind(kind))
     }
 
-    fn from_table(self, calibration: Fields<'_>, indications: Quantity<'e>, path: &str, label: &str, used_at: Place) -> Option<Quantity<'e>> {
+    fn from_table(
+        self,
+        calibration: Fields<'_>,
+        indications: Quantity<'e>,
+        path: &str,
+        label: &str,
+        used_at: Place,
+    ) -> Option<Quantity<'e>> {
         let (engine, name) = (self.engine, self.block.name());
         let (kind, difference) = kinds_of(&self.block.fields().words("measures"));
         let mut points = Vec::new();
@@ -169,11 +202,26 @@ impl<'e> Instrument<'e> {
             points.push(value.value);
             let given = point.given("correction", difference)?;
             let at = format!("{label}, at {}", value.text);
-            corrections.push(engine.given(&given, &format!("{path}.{}", index + 1), &format!("c_{name},{}", index + 1), &at, difference)?);
+            corrections.push(engine.given(
+                &given,
+                &format!("{path}.{}", index + 1),
+                &format!("c_{name},{}", index + 1),
+                &at,
+                difference,
+            )?);
         }
         if points.windows(2).any(|pair| pair[0] >= pair[1]) {
-            let problem = Problem::new(Code::DesignIncomplete, format!("The table of certificate {} does not rise from point to point.", calibration.words("certificate")));
-            engine.complain(problem.hint("List the points from the lowest to the highest indication."), calibration.place_of("table"));
+            let problem = Problem::new(
+                Code::DesignIncomplete,
+                format!(
+                    "The table of certificate {} does not rise from point to point.",
+                    calibration.words("certificate")
+                ),
+            );
+            engine.complain(
+                problem.hint("List the points from the lowest to the highest indication."),
+                calibration.place_of("table"),
+            );
             return None;
         }
         let found = instrument_correction::interpolated(&engine.builder, indications, &points, &corrections);

@@ -17,9 +17,17 @@ const FIELDS: &[Field] = &[
     needed("format", Shape::Number, "the format of the records, 1"),
     needed("name", Shape::Text, "the laboratory's name"),
     needed("address", Shape::Text, "the laboratory's address"),
-    optional("coverage_probability", Shape::AnyValue, "coverage probability of expanded uncertainties, such as 95.45 %"),
+    optional(
+        "coverage_probability",
+        Shape::AnyValue,
+        "coverage probability of expanded uncertainties, such as 95.45 %",
+    ),
     optional("decimal_marker", Shape::Choice(&["point", "comma"]), "decimal marker in reports"),
-    optional("degrees_of_freedom", Shape::Choice(&["truncated", "as computed"]), "how effective degrees of freedom enter the coverage factor"),
+    optional(
+        "degrees_of_freedom",
+        Shape::Choice(&["truncated", "as computed"]),
+        "how effective degrees of freedom enter the coverage factor",
+    ),
     optional("trials", Shape::Number, "number of Monte Carlo trials where a report asks for them"),
     optional("unit_bases", Shape::Mappings(BASIS_FIELDS), "the unit bases masses may refer to"),
 ];
@@ -60,17 +68,28 @@ impl Laboratory {
     /// Reads the front matter of `laboratory.md`.
     pub fn read(record: &Record, complaints: &mut Complaints) -> Laboratory {
         let Some(front) = &record.front else {
-            let problem = Problem::new(Code::RecordUnreadable, "laboratory.md has no front matter, so the laboratory has no name.");
-            complaints.add_at(problem.hint("Begin the file with `---`, `format: 1`, `name:`, `address:`, `---`."), record.body);
+            let problem = Problem::new(
+                Code::RecordUnreadable,
+                "laboratory.md has no front matter, so the laboratory has no name.",
+            );
+            complaints.add_at(
+                problem.hint("Begin the file with `---`, `format: 1`, `name:`, `address:`, `---`."),
+                record.body,
+            );
             return Laboratory::default();
         };
         check_fields(front, FIELDS, "laboratory.md", complaints);
         let fields = Fields { node: front };
         if let Some(format) = fields.number("format").filter(|format| *format != 1.0) {
             let message = format!("These records are in format {format}; this program reads format 1.");
-            complaints.add_at(Problem::new(Code::FormatUnsupported, message).hint("Use the version of the program the folder was written for."), fields.place_of("format"));
+            complaints.add_at(
+                Problem::new(Code::FormatUnsupported, message)
+                    .hint("Use the version of the program the folder was written for."),
+                fields.place_of("format"),
+            );
         }
-        let mut laboratory = Laboratory { name: fields.words("name"), address: fields.words("address"), ..Laboratory::default() };
+        let mut laboratory =
+            Laboratory { name: fields.words("name"), address: fields.words("address"), ..Laboratory::default() };
         laboratory.take_settings(fields, complaints);
         laboratory
     }
@@ -80,7 +99,9 @@ impl Laboratory {
             "as computed" => DegreesOfFreedomRule::AsComputed,
             stated => {
                 if stated.is_empty() {
-                    self.assumed.push("effective degrees of freedom are truncated to a whole number for the coverage factor".into());
+                    self.assumed.push(
+                        "effective degrees of freedom are truncated to a whole number for the coverage factor".into(),
+                    );
                 }
                 DegreesOfFreedomRule::Truncated
             }
@@ -107,7 +128,8 @@ impl Laboratory {
                 self.trials = trials as usize;
             }
         }
-        self.unit_bases = fields.mappings("unit_bases").iter().map(|basis| (basis.words("id"), basis.words("label"))).collect();
+        self.unit_bases =
+            fields.mappings("unit_bases").iter().map(|basis| (basis.words("id"), basis.words("label"))).collect();
     }
 
     /// The label of a unit basis; its name where it has none.

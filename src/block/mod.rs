@@ -26,8 +26,8 @@ pub mod instrument;
 pub mod laboratory;
 pub mod particulars;
 pub mod raw_data;
-pub mod weight;
 pub mod weighing;
+pub mod weight;
 
 pub use engine::{Block, Engine};
 pub use field::{Field, Shape};
@@ -83,7 +83,10 @@ pub fn outputs_table() -> String {
     let mut table = String::from("| block kind | output | meaning | unit |\n|---|---|---|---|\n");
     for kind in KINDS {
         for output in kind.outputs {
-            table.push_str(&format!("| `{}` | `NAME.{}` | {} | {} |\n", kind.name, output.path, output.meaning, output.unit));
+            table.push_str(&format!(
+                "| `{}` | `NAME.{}` | {} | {} |\n",
+                kind.name, output.path, output.meaning, output.unit
+            ));
         }
         if kind.outputs.is_empty() {
             table.push_str(&format!("| `{}` | | {} | |\n", kind.name, kind.meaning));

@@ -8,7 +8,9 @@ use crate::diagnostic::{Code, Problem};
 use crate::graph::{Distribution, InputDraft, Origin, Quantity, ReadingColumn, Value};
 use crate::intake::{FileId, Place};
 use crate::quantity::{Kind, Unit};
-use crate::record::{ColumnData, Content, RowFilter, Text, WantedColumn, parse_instant, parse_timestamps, read_columns};
+use crate::record::{
+    ColumnData, Content, RowFilter, Text, WantedColumn, parse_instant, parse_timestamps, read_columns,
+};
 use chrono::{DateTime, FixedOffset};
 use std::sync::Arc;
 
@@ -67,7 +69,9 @@ impl RawData {
         let fields = block.fields();
         let file_name = fields.text("file")?;
         let file = engine.keep(engine.read_file(&file_name.text, &block.path), file_name.place)?;
-        let filter = fields.mapping("rows").and_then(|rows| Some(RowFilter { head: rows.text("head")?, equals: rows.words("equals") }));
+        let filter = fields
+            .mapping("rows")
+            .and_then(|rows| Some(RowFilter { head: rows.text("head")?, equals: rows.words("equals") }));
         let mut wanted = Vec::new();
         let mut named = Vec::new();
         for entry in fields.get("columns")?.as_map()? {
@@ -90,7 +94,8 @@ impl RawData {
         if faulty {
             return None;
         }
-        let columns = named.into_iter().zip(read.columns).map(|((name, head, unit), data)| Column { name, head, unit, data });
+        let columns =
+            named.into_iter().zip(read.columns).map(|((name, head, unit), data)| Column { name, head, unit, data });
         Some(RawData {
             name: block.name().into(),
             file,
@@ -110,7 +115,8 @@ impl RawData {
         let found = self.columns.iter().find(|column| column.name.text == name);
         if found.is_none() {
             let message = format!("{} has no column named {name}, which is needed here.", self.name);
-            let problem = Problem::new(Code::ColumnUnknown, message).hint(format!("Write `{name}: {{head: …, unit: …}}` under its columns."));
+            let problem = Problem::new(Code::ColumnUnknown, message)
+                .hint(format!("Write `{name}: {{head: …, unit: …}}` under its columns."));
             engine.complain(problem, self.place);
         }
         found
@@ -120,12 +126,20 @@ impl RawData {
     pub fn numbers(&self, engine: &Engine, name: &str, kind: Kind) -> Option<(Vec<f64>, Unit)> {
         let column = self.column(engine, name)?;
         let (Some(unit), ColumnData::Numbers(numbers)) = (&column.unit, &column.data) else {
-            let problem = Problem::new(Code::KindMismatch, format!("The column {name} of {} holds text, but numbers are needed.", self.name));
+            let problem = Problem::new(
+                Code::KindMismatch,
+                format!("The column {name} of {} holds text, but numbers are needed.", self.name),
+            );
             engine.complain(problem, column.head.place);
             return None;
         };
         if kind.dimension().is_some_and(|dimension| dimension != unit.dimension()) {
-            let message = format!("The column {name} is in {}, but {} such as 1 {} is expected.", unit.text(), kind.phrase(), kind.default_unit());
+            let message = format!(
+                "The column {name} is in {}, but {} such as 1 {} is expected.",
+                unit.text(),
+                kind.phrase(),
+                kind.default_unit()
+            );
             engine.complain(Problem::new(Code::DimensionMismatch, message), column.name.place);
             return None;
         }
@@ -140,7 +154,10 @@ impl RawData {
         match &column.data {
             ColumnData::Texts(texts) => Some(texts),
             ColumnData::Numbers(_) => {
-                let problem = Problem::new(Code::KindMismatch, format!("The column {name} of {} holds numbers, but text is needed.", self.name));
+                let problem = Problem::new(
+                    Code::KindMismatch,
+                    format!("The column {name} of {} holds numbers, but text is needed.", self.name),
+                );
                 engine.complain(problem.hint("Write `unit: text`."), column.head.place);
                 None
             }
@@ -162,7 +179,10 @@ impl RawData {
             };
         }
         let Some(zero) = self.zero_time else {
-            let problem = Problem::new(Code::TimeUnreadable, format!("The times of {} count seconds, but zero_time is missing.", self.name));
+            let problem = Problem::new(
+                Code::TimeUnreadable,
+                format!("The times of {} count seconds, but zero_time is missing.", self.name),
+            );
             engine.complain(problem.hint("Write `zero_time: 2041-05-04T00:00:00Z`."), column.head.place);
             return None;
         };
@@ -181,7 +201,16 @@ impl RawData {
 
     /// A column as an input of the graph, each row with the same rounding.
     #[allow(clippy::too_many_arguments)]
-    pub fn input<'e>(&self, engine: &'e Engine<'e>, column: &str, path: &str, symbol: &str, label: &str, kind: Kind, rounding: Distribution) -> Option<Quantity<'e>> {
+    pub fn input<'e>(
+        &self,
+        engine: &'e Engine<'e>,
+        column: &str,
+        path: &str,
+        symbol: &str,
+        label: &str,
+        kind: Kind,
+        rounding: Distribution,
+    ) -> Option<Quantity<'e>> {
         let (rows, unit) = self.numbers(engine, column, kind)?;
         let head = self.column(engine, column)?.head.text.clone();
         let origin = Origin::Readings(ReadingColumn { file: self.file, column: head, lines: self.lines.clone() });

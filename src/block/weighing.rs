@@ -122,7 +122,10 @@ impl<'e> Weighings<'e> {
         let mut list = Vec::new();
         for (row, text) in which.iter().enumerate() {
             let Some(on_pan) = pan_of(text, pans.len()) else {
-                let message = format!("The row says that “{text}” was on the pan; expected is A or B{}.", if pans.len() > 4 { "1, B2, …" } else { "" });
+                let message = format!(
+                    "The row says that “{text}” was on the pan; expected is A or B{}.",
+                    if pans.len() > 4 { "1, B2, …" } else { "" }
+                );
                 engine.complain(Problem::new(Code::CellUnreadable, message), raw.line(engine, row));
                 return None;
             };
@@ -139,7 +142,11 @@ impl<'e> Weighings<'e> {
     fn from_lists(engine: &'e Engine<'e>, block: &Block, pans: &[u32]) -> Option<Self> {
         let fields = block.fields();
         let Some(unit_text) = fields.text("unit") else {
-            engine.complain(Problem::new(Code::FieldMissing, format!("The indications of {} have no unit.", block.name())).hint("Write `unit: mg`."), block.raw.name.place);
+            engine.complain(
+                Problem::new(Code::FieldMissing, format!("The indications of {} have no unit.", block.name()))
+                    .hint("Write `unit: mg`."),
+                block.raw.name.place,
+            );
             return None;
         };
         let unit = engine.keep(Unit::parse(&unit_text.text), unit_text.place)?;
@@ -156,8 +163,17 @@ impl<'e> Weighings<'e> {
             for (cycle, node) in cycles.iter().enumerate() {
                 let cells = node.as_list()?;
                 if cells.len() != pans.len() {
-                    let message = format!("A cycle of {} has {} weighings, but {} indications stand here.", fields.words("cycle"), pans.len(), cells.len());
-                    engine.complain(Problem::new(Code::DesignIncomplete, message).hint("Complete the cycle, or leave it out with its rule and reason in the prose."), node.place);
+                    let message = format!(
+                        "A cycle of {} has {} weighings, but {} indications stand here.",
+                        fields.words("cycle"),
+                        pans.len(),
+                        cells.len()
+                    );
+                    engine.complain(
+                        Problem::new(Code::DesignIncomplete, message)
+                            .hint("Complete the cycle, or leave it out with its rule and reason in the prose."),
+                        node.place,
+                    );
                     return None;
                 }
                 for (position, cell) in cells.iter().enumerate() {
@@ -170,7 +186,15 @@ impl<'e> Weighings<'e> {
         }
         let origin = Origin::ReadingList(places.clone().into());
         let label = format!("indications of {}", block.name());
-        let draft = InputDraft::new(&format!("{}.indications", block.name()), "I", &label, Kind::MassDifference, unit.clone(), Value::column(rows), origin);
+        let draft = InputDraft::new(
+            &format!("{}.indications", block.name()),
+            "I",
+            &label,
+            Kind::MassDifference,
+            unit.clone(),
+            Value::column(rows),
+            origin,
+        );
         Some(Self { list, indications: engine.builder.input(draft), unit, places: Rows::Written(places) })
     }
 
@@ -182,8 +206,16 @@ impl<'e> Weighings<'e> {
             let cycle = match cycles.iter_mut().find(same) {
                 Some(cycle) => cycle,
                 None => {
-                    let left_out = excluded.iter().any(|other| other.series == weighing.series && other.cycle == weighing.cycle);
-                    cycles.push(Cycle { series: weighing.series, number: weighing.cycle, rows: vec![], times: vec![], b_on_pan: vec![], excluded: left_out });
+                    let left_out =
+                        excluded.iter().any(|other| other.series == weighing.series && other.cycle == weighing.cycle);
+                    cycles.push(Cycle {
+                        series: weighing.series,
+                        number: weighing.cycle,
+                        rows: vec![],
+                        times: vec![],
+                        b_on_pan: vec![],
+                        excluded: left_out,
+                    });
                     cycles.last_mut()?
                 }
             };
@@ -195,9 +227,16 @@ impl<'e> Weighings<'e> {
             let found: Vec<u32> = cycle.rows.iter().map(|row| self.list[*row].on_pan).collect();
             let rising = cycle.times.windows(2).all(|pair| pair[0] < pair[1]);
             if found != pans || !rising {
-                let letters = |list: &[u32]| list.iter().map(|pan| pan_letter(*pan, pans.len())).collect::<Vec<_>>().join(" ");
+                let letters =
+                    |list: &[u32]| list.iter().map(|pan| pan_letter(*pan, pans.len())).collect::<Vec<_>>().join(" ");
                 let message = match rising {
-                    true => format!("Cycle {} of series {} reads {}, but the scheme is {}.", cycle.number, cycle.series, letters(&found), letters(pans)),
+                    true => format!(
+                        "Cycle {} of series {} reads {}, but the scheme is {}.",
+                        cycle.number,
+                        cycle.series,
+                        letters(&found),
+                        letters(pans)
+                    ),
                     false => format!("The times of cycle {} of series {} do not rise.", cycle.number, cycle.series),
                 };
                 engine.complain(Problem::new(Code::DesignIncomplete, message), self.place(engine, cycle.rows[0]));
@@ -229,10 +268,18 @@ pub fn pan_letter(pan: u32, weighings: usize) -> String {
 /// The times of a series: start and interval, or a list of times.
 fn series_times(engine: &Engine, series: Fields<'_>, count: usize) -> Option<Vec<f64>> {
     if let Some(listed) = series.get("times").and_then(Node::as_list) {
-        let texts: Vec<&Node> = listed.iter().flat_map(|node| node.as_list().map_or_else(|| vec![node], |inner| inner.iter().collect())).collect();
+        let texts: Vec<&Node> = listed
+            .iter()
+            .flat_map(|node| node.as_list().map_or_else(|| vec![node], |inner| inner.iter().collect()))
+            .collect();
         let times: Option<Vec<f64>> = texts
             .iter()
-            .map(|node| Some(seconds_since(epoch(), engine.keep(crate::record::parse_instant(node.as_text().unwrap_or_default()), node.place)?)))
+            .map(|node| {
+                Some(seconds_since(
+                    epoch(),
+                    engine.keep(crate::record::parse_instant(node.as_text().unwrap_or_default()), node.place)?,
+                ))
+            })
             .collect();
         let times = times?;
         if times.len() != count {
@@ -242,7 +289,9 @@ fn series_times(engine: &Engine, series: Fields<'_>, count: usize) -> Option<Vec
         }
         return Some(times);
     }
-    let (Some(start), Some(super::given::Given::Stated { value: interval, .. })) = (series.instant("start"), series.given("interval", Kind::Duration)) else {
+    let (Some(start), Some(super::given::Given::Stated { value: interval, .. })) =
+        (series.instant("start"), series.given("interval", Kind::Duration))
+    else {
         let problem = Problem::new(Code::FieldMissing, "A series needs start and interval, or times.");
         engine.complain(problem.hint("Write `start: 2041-03-12T09:12:00Z` and `interval: 90 s`."), series.place());
         return None;

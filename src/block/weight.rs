@@ -103,13 +103,25 @@ fn check(fields: Fields<'_>, complaints: &mut crate::diagnostic::Complaints) {
         let stated = [calibration.get("mass"), calibration.get("conventional_mass")];
         let given = stated.iter().flatten().count();
         if given != 1 {
-            let message = format!("The certificate {} states {given} values; one of mass and conventional_mass is needed.", calibration.words("certificate"));
+            let message = format!(
+                "The certificate {} states {given} values; one of mass and conventional_mass is needed.",
+                calibration.words("certificate")
+            );
             complaints.add_at(Problem::new(Code::FieldMissing, message), calibration.place());
         }
         for name in ["mass", "conventional_mass"] {
             let kind = if name == "mass" { Kind::Mass } else { Kind::ConventionalMass };
-            if let Some(Given::Stated { value, place }) = calibration.given(name, kind) && value.standard_uncertainty().is_none() {
-                let problem = Problem::new(Code::UncertaintyMissing, format!("The {} of certificate {} has no uncertainty.", kind.word(), calibration.words("certificate")));
+            if let Some(Given::Stated { value, place }) = calibration.given(name, kind)
+                && value.standard_uncertainty().is_none()
+            {
+                let problem = Problem::new(
+                    Code::UncertaintyMissing,
+                    format!(
+                        "The {} of certificate {} has no uncertainty.",
+                        kind.word(),
+                        calibration.words("certificate")
+                    ),
+                );
                 complaints.add_at(problem.hint("Write the certificate's uncertainty with its k: `± 0.026 mg (k = 2)`, or as a standard uncertainty: `(13)`."), place);
             }
         }
@@ -178,7 +190,14 @@ impl<'e> Weight<'e> {
             return Some(engine.at(known));
         }
         let certified = self.certified(calibration)?;
-        let drift = engine.bound(fields, "drift_since_calibration", &format!("{name}.drift"), "δ_drift", &format!("change of {} since its calibration", self.block.label()), Kind::MassDifference);
+        let drift = engine.bound(
+            fields,
+            "drift_since_calibration",
+            &format!("{name}.drift"),
+            "δ_drift",
+            &format!("change of {} since its calibration", self.block.label()),
+            Kind::MassDifference,
+        );
         let state = if calibration.words("state") == "vacuum" { State::Vacuum } else { State::Air };
         let total = mass_on_day::on_day(certified, drift);
         let made = total.in_state(Some(state)).on_basis(calibration.text("basis").map(|basis| basis.text.into()));
@@ -198,7 +217,13 @@ impl<'e> Weight<'e> {
         }
         let given = calibration.given("conventional_mass", Kind::ConventionalMass)?;
         let path = calibration_path(name, fields, calibration, "certified_conventional_mass");
-        let conventional = engine.given(&given, &path, &format!("m_c,{name}"), &format!("conventional mass of {label}"), Kind::ConventionalMass)?;
+        let conventional = engine.given(
+            &given,
+            &path,
+            &format!("m_c,{name}"),
+            &format!("conventional mass of {label}"),
+            Kind::ConventionalMass,
+        )?;
         let density = self.density(Some(conventional))?;
         Some(conventional_mass::to_mass(&engine.builder, conventional, density))
     }
@@ -208,7 +233,13 @@ impl<'e> Weight<'e> {
         let (engine, fields, name) = (self.engine, self.block.fields(), self.block.name());
         if let Some(stated) = fields.mapping("density") {
             let given = super::given::read_given(stated.node, Kind::Density, "density").ok()?;
-            return engine.given(&given, &format!("{name}.density"), &format!("ρ_{name}"), &format!("density of {}", self.block.label()), Kind::Density);
+            return engine.given(
+                &given,
+                &format!("{name}.density"),
+                &format!("ρ_{name}"),
+                &format!("density of {}", self.block.label()),
+                Kind::Density,
+            );
         }
         let at = self.volume(None, fields.place())?;
         let mass = mass.or_else(|| self.nominal())?;
@@ -220,18 +251,34 @@ impl<'e> Weight<'e> {
         let (engine, fields, name) = (self.engine, self.block.fields(), self.block.name());
         let stated = fields.mapping("volume").or_else(|| fields.mapping("density"));
         let Some(stated) = stated else {
-            let problem = Problem::new(Code::FieldMissing, format!("{name} has neither volume nor density, so its buoyancy cannot be computed."));
-            engine.complain(problem.hint("Write `volume: {value: …, at: 20 °C, origin: …}` or `density: …` in its block."), used_at);
+            let problem = Problem::new(
+                Code::FieldMissing,
+                format!("{name} has neither volume nor density, so its buoyancy cannot be computed."),
+            );
+            engine.complain(
+                problem.hint("Write `volume: {value: …, at: 20 °C, origin: …}` or `density: …` in its block."),
+                used_at,
+            );
             return None;
         };
         let reference = match stated.given("at", Kind::Temperature)? {
-            Given::Stated { value, .. } => engine.builder.exact(crate::graph::Value::Scalar(value.value), Kind::Temperature.dimension()?, Kind::Temperature),
+            Given::Stated { value, .. } => engine.builder.exact(
+                crate::graph::Value::Scalar(value.value),
+                Kind::Temperature.dimension()?,
+                Kind::Temperature,
+            ),
             Given::Reference(reference) => engine.result(&reference)?,
         };
         let volume = match fields.mapping("volume") {
             Some(stated) => {
                 let given = super::given::read_given(stated.node, Kind::Volume, "volume").ok()?;
-                engine.given(&given, &format!("{name}.volume"), &format!("V_{name}"), &format!("volume of {}", self.block.label()), Kind::Volume)?
+                engine.given(
+                    &given,
+                    &format!("{name}.volume"),
+                    &format!("V_{name}"),
+                    &format!("volume of {}", self.block.label()),
+                    Kind::Volume,
+                )?
             }
             None => volume::from_density(mass.or_else(|| self.nominal())?, self.density(mass)?),
         };
@@ -247,7 +294,13 @@ impl<'e> Weight<'e> {
     fn stated(self, field: &str, symbol: &str, label: &str, kind: Kind) -> Option<Quantity<'e>> {
         let name = self.block.name();
         let given = self.block.fields().given(field, kind)?;
-        self.engine.given(&given, &format!("{name}.{field}"), &format!("{symbol}_{name}"), &format!("{label} {}", self.block.label()), kind)
+        self.engine.given(
+            &given,
+            &format!("{name}.{field}"),
+            &format!("{symbol}_{name}"),
+            &format!("{label} {}", self.block.label()),
+            kind,
+        )
     }
 }
 

@@ -30,7 +30,8 @@ impl Audit {
             return extract(&bytes, folder);
         }
         let progress = terminal::progress("re-computing the report");
-        let audit = audit_report(&bytes).map_err(|problem| Stopped(format!("{}: {}", self.pdf.display(), problem.message)))?;
+        let audit =
+            audit_report(&bytes).map_err(|problem| Stopped(format!("{}: {}", self.pdf.display(), problem.message)))?;
         progress.finish_and_clear();
         match self.json {
             true => terminal::print(&format!("{}\n", serde_json::to_string_pretty(&audit).unwrap_or_default())),
@@ -50,8 +51,11 @@ fn read(path: &Path) -> Result<Vec<u8>, Stopped> {
 }
 
 fn lines(audit: &Checks) -> String {
-    let rows: Vec<Vec<String>> =
-        audit.checks.iter().map(|check| vec![check.verdict.word().to_string(), check.what.to_string(), check.says.clone()]).collect();
+    let rows: Vec<Vec<String>> = audit
+        .checks
+        .iter()
+        .map(|check| vec![check.verdict.word().to_string(), check.what.to_string(), check.says.clone()])
+        .collect();
     format!("{}\n{CANNOT_SAY}\n", terminal::columns(&rows, &[false, false, false]))
 }
 
@@ -66,7 +70,8 @@ fn extract(bytes: &[u8], folder: &Path) -> Result<Outcome, Stopped> {
         let inside = crate::block::engine::resolve(path, "").map_err(|problem| Stopped(problem.message))?;
         let target = folder.join(inside);
         let parent = target.parent().unwrap_or(folder);
-        std::fs::create_dir_all(parent).map_err(|error| Stopped(format!("{} cannot be made: {error}", parent.display())))?;
+        std::fs::create_dir_all(parent)
+            .map_err(|error| Stopped(format!("{} cannot be made: {error}", parent.display())))?;
         disk::write_whole(&target, content)?;
         written += 1;
     }

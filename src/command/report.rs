@@ -24,15 +24,23 @@ impl Report {
         let folder = Folder::find(&self.record)?;
         let progress = terminal::progress("making the report");
         let survey = Engine::read(&folder.disk, folder.campaign.as_deref()).map_err(Stopped::because)?;
-        let wanted: Vec<String> = report_records(&survey).into_iter().filter(|path| is_within(path, &folder.place)).collect();
+        let wanted: Vec<String> =
+            report_records(&survey).into_iter().filter(|path| is_within(path, &folder.place)).collect();
         if wanted.is_empty() {
             progress.finish_and_clear();
             let outcome = terminal::say_complaints(&survey);
             terminal::say(&format!("No record under {} has `report:` in its front matter.\n", self.record.display()));
-            return if outcome == Outcome::Faults { Ok(outcome) } else { Err(Stopped::because("there is no report to make")) };
+            return if outcome == Outcome::Faults {
+                Ok(outcome)
+            } else {
+                Err(Stopped::because("there is no report to make"))
+            };
         }
         if wanted.len() > 1 && self.output.is_some() {
-            return Err(Stopped(format!("{} reports would be written to one file; name one report record", wanted.len())));
+            return Err(Stopped(format!(
+                "{} reports would be written to one file; name one report record",
+                wanted.len()
+            )));
         }
         let mut outcome = Outcome::AllWell;
         for path in &wanted {

@@ -84,12 +84,21 @@ fn line(graph: &Graph, derivatives: &Sensitivities, source: Source, term: f64, v
     }
 }
 
-fn estimator_line(graph: &Graph, derivatives: &Sensitivities, number: u32, contribution: f64, share: f64) -> BudgetLine {
+fn estimator_line(
+    graph: &Graph,
+    derivatives: &Sensitivities,
+    number: u32,
+    contribution: f64,
+    share: f64,
+) -> BudgetLine {
     let node = &graph.estimators[number as usize];
     let weights = &derivatives.estimators[&number];
     let single = node.estimate.values.len() == 1;
     let output = graph.node(node.first_output);
-    let unit = output.name.as_ref().map_or_else(|| Unit::parse(&output.dimension.to_string()).unwrap_or_else(|_| Unit::one()), |name| name.unit.clone());
+    let unit = output.name.as_ref().map_or_else(
+        || Unit::parse(&output.dimension.to_string()).unwrap_or_else(|_| Unit::one()),
+        |name| name.unit.clone(),
+    );
     let own = node.estimate.own_covariance.first().and_then(|row| row.first()).copied().unwrap_or(0.0).max(0.0).sqrt();
     BudgetLine {
         source: Source::Estimator(number),

@@ -4,11 +4,11 @@
 //! where it must (validity, interpolation weights). A sum that cannot be built leaves a problem with the builder
 //! and a node that is not a number; whoever builds collects the problems and gives them their place.
 
+use super::Estimator;
 use super::estimator::{EstimatorId, EstimatorNode};
 use super::handle::Quantity;
 use super::node::*;
 use super::value::{Value, apply};
-use super::Estimator;
 use crate::diagnostic::{Code, Problem};
 use crate::intake::Place;
 use crate::quantity::{Dimension, Kind, Unit};
@@ -169,14 +169,26 @@ impl Builder {
     }
 
     /// A constant with its source; it is named and stands in the trail.
-    pub fn constant(&self, path: &str, symbol: &str, label: &str, value: f64, unit: &Unit, kind: Kind, source: &'static str) -> Quantity<'_> {
+    pub fn constant(
+        &self,
+        path: &str,
+        symbol: &str,
+        label: &str,
+        value: f64,
+        unit: &Unit,
+        kind: Kind,
+        source: &'static str,
+    ) -> Quantity<'_> {
         if let Some(known) = self.graph().find(path) {
             return self.at(known);
         }
         let mut node = plain_node(Op::Constant(Value::Scalar(value)), unit.dimension(), kind);
         node.origin = Origin::Constant(source);
         let quantity = self.push(node);
-        self.name(quantity.id, Name { path: path.into(), symbol: symbol.into(), label: label.into(), unit: unit.clone() });
+        self.name(
+            quantity.id,
+            Name { path: path.into(), symbol: symbol.into(), label: label.into(), unit: unit.clone() },
+        );
         quantity
     }
 
@@ -258,7 +270,9 @@ impl Builder {
         let method = growing.scopes.last().and_then(|(_, method)| *method);
         let graph = &mut growing.graph;
         let node = &mut graph.nodes[id.index()];
-        if matches!(node.origin, Origin::Step) && let Some(method) = method {
+        if matches!(node.origin, Origin::Step)
+            && let Some(method) = method
+        {
             node.origin = Origin::Computed(method);
         }
         graph.names.insert(name.path.clone(), id);

@@ -9,7 +9,11 @@ use std::collections::BTreeMap;
 ///
 /// # Errors
 /// Those of an estimator that cannot work with the displaced columns.
-pub fn evaluate_displaced(graph: &Graph, displaced: &BTreeMap<NodeId, Value>, last: NodeId) -> Result<Vec<Value>, Problem> {
+pub fn evaluate_displaced(
+    graph: &Graph,
+    displaced: &BTreeMap<NodeId, Value>,
+    last: NodeId,
+) -> Result<Vec<Value>, Problem> {
     let mut values: Vec<Value> = Vec::with_capacity(last.index() + 1);
     let mut outputs: BTreeMap<u32, Vec<f64>> = BTreeMap::new();
     for index in 0..=last.index() {
@@ -20,7 +24,8 @@ pub fn evaluate_displaced(graph: &Graph, displaced: &BTreeMap<NodeId, Value>, la
             (Op::Output(estimator, output), None) => {
                 let node = &graph.estimators[estimator.index()];
                 if !outputs.contains_key(&estimator.0) {
-                    let columns: Vec<&[f64]> = node.columns.iter().map(|column| values[column.index()].rows()).collect();
+                    let columns: Vec<&[f64]> =
+                        node.columns.iter().map(|column| values[column.index()].rows()).collect();
                     outputs.insert(estimator.0, node.rule.estimate(&columns)?.values);
                 }
                 Value::Scalar(outputs[&estimator.0].get(*output as usize).copied().unwrap_or(f64::NAN))

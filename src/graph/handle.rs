@@ -129,7 +129,9 @@ impl<'g> Quantity<'g> {
     pub fn power(self, exponent: i32) -> Self {
         match self.dimension().power(exponent) {
             Some(dimension) => self.one_operand(|id| Op::Power(id, exponent), dimension),
-            None => self.builder.faulty(Code::DimensionMismatch, format!("{} to the power {exponent} has no unit.", self.words())),
+            None => self
+                .builder
+                .faulty(Code::DimensionMismatch, format!("{} to the power {exponent} has no unit.", self.words())),
         }
     }
 
@@ -229,7 +231,8 @@ impl<'g> Quantity<'g> {
 
     fn of_number(self, op: impl FnOnce(NodeId) -> Op, word: &str) -> Self {
         if self.dimension() != Dimension::ONE {
-            let message = format!("{word} takes a number, but {} has the dimension {}.", self.words(), self.dimension());
+            let message =
+                format!("{word} takes a number, but {} has the dimension {}.", self.words(), self.dimension());
             return self.builder.faulty(Code::DimensionMismatch, message);
         }
         self.one_operand(op, Dimension::ONE)
@@ -260,10 +263,14 @@ impl<'g> Quantity<'g> {
         if let Some((left, right)) = lengths {
             return refuse(Code::DesignIncomplete, format!("one has {left} rows, the other {right}"));
         }
-        if let (Some(left), Some(right)) = (a.state, b.state) && left != right {
+        if let (Some(left), Some(right)) = (a.state, b.state)
+            && left != right
+        {
             return refuse(Code::StateMismatch, format!("one holds in {}, the other in {}", left.word(), right.word()));
         }
-        if let (Some(left), Some(right)) = (&a.basis, &b.basis) && left != right {
+        if let (Some(left), Some(right)) = (&a.basis, &b.basis)
+            && left != right
+        {
             return refuse(Code::BasisMismatch, format!("one is on the basis {left}, the other on {right}"));
         }
         Ok(Meeting { kind, state: a.state.or(b.state), basis: sum_basis(kind, a, b) })
@@ -296,7 +303,13 @@ impl<'g> Quantity<'g> {
         }
         let (a, b) = (self.node(), other.node());
         let mut node = plain_node(op, dimension, Kind::Plain);
-        let bearer = if b.is_number() { Some(a) } else if a.is_number() { Some(b) } else { None };
+        let bearer = if b.is_number() {
+            Some(a)
+        } else if a.is_number() {
+            Some(b)
+        } else {
+            None
+        };
         if let Some(bearer) = bearer.filter(|bearer| bearer.dimension == dimension) {
             node.kind = bearer.kind;
             node.state = bearer.state;

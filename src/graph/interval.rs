@@ -23,7 +23,8 @@ pub struct Distributed {
 
 /// Summarises trials; the values are sorted in place.
 pub fn distributed(values: &mut [f64], probability: f64) -> Distributed {
-    let (estimate, standard_uncertainty) = (mean(values).unwrap_or(f64::NAN), experimental_standard_deviation(values).unwrap_or(0.0));
+    let (estimate, standard_uncertainty) =
+        (mean(values).unwrap_or(f64::NAN), experimental_standard_deviation(values).unwrap_or(0.0));
     values.sort_unstable_by(f64::total_cmp);
     Distributed {
         trials: values.len(),
@@ -107,7 +108,13 @@ pub struct Validation {
 
 impl Validation {
     /// Compares y ± U with the interval of the trials: the symmetric one, or the shortest where it is the one stated.
-    pub fn new(estimate: f64, expanded: f64, found: (f64, f64), standard_uncertainty: f64, digits: usize) -> Validation {
+    pub fn new(
+        estimate: f64,
+        expanded: f64,
+        found: (f64, f64),
+        standard_uncertainty: f64,
+        digits: usize,
+    ) -> Validation {
         let first_order = (estimate - expanded, estimate + expanded);
         Validation {
             first_order,
@@ -138,7 +145,8 @@ mod tests {
 
     #[test]
     fn the_shortest_interval_leaves_the_long_tail() {
-        let mut values: Vec<f64> = (1..=1000).map(|index| (f64::from(index) / 1000.0) * (f64::from(index) / 1000.0)).collect();
+        let mut values: Vec<f64> =
+            (1..=1000).map(|index| (f64::from(index) / 1000.0) * (f64::from(index) / 1000.0)).collect();
         let found = distributed(&mut values, 0.95);
         assert!(found.shortest.0 < 1e-5 && found.shortest.1 < found.symmetric.1, "{found:?}");
     }

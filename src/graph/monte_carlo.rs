@@ -68,7 +68,8 @@ pub fn linearity_departure(graph: &Graph, boundary: NodeId) -> Result<f64, Probl
             continue;
         }
         let displaced = BTreeMap::from([(scalar, Value::Scalar(graph.number(scalar) + step))]);
-        let moved = evaluate_displaced(graph, &displaced, boundary)?[boundary.index()].number() - graph.number(boundary);
+        let moved =
+            evaluate_displaced(graph, &displaced, boundary)?[boundary.index()].number() - graph.number(boundary);
         worst = worst.max((moved - weight * step).abs());
         largest = largest.max(moved.abs());
     }
@@ -97,7 +98,8 @@ impl<'g> Plan<'g> {
             if let Some((scalars, _)) = responses.get(id) {
                 let weights: Vec<(NodeId, f64, f64)> =
                     scalars.iter().map(|(scalar, weight)| (*scalar, *weight, graph.number(*scalar))).collect();
-                let own: Vec<(Register, f64)> = noise.number_of(*id).map(|number| (noise_rows[number], 1.0)).into_iter().collect();
+                let own: Vec<(Register, f64)> =
+                    noise.number_of(*id).map(|number| (noise_rows[number], 1.0)).into_iter().collect();
                 tape.respond(*id, graph.number(*id), &weights, &own);
                 continue;
             }
@@ -221,8 +223,12 @@ struct Noise {
 }
 
 impl Noise {
-    fn new<'a>(graph: &Graph, below: impl Iterator<Item = (NodeId, &'a BTreeMap<u32, Vec<f64>>)>) -> Result<Self, Problem> {
-        let taken: Vec<(NodeId, Vec<(u32, Vec<f64>)>)> = below.map(|(id, inputs)| (id, noisy_columns(graph, inputs))).collect();
+    fn new<'a>(
+        graph: &Graph,
+        below: impl Iterator<Item = (NodeId, &'a BTreeMap<u32, Vec<f64>>)>,
+    ) -> Result<Self, Problem> {
+        let taken: Vec<(NodeId, Vec<(u32, Vec<f64>)>)> =
+            below.map(|(id, inputs)| (id, noisy_columns(graph, inputs))).collect();
         let kept: Vec<_> = taken
             .into_iter()
             .filter(|(id, columns)| !columns.is_empty() || matches!(graph.node(*id).op, Op::Output(..)))
@@ -245,7 +251,9 @@ impl Noise {
         for (&estimator, root) in &self.estimator_roots {
             let scatter = estimator_scatter(graph, estimator, root, block, length);
             for (row, id) in noise.iter_mut().zip(&self.nodes) {
-                if let Some((of, output)) = output_of(graph, *id) && of == estimator {
+                if let Some((of, output)) = output_of(graph, *id)
+                    && of == estimator
+                {
                     row.iter_mut().zip(&scatter[output]).for_each(|(value, drawn)| *value += drawn);
                 }
             }
@@ -286,13 +294,16 @@ fn noisy_columns(graph: &Graph, inputs: &BTreeMap<u32, Vec<f64>>) -> Vec<(u32, V
             let input = &graph.inputs[*number as usize];
             let uncertainty = input.distribution.standard_uncertainty();
             let column = graph.value(input.node).length().is_some();
-            (column && uncertainty > 0.0).then(|| (*number, weights.iter().map(|weight| weight * uncertainty).collect()))
+            (column && uncertainty > 0.0)
+                .then(|| (*number, weights.iter().map(|weight| weight * uncertainty).collect()))
         })
         .collect()
 }
 
 fn shared_variance(a: &[(u32, Vec<f64>)], b: &[(u32, Vec<f64>)]) -> f64 {
-    let pairs = a.iter().filter_map(|(number, left)| b.iter().find(|(other, _)| other == number).map(|(_, right)| (left, right)));
+    let pairs = a
+        .iter()
+        .filter_map(|(number, left)| b.iter().find(|(other, _)| other == number).map(|(_, right)| (left, right)));
     pairs.map(|(left, right)| left.iter().zip(right).map(|(l, r)| l * r).sum::<f64>()).sum()
 }
 

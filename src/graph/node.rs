@@ -129,12 +129,22 @@ impl Op {
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub enum Distribution {
     Exact,
-    Normal { standard_uncertainty: f64 },
+    Normal {
+        standard_uncertainty: f64,
+    },
     /// Scaled and shifted t with the input's degrees of freedom; `scale` is the standard uncertainty as stated.
-    StudentT { scale: f64 },
-    Rectangular { half_width: f64 },
-    Triangular { half_width: f64 },
-    Arcsine { half_width: f64 },
+    StudentT {
+        scale: f64,
+    },
+    Rectangular {
+        half_width: f64,
+    },
+    Triangular {
+        half_width: f64,
+    },
+    Arcsine {
+        half_width: f64,
+    },
 }
 
 impl Distribution {

@@ -19,13 +19,36 @@ pub(super) type Register = usize;
 #[derive(Debug, Clone)]
 enum Step {
     /// constant + Σ weight × row
-    Weighted { to: Register, constant: f64, terms: Vec<(Register, f64)> },
-    Product { to: Register, a: Register, b: Register },
-    Ratio { to: Register, a: Register, b: Register },
+    Weighted {
+        to: Register,
+        constant: f64,
+        terms: Vec<(Register, f64)>,
+    },
+    Product {
+        to: Register,
+        a: Register,
+        b: Register,
+    },
+    Ratio {
+        to: Register,
+        a: Register,
+        b: Register,
+    },
     /// number / row
-    Reciprocal { to: Register, number: f64, b: Register },
-    Square { to: Register, a: Register },
-    Single { to: Register, op: Op, a: Register },
+    Reciprocal {
+        to: Register,
+        number: f64,
+        b: Register,
+    },
+    Square {
+        to: Register,
+        a: Register,
+    },
+    Single {
+        to: Register,
+        op: Op,
+        a: Register,
+    },
 }
 
 /// A scalar as a weighted sum of rows, not yet worked out.
@@ -53,7 +76,10 @@ impl Form {
     }
 
     fn times(&self, factor: f64) -> Form {
-        Form { constant: self.constant * factor, terms: self.terms.iter().map(|(register, weight)| (*register, weight * factor)).collect() }
+        Form {
+            constant: self.constant * factor,
+            terms: self.terms.iter().map(|(register, weight)| (*register, weight * factor)).collect(),
+        }
     }
 
     fn is_number(&self) -> bool {
@@ -146,7 +172,10 @@ impl Tape {
     }
 
     fn work_out(&mut self, form: &Form) -> Register {
-        if let [(register, weight)] = form.terms.as_slice() && *weight == 1.0 && form.constant == 0.0 {
+        if let [(register, weight)] = form.terms.as_slice()
+            && *weight == 1.0
+            && form.constant == 0.0
+        {
             return *register;
         }
         let to = self.reserve();
@@ -186,7 +215,12 @@ impl Tape {
         Form::row(to)
     }
 
-    fn single(&mut self, a: NodeId, step: impl FnOnce(Register, Register) -> Step, number: impl FnOnce(f64) -> f64) -> Form {
+    fn single(
+        &mut self,
+        a: NodeId,
+        step: impl FnOnce(Register, Register) -> Step,
+        number: impl FnOnce(f64) -> f64,
+    ) -> Form {
         let form = self.form(a);
         if form.is_number() {
             return Form::number(number(form.constant));

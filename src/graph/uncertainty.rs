@@ -21,7 +21,8 @@ pub(super) fn variance_terms(graph: &Graph, a: &Sensitivities, b: &Sensitivities
     let estimators = a.estimators.iter().filter_map(|(number, left)| {
         let right = b.estimators.get(number)?;
         let own = &graph.estimators[*number as usize].estimate.own_covariance;
-        let term = own.iter().zip(left).map(|(row, c)| c * row.iter().zip(right).map(|(cell, d)| cell * d).sum::<f64>()).sum();
+        let term =
+            own.iter().zip(left).map(|(row, c)| c * row.iter().zip(right).map(|(cell, d)| cell * d).sum::<f64>()).sum();
         Some((Source::Estimator(*number), term))
     });
     inputs.chain(estimators).filter(|(_, term)| *term != 0.0).collect()
@@ -56,7 +57,8 @@ pub(super) fn source_degrees_of_freedom(graph: &Graph, source: Source) -> f64 {
 pub fn degrees_of_freedom(graph: &Graph, of: &Sensitivities) -> f64 {
     let terms = variance_terms(graph, of, of);
     let total: f64 = terms.iter().map(|(_, term)| term).sum();
-    let weighted: f64 = terms.iter().map(|(source, term)| term * term / source_degrees_of_freedom(graph, *source)).sum();
+    let weighted: f64 =
+        terms.iter().map(|(source, term)| term * term / source_degrees_of_freedom(graph, *source)).sum();
     if weighted > 0.0 { total * total / weighted } else { f64::INFINITY }
 }
 

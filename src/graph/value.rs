@@ -95,7 +95,10 @@ pub(super) fn apply<'v>(op: &Op, value: impl Fn(NodeId) -> &'v Value) -> Option<
         Op::Mix(a, weights) => {
             let source = value(*a);
             Value::Column(
-                weights.iter().map(|row| row.iter().map(|(index, weight)| weight * source.at(*index as usize)).sum()).collect(),
+                weights
+                    .iter()
+                    .map(|row| row.iter().map(|(index, weight)| weight * source.at(*index as usize)).sum())
+                    .collect(),
             )
         }
         Op::Stack(list) => Value::Column(list.iter().map(|id| value(*id).number()).collect()),

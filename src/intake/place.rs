@@ -56,7 +56,8 @@ impl SourceFile {
 
     /// Where line `number` (from 1) begins and ends, without its line break.
     pub fn line_range(&self, number: usize) -> (usize, usize) {
-        let start = number.checked_sub(1).and_then(|index| self.line_starts.get(index)).map_or(0, |&start| start as usize);
+        let start =
+            number.checked_sub(1).and_then(|index| self.line_starts.get(index)).map_or(0, |&start| start as usize);
         (start, start + self.line(number).len())
     }
 }

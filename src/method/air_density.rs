@@ -102,12 +102,26 @@ pub fn density<'g>(builder: &'g Builder, air: Air<'g>) -> Quantity<'g> {
 pub fn check_validity(temperatures: &[f64], pressures: &[f64]) -> Result<(), (usize, Problem)> {
     let outside = |value: &f64, from: f64, to: f64| !(from - 1e-9..=to + 1e-9).contains(value);
     if let Some(row) = temperatures.iter().position(|t| outside(t, 288.15, 300.15)) {
-        let message = format!("The air temperature {:.3} °C is outside 15 °C to 27 °C, where CIPM-2007 holds.", temperatures[row] - 273.15);
-        return Err((row, Problem::new(Code::OutOfValidity, message).hint("Check the reading and its unit; the equation is not used outside its range.")));
+        let message = format!(
+            "The air temperature {:.3} °C is outside 15 °C to 27 °C, where CIPM-2007 holds.",
+            temperatures[row] - 273.15
+        );
+        return Err((
+            row,
+            Problem::new(Code::OutOfValidity, message)
+                .hint("Check the reading and its unit; the equation is not used outside its range."),
+        ));
     }
     if let Some(row) = pressures.iter().position(|p| outside(p, 60_000.0, 110_000.0)) {
-        let message = format!("The air pressure {:.2} hPa is outside 600 hPa to 1100 hPa, where CIPM-2007 holds.", pressures[row] / 100.0);
-        return Err((row, Problem::new(Code::OutOfValidity, message).hint("Check the reading and its unit; the equation is not used outside its range.")));
+        let message = format!(
+            "The air pressure {:.2} hPa is outside 600 hPa to 1100 hPa, where CIPM-2007 holds.",
+            pressures[row] / 100.0
+        );
+        return Err((
+            row,
+            Problem::new(Code::OutOfValidity, message)
+                .hint("Check the reading and its unit; the equation is not used outside its range."),
+        ));
     }
     Ok(())
 }
@@ -131,9 +145,17 @@ fn dry_air_molar_mass<'g>(builder: &'g Builder, x_co2: Quantity<'g>) -> Quantity
     (28.965_46 + 12.011 * (x_co2 - 0.0004)) * exact(builder, 1e-3, "kg/mol")
 }
 
-fn vapour_fraction<'g>(builder: &'g Builder, air: &Air<'g>, p: Quantity<'g>, big_t: Quantity<'g>, t: Quantity<'g>) -> Quantity<'g> {
+fn vapour_fraction<'g>(
+    builder: &'g Builder,
+    air: &Air<'g>,
+    p: Quantity<'g>,
+    big_t: Quantity<'g>,
+    t: Quantity<'g>,
+) -> Quantity<'g> {
     match air.humidity {
-        Humidity::Relative(h) => h.as_kind(Kind::Plain) * enhancement(builder, p, t) * saturation_pressure(builder, big_t) / p,
+        Humidity::Relative(h) => {
+            h.as_kind(Kind::Plain) * enhancement(builder, p, t) * saturation_pressure(builder, big_t) / p
+        }
         Humidity::DewPoint(dew) => {
             let big_td = dew.as_kind(Kind::Plain);
             let td = big_td - exact(builder, 273.15, "K");
@@ -155,7 +177,13 @@ fn saturation_pressure<'g>(builder: &'g Builder, big_t: Quantity<'g>) -> Quantit
 }
 
 /// Z = 1 − (p/T)[a0 + a1 t + a2 t² + (b0 + b1 t) x_v + (c0 + c1 t) x_v²] + (p/T)² (d + e x_v²)
-fn compressibility<'g>(builder: &'g Builder, p: Quantity<'g>, big_t: Quantity<'g>, t: Quantity<'g>, x_v: Quantity<'g>) -> Quantity<'g> {
+fn compressibility<'g>(
+    builder: &'g Builder,
+    p: Quantity<'g>,
+    big_t: Quantity<'g>,
+    t: Quantity<'g>,
+    x_v: Quantity<'g>,
+) -> Quantity<'g> {
     let k = |value, unit| exact(builder, value, unit);
     let (a0, a1, a2) = (k(1.581_23e-6, "K/Pa"), k(-2.933_1e-8, "/Pa"), k(1.104_3e-10, "K-1 Pa-1"));
     let (b0, b1) = (k(5.707e-6, "K/Pa"), k(-2.051e-8, "/Pa"));
@@ -163,7 +191,8 @@ fn compressibility<'g>(builder: &'g Builder, p: Quantity<'g>, big_t: Quantity<'g
     let (d, e) = (k(1.83e-11, "K2 Pa-2"), k(-0.765e-8, "K2 Pa-2"));
     let ratio = p / big_t;
     let x_v2 = x_v.squared();
-    1.0 - ratio * (a0 + a1 * t + a2 * t.squared() + (b0 + b1 * t) * x_v + (c0 + c1 * t) * x_v2) + ratio.squared() * (d + e * x_v2)
+    1.0 - ratio * (a0 + a1 * t + a2 * t.squared() + (b0 + b1 * t) * x_v + (c0 + c1 * t) * x_v2)
+        + ratio.squared() * (d + e * x_v2)
 }
 
 enum Moisture {
@@ -171,7 +200,13 @@ enum Moisture {
     Dew(f64),
 }
 
-fn dry_run<'g>(builder: &'g Builder, temperature: f64, pressure: f64, moisture: Moisture, carbon_dioxide: f64) -> Quantity<'g> {
+fn dry_run<'g>(
+    builder: &'g Builder,
+    temperature: f64,
+    pressure: f64,
+    moisture: Moisture,
+    carbon_dioxide: f64,
+) -> Quantity<'g> {
     let humidity = match moisture {
         Moisture::Relative(h) => Humidity::Relative(exact(builder, h, "1")),
         Moisture::Dew(t) => Humidity::DewPoint(exact(builder, t, "K")),

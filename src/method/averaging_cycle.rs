@@ -7,7 +7,7 @@
 //! # Valid for up to five test weights of the same nominal value, weighed in one cycle.
 
 use super::weighing_cycle::Dispersion;
-use super::{mean_or_nan, deviation_or_nan, Method, WorkedExample};
+use super::{Method, WorkedExample, deviation_or_nan, mean_or_nan};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
 
@@ -33,7 +33,8 @@ pub static METHOD: Method = Method {
         printed: "1.0575",
         found: || {
             let readings = [0.0, 0.51, -0.22, 1.07, 0.06, 0.05, 0.57, -0.15, 1.15, 0.1];
-            let rule = AveragedDifferences { weights: 3, cycles: vec![cycle(0, 3), cycle(5, 3)], dispersion: Dispersion::Own };
+            let rule =
+                AveragedDifferences { weights: 3, cycles: vec![cycle(0, 3), cycle(5, 3)], dispersion: Dispersion::Own };
             rule.estimate(&[&readings]).map_or(f64::NAN, |estimate| estimate.values[2])
         },
     }],
@@ -69,17 +70,23 @@ impl AveragedDifferences {
         match self.dispersion {
             Dispersion::Own => (deviation_or_nan(differences), differences.len() as f64 - 1.0),
             Dispersion::PooledCycle { standard_deviation, degrees_of_freedom }
-            | Dispersion::PooledSeries { standard_deviation, degrees_of_freedom } => (standard_deviation, degrees_of_freedom),
+            | Dispersion::PooledSeries { standard_deviation, degrees_of_freedom } => {
+                (standard_deviation, degrees_of_freedom)
+            }
         }
     }
 
     fn check(&self, rows: usize) -> Result<(), Problem> {
         let complete = self.cycles.iter().all(|cycle| {
-            cycle.tests.len() == self.weights && cycle.tests.iter().chain([&cycle.first, &cycle.last]).all(|row| *row < rows)
+            cycle.tests.len() == self.weights
+                && cycle.tests.iter().chain([&cycle.first, &cycle.last]).all(|row| *row < rows)
         });
         if !complete || self.cycles.is_empty() || (self.cycles.len() < 2 && self.dispersion == Dispersion::Own) {
-            let message = format!("{} cycles of {} test weights are too few or incomplete.", self.cycles.len(), self.weights);
-            return Err(Problem::new(Code::DesignIncomplete, message).hint("Weigh more cycles, or write `type_a: pooled`."));
+            let message =
+                format!("{} cycles of {} test weights are too few or incomplete.", self.cycles.len(), self.weights);
+            return Err(
+                Problem::new(Code::DesignIncomplete, message).hint("Weigh more cycles, or write `type_a: pooled`.")
+            );
         }
         Ok(())
     }
@@ -113,7 +120,10 @@ impl Estimator for AveragedDifferences {
             jacobian: vec![jacobian],
             own_covariance,
             degrees_of_freedom: self.scatter(&differences[0]).1,
-            decisions: vec![Decision { what: "cycles".into(), decided: format!("{} used, reference averaged", self.cycles.len()) }],
+            decisions: vec![Decision {
+                what: "cycles".into(),
+                decided: format!("{} used, reference averaged", self.cycles.len()),
+            }],
             residuals: Vec::new(),
         })
     }

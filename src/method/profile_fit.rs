@@ -13,7 +13,7 @@
 //! Multiplying by v leaves the thermal voltage an additive term: sweeps up and down tell it from b_0.
 //! # Valid for sweeps in both directions that enclose the weighing position.
 
-use super::{scaled, Method, WorkedExample};
+use super::{Method, WorkedExample, scaled};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
 use crate::numeric::elementary::powi;
@@ -95,9 +95,18 @@ impl Estimator for ProfileFit {
     }
 
     fn estimate(&self, columns: &[&[f64]]) -> Result<Estimate, Problem> {
-        let [v, u] = columns else { return Err(Problem::new(Code::DesignIncomplete, "A profile fit needs velocity and voltage.")) };
-        if v.len() != self.positions.len() || u.len() != v.len() || self.hours.len() != v.len() || self.sweeps.len() != v.len() {
-            return Err(Problem::new(Code::DesignIncomplete, "The columns of a moving phase have unlike numbers of gates."));
+        let [v, u] = columns else {
+            return Err(Problem::new(Code::DesignIncomplete, "A profile fit needs velocity and voltage."));
+        };
+        if v.len() != self.positions.len()
+            || u.len() != v.len()
+            || self.hours.len() != v.len()
+            || self.sweeps.len() != v.len()
+        {
+            return Err(Problem::new(
+                Code::DesignIncomplete,
+                "The columns of a moving phase have unlike numbers of gates.",
+            ));
         }
         let (shaped, alone) = self.design(v);
         let regressors: Vec<Vec<f64>> = shaped
@@ -116,7 +125,10 @@ impl Estimator for ProfileFit {
             degrees_of_freedom: found.degrees_of_freedom,
             decisions: vec![
                 Decision { what: "order of the profile".into(), decided: format!("{}", self.order) },
-                Decision { what: "lag-1 autocorrelation of residuals".into(), decided: format!("{r1:.3}, variance × {inflation:.3}") },
+                Decision {
+                    what: "lag-1 autocorrelation of residuals".into(),
+                    decided: format!("{r1:.3}, variance × {inflation:.3}"),
+                },
             ],
             residuals: found.residuals.clone(),
             values: found.coefficients.clone(),

@@ -4,7 +4,7 @@
 //! # Formula   b_k = y_1 + y_2 (t_k − t_0);  s² = Σ residual²/(n − 2);  covariance s² (AᵀA)⁻¹;  ν = n − 2
 //! # Valid for readings of equal, unknown scatter; n ≥ 3 at two or more different abscissae.
 
-use super::{scaled, Method, WorkedExample};
+use super::{Method, WorkedExample, scaled};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
 use crate::numeric::least_squares::fit;
@@ -35,7 +35,13 @@ pub static METHOD: Method = Method {
 };
 
 const fn example(quantity: &'static str, printed: &'static str, found: fn() -> f64) -> WorkedExample {
-    WorkedExample { source: "JCGM 100:2008, H.3, table H.6", given: "11 corrections of a thermometer, t_0 = 20 °C", quantity, printed, found }
+    WorkedExample {
+        source: "JCGM 100:2008, H.3, table H.6",
+        given: "11 corrections of a thermometer, t_0 = 20 °C",
+        quantity,
+        printed,
+        found,
+    }
 }
 
 /// The rule: columns t and b; outputs y_1 (at `reference`) and y_2.
@@ -51,9 +57,14 @@ impl Estimator for StraightLine {
     }
 
     fn estimate(&self, columns: &[&[f64]]) -> Result<Estimate, Problem> {
-        let [t, b] = columns else { return Err(Problem::new(Code::DesignIncomplete, "A line needs abscissae and ordinates.")) };
+        let [t, b] = columns else {
+            return Err(Problem::new(Code::DesignIncomplete, "A line needs abscissae and ordinates."));
+        };
         if t.len() < 3 || t.len() != b.len() {
-            return Err(Problem::new(Code::DesignIncomplete, format!("A line with its uncertainty needs three points or more, found {}.", t.len())));
+            return Err(Problem::new(
+                Code::DesignIncomplete,
+                format!("A line with its uncertainty needs three points or more, found {}.", t.len()),
+            ));
         }
         let ones = vec![1.0; t.len()];
         let centred: Vec<f64> = t.iter().map(|t| t - self.reference).collect();

@@ -4,7 +4,7 @@
 //! # Formula   q = Σ q_k / n;  s² = Σ (q_k − q)² / (n − 1);  u(q) = s/√n;  ν = n − 1
 //! # Valid for independent readings under repeatability conditions; n ≥ 2.
 
-use super::{mean_or_nan, deviation_or_nan, Method, WorkedExample};
+use super::{Method, WorkedExample, deviation_or_nan, mean_or_nan};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Estimate, Estimator, MethodInfo};
 
@@ -15,7 +15,12 @@ pub static METHOD: Method = Method {
         title: "Mean of repeated readings",
         source: "JCGM 100:2008, 4.2",
         formula: "q = Σ q_k/n;  s² = Σ (q_k − q)²/(n − 1);  u(q) = s/√n;  ν = n − 1",
-        symbols: &[("q_k", "reading", ""), ("q", "mean", ""), ("s", "experimental standard deviation", ""), ("n", "number of readings", "1")],
+        symbols: &[
+            ("q_k", "reading", ""),
+            ("q", "mean", ""),
+            ("s", "experimental standard deviation", ""),
+            ("n", "number of readings", "1"),
+        ],
         valid_for: "independent readings, n ≥ 2",
     },
     examples: &[
@@ -48,7 +53,10 @@ impl Estimator for TypeAMean {
     fn estimate(&self, columns: &[&[f64]]) -> Result<Estimate, Problem> {
         let readings = columns.first().copied().unwrap_or_default();
         if readings.len() < 2 {
-            let message = format!("{} reading has no scatter; a mean with its own uncertainty needs two or more.", readings.len());
+            let message = format!(
+                "{} reading has no scatter; a mean with its own uncertainty needs two or more.",
+                readings.len()
+            );
             return Err(Problem::new(Code::DesignIncomplete, message));
         }
         let count = readings.len() as f64;
@@ -67,8 +75,8 @@ impl Estimator for TypeAMean {
 
 fn guide_example(which: usize) -> f64 {
     let readings = [
-        96.90, 98.18, 98.25, 98.61, 99.03, 99.49, 99.56, 99.74, 99.89, 100.07, 100.33, 100.42, 100.68, 100.95, 101.11, 101.20,
-        101.57, 101.84, 102.36, 102.72,
+        96.90, 98.18, 98.25, 98.61, 99.03, 99.49, 99.56, 99.74, 99.89, 100.07, 100.33, 100.42, 100.68, 100.95, 101.11,
+        101.20, 101.57, 101.84, 102.36, 102.72,
     ];
     TypeAMean.estimate(&[&readings]).map_or(f64::NAN, |estimate| match which {
         0 => estimate.values[0],

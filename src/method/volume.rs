@@ -37,13 +37,19 @@ pub static METHOD: Method = Method {
             let volume = exact(&builder, 125.0, "cm3").as_kind(Kind::Volume);
             let (reference, used) = (exact(&builder, 293.15, "K"), exact(&builder, 295.15, "K"));
             let beta = exact(&builder, 48e-6, "/K");
-            at_temperature(volume, beta, reference.as_kind(Kind::Temperature), used.as_kind(Kind::Temperature)).number() * 1e6
+            at_temperature(volume, beta, reference.as_kind(Kind::Temperature), used.as_kind(Kind::Temperature)).number()
+                * 1e6
         },
     }],
 };
 
 /// Volume at temperature `t`; a column where `t` is one.
-pub fn at_temperature<'g>(volume: Quantity<'g>, beta: Quantity<'g>, t_ref: Quantity<'g>, t: Quantity<'g>) -> Quantity<'g> {
+pub fn at_temperature<'g>(
+    volume: Quantity<'g>,
+    beta: Quantity<'g>,
+    t_ref: Quantity<'g>,
+    t: Quantity<'g>,
+) -> Quantity<'g> {
     let rise = (t - t_ref).as_kind(Kind::Plain);
     (volume * (1.0 + beta.as_kind(Kind::Plain) * rise)).as_kind(Kind::Volume)
 }

@@ -12,7 +12,7 @@
 //!     n      number of series, or of cycles
 //! # Valid for drift that is linear within a cycle.
 
-use super::{mean_or_nan, deviation_or_nan, Method, WorkedExample};
+use super::{Method, WorkedExample, deviation_or_nan, mean_or_nan};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
 use crate::numeric::least_squares::fit;
@@ -140,7 +140,8 @@ impl MeanDifference {
     /// As [`cycle_weights`]; `design_incomplete` when no cycle is left or its own scatter cannot be had.
     pub fn new(cycles: &[Cycle], dispersion: Dispersion) -> Result<Self, Problem> {
         let used: Vec<&Cycle> = cycles.iter().filter(|cycle| !cycle.excluded).collect();
-        let weighted = used.iter().map(|cycle| Ok((cycle.series, cycle_weights(cycle)?))).collect::<Result<Vec<_>, Problem>>()?;
+        let weighted =
+            used.iter().map(|cycle| Ok((cycle.series, cycle_weights(cycle)?))).collect::<Result<Vec<_>, Problem>>()?;
         let mut series: Vec<u32> = used.iter().map(|cycle| cycle.series).collect();
         series.dedup();
         series.sort_unstable();
@@ -185,8 +186,14 @@ impl MeanDifference {
         };
         let nu = if freedom.is_finite() { format!("{freedom}") } else { "∞".into() };
         vec![
-            Decision { what: "Type A evaluation".into(), decided: format!("{source}, {:.4} µg, over √{count}; ν = {nu}", scatter * 1e9) },
-            Decision { what: "cycles".into(), decided: format!("{} used, {} excluded", self.cycles.len(), self.excluded) },
+            Decision {
+                what: "Type A evaluation".into(),
+                decided: format!("{source}, {:.4} µg, over √{count}; ν = {nu}", scatter * 1e9),
+            },
+            Decision {
+                what: "cycles".into(),
+                decided: format!("{} used, {} excluded", self.cycles.len(), self.excluded),
+            },
         ]
     }
 }
@@ -199,7 +206,10 @@ impl Estimator for MeanDifference {
     fn estimate(&self, columns: &[&[f64]]) -> Result<Estimate, Problem> {
         let y = columns.first().copied().unwrap_or_default();
         if y.len() < self.rows {
-            return Err(Problem::new(Code::DesignIncomplete, format!("{} weighings are needed, {} are there.", self.rows, y.len())));
+            return Err(Problem::new(
+                Code::DesignIncomplete,
+                format!("{} weighings are needed, {} are there.", self.rows, y.len()),
+            ));
         }
         let weigh = |weights: &Weights| weights.iter().map(|(row, weight)| weight * y[*row]).sum::<f64>();
         let differences: Vec<f64> = self.cycles.iter().map(|(_, weights)| weigh(weights)).collect();
@@ -267,7 +277,8 @@ fn ea_example(which: usize) -> f64 {
 }
 
 fn aba_example() -> f64 {
-    let readings = [0.0, 1.52, 0.004, 0.004, 1.526, 0.009, 0.009, 1.527, 0.011, 0.011, 1.531, 0.016, 0.016, 1.538, 0.019];
+    let readings =
+        [0.0, 1.52, 0.004, 0.004, 1.526, 0.009, 0.009, 1.527, 0.011, 0.011, 1.531, 0.016, 0.016, 1.538, 0.019];
     run(&regular_cycles(Scheme::Aba, 5, true), Dispersion::Own, &readings, 1)
 }
 
@@ -290,7 +301,9 @@ mod tests {
         cycles[1].times = vec![10.0, 11.0, 13.0, 20.0];
         let readings: Vec<f64> = cycles
             .iter()
-            .flat_map(|cycle| cycle.times.iter().zip(&cycle.b_on_pan).map(|(t, b)| 3.0 + 0.7 * t + if *b { 2.0 } else { 0.0 }))
+            .flat_map(|cycle| {
+                cycle.times.iter().zip(&cycle.b_on_pan).map(|(t, b)| 3.0 + 0.7 * t + if *b { 2.0 } else { 0.0 })
+            })
             .collect();
         let found = run(&cycles, Dispersion::Own, &readings, 0);
         assert!((found - 2.0).abs() < 1e-12, "{found}");

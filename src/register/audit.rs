@@ -99,11 +99,15 @@ pub fn originals(bytes: &[u8]) -> Result<BTreeMap<String, Vec<u8>>, Problem> {
 
 /// Damage or extras in the file itself.
 fn check_form(file: &PdfFile, audit: &mut Audit) {
-    audit.note("single revision", file.revisions == 1 && !file.trailing_bytes, match (file.revisions, file.trailing_bytes) {
-        (1, false) => "one revision, nothing behind it".to_string(),
-        (1, true) => "bytes stand behind the end of the file".to_string(),
-        (count, _) => format!("{count} revisions; a report has one"),
-    });
+    audit.note(
+        "single revision",
+        file.revisions == 1 && !file.trailing_bytes,
+        match (file.revisions, file.trailing_bytes) {
+            (1, false) => "one revision, nothing behind it".to_string(),
+            (1, true) => "bytes stand behind the end of the file".to_string(),
+            (count, _) => format!("{count} revisions; a report has one"),
+        },
+    );
     let found: Vec<&str> = [
         (file.scripts, "scripts"),
         (file.forms, "form fields"),
@@ -114,10 +118,14 @@ fn check_form(file: &PdfFile, audit: &mut Audit) {
     .filter(|(found, _)| *found)
     .map(|(_, word)| *word)
     .collect();
-    audit.note("nothing active", found.is_empty(), match found.is_empty() {
-        true => "no scripts, forms, layers or annotations".to_string(),
-        false => format!("the file carries {}", found.join(", ")),
-    });
+    audit.note(
+        "nothing active",
+        found.is_empty(),
+        match found.is_empty() {
+            true => "no scripts, forms, layers or annotations".to_string(),
+            false => format!("the file carries {}", found.join(", ")),
+        },
+    );
 }
 
 fn read_contents(file: &PdfFile) -> Result<Contents, String> {
@@ -142,13 +150,20 @@ fn check_contents(file: &PdfFile, audit: &mut Audit) -> Option<Contents> {
             Some(_) => {}
         }
     }
-    let listed = |name: &str| name == CONTENTS || name == ISSUE || contents.files.iter().any(|entry| entry.name == name);
-    faults.extend(file.attachments.keys().filter(|name| !listed(name)).map(|name| format!("{name} is attached but not listed")));
+    let listed =
+        |name: &str| name == CONTENTS || name == ISSUE || contents.files.iter().any(|entry| entry.name == name);
+    faults.extend(
+        file.attachments.keys().filter(|name| !listed(name)).map(|name| format!("{name} is attached but not listed")),
+    );
     let count = contents.files.len();
-    audit.note("attachments", faults.is_empty(), match faults.is_empty() {
-        true => format!("{count} of {count} attached files match the list"),
-        false => faults.join("; "),
-    });
+    audit.note(
+        "attachments",
+        faults.is_empty(),
+        match faults.is_empty() {
+            true => format!("{count} of {count} attached files match the list"),
+            false => faults.join("; "),
+        },
+    );
     Some(contents)
 }
 
@@ -158,7 +173,10 @@ fn check_seal(file: &PdfFile, contents: &Contents, audit: &mut Audit) {
 }
 
 fn files_by_path(file: &PdfFile, contents: &Contents) -> BTreeMap<String, Vec<u8>> {
-    let with_path = contents.files.iter().filter_map(|entry| Some((entry.path.clone()?, file.attachments.get(&entry.name)?.clone())));
+    let with_path = contents
+        .files
+        .iter()
+        .filter_map(|entry| Some((entry.path.clone()?, file.attachments.get(&entry.name)?.clone())));
     with_path.collect()
 }
 
@@ -203,7 +221,8 @@ fn said(bytes: Option<&Vec<u8>>) -> Option<BTreeMap<String, Said>> {
 }
 
 fn check_results(file: &PdfFile, report: &Report, faulty: bool, audit: &mut Audit) {
-    let (Some(attached), Some(found)) = (said(file.attachments.get(RESULTS)), said(report.dossier.files.get(RESULTS))) else {
+    let (Some(attached), Some(found)) = (said(file.attachments.get(RESULTS)), said(report.dossier.files.get(RESULTS)))
+    else {
         audit.note("re-reduction", false, format!("{RESULTS} is missing or cannot be read"));
         audit.skip("printed digits", "there are no attached results");
         return;
@@ -216,7 +235,8 @@ fn check_results(file: &PdfFile, report: &Report, faulty: bool, audit: &mut Audi
             differing.push(name.as_str());
             continue;
         };
-        let apart = departure(ours.value, theirs.value).max(departure(ours.standard_uncertainty, theirs.standard_uncertainty));
+        let apart =
+            departure(ours.value, theirs.value).max(departure(ours.standard_uncertainty, theirs.standard_uncertainty));
         largest = largest.max(apart);
         if apart > 0.0 {
             differing.push(name);
@@ -236,10 +256,18 @@ fn check_results(file: &PdfFile, report: &Report, faulty: bool, audit: &mut Audi
             first_few(&differing)
         ),
     });
-    audit.note("printed digits", digits.is_empty(), match digits.is_empty() {
-        true => format!("{count} of {count} printed values agree"),
-        false => format!("{} differ: {}", digits.len(), first_few(&digits.iter().map(String::as_str).collect::<Vec<_>>())),
-    });
+    audit.note(
+        "printed digits",
+        digits.is_empty(),
+        match digits.is_empty() {
+            true => format!("{count} of {count} printed values agree"),
+            false => format!(
+                "{} differ: {}",
+                digits.len(),
+                first_few(&digits.iter().map(String::as_str).collect::<Vec<_>>())
+            ),
+        },
+    );
 }
 
 fn departure(ours: Option<f64>, theirs: Option<f64>) -> f64 {
@@ -269,7 +297,11 @@ fn check_derivation(file: &PdfFile, report: &Report, contents: &Contents, audit:
 
 fn check_pages(bytes: &[u8], file: &PdfFile, report: &Report, contents: &Contents, audit: &mut Audit) {
     if bytes == report.pdf {
-        audit.note("pages", true, format!("{} pages set anew from the attachments: the same PDF, byte for byte", report.pages));
+        audit.note(
+            "pages",
+            true,
+            format!("{} pages set anew from the attachments: the same PDF, byte for byte", report.pages),
+        );
         return;
     }
     if contents.engine != crate::VERSION {
@@ -277,8 +309,19 @@ fn check_pages(bytes: &[u8], file: &PdfFile, report: &Report, contents: &Content
         return;
     }
     let at = bytes.iter().zip(&report.pdf).position(|(a, b)| a != b).unwrap_or(bytes.len().min(report.pdf.len()));
-    let cause = if file.attachments == report.dossier.files { "the attachments are those of the report, so pages or structure were altered" } else { "the attachments differ as well" };
-    audit.note("pages", false, format!("the PDF set anew differs from byte {at} on ({} pages there, {} here); {cause}", report.pages, file.pages));
+    let cause = if file.attachments == report.dossier.files {
+        "the attachments are those of the report, so pages or structure were altered"
+    } else {
+        "the attachments differ as well"
+    };
+    audit.note(
+        "pages",
+        false,
+        format!(
+            "the PDF set anew differs from byte {at} on ({} pages there, {} here); {cause}",
+            report.pages, file.pages
+        ),
+    );
 }
 
 fn campaign_of(path: &str) -> Option<String> {

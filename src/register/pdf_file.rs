@@ -108,8 +108,10 @@ fn look_at(object: &Object, file: &mut PdfFile) {
 fn look_at_dictionary(dictionary: &Dictionary, file: &mut PdfFile) {
     let has = |key: &[u8]| dictionary.has(key);
     let name = |key: &[u8]| dictionary.get(key).ok().and_then(|value| value.as_name().ok()).unwrap_or(b"");
-    let running = [&b"JavaScript"[..], b"Launch", b"SubmitForm", b"ImportData", b"Rendition", b"Movie", b"Sound", b"GoToR"];
-    file.scripts |= has(b"JS") || has(b"JavaScript") || has(b"AA") || has(b"RichMediaContent") || running.contains(&name(b"S"));
+    let running =
+        [&b"JavaScript"[..], b"Launch", b"SubmitForm", b"ImportData", b"Rendition", b"Movie", b"Sound", b"GoToR"];
+    file.scripts |=
+        has(b"JS") || has(b"JavaScript") || has(b"AA") || has(b"RichMediaContent") || running.contains(&name(b"S"));
     file.forms |= has(b"AcroForm") || has(b"XFA");
     file.optional_content |= has(b"OCProperties") || has(b"OCG") || has(b"OCGs") || name(b"Type") == b"OCG";
     file.other_annotations |= has(b"Rect") && has(b"Subtype") && name(b"Subtype") != b"Link";
@@ -226,7 +228,9 @@ mod tests {
         assert_eq!(file.attachments.keys().collect::<Vec<_>>(), ["b.json", "µ weighings.csv"]);
         assert_eq!(file.attachments["µ weighings.csv"], b"1,2\n%%EOF\n");
         assert_eq!((file.pages, file.revisions), (1, 1));
-        assert!(!(file.scripts || file.forms || file.optional_content || file.other_annotations || file.trailing_bytes));
+        assert!(
+            !(file.scripts || file.forms || file.optional_content || file.other_annotations || file.trailing_bytes)
+        );
     }
 
     #[test]
@@ -249,7 +253,8 @@ mod tests {
     #[test]
     fn an_appended_revision_counts() {
         let original = sample();
-        let mut update = lopdf::IncrementalDocument::create_from(original.clone(), Document::load_mem(&original).expect("loads"));
+        let mut update =
+            lopdf::IncrementalDocument::create_from(original.clone(), Document::load_mem(&original).expect("loads"));
         update.new_document.add_object(Object::string_literal("later"));
         let mut bytes = Vec::new();
         update.save_to(&mut bytes).expect("saves");

@@ -124,12 +124,13 @@ pub fn draw(chart: &Chart, width_mm: f64, height_mm: f64) -> String {
     let y_range = axis::padded(values(chart, &series), 0.06);
     let top = 1.5 + LINE_MM * legend.len() as f64 + 1.0;
     let height = (height_mm - top - 2.0 * LINE_MM - 3.5).max(10.0);
-    let y_ticks = axis::number_ticks(y_range, (height / 9.0).clamp(2.0, 8.0), chart.decimal_marker);
+    let y_ticks = axis::number_ticks(y_range, (height / 9.0).clamp(4.0, 8.0), chart.decimal_marker);
     let note_room = if y_ticks.note.is_empty() { 0.0 } else { LINE_MM };
     let left = LINE_MM + 2.5 + widest(&y_ticks.list) + 1.5;
     let width = (width_mm - left - 5.0).max(10.0);
     let x_range = x_range(chart, &series);
-    let frame = Frame { left, top: top + note_room, width, height: (height - note_room).max(8.0), x: x_range, y: y_range };
+    let frame =
+        Frame { left, top: top + note_room, width, height: (height - note_room).max(8.0), x: x_range, y: y_range };
     let x_ticks = x_ticks(chart, &frame);
 
     let mut parts = vec![bands(chart, &frame)];
@@ -148,7 +149,8 @@ pub fn draw(chart: &Chart, width_mm: f64, height_mm: f64) -> String {
 
 fn finite(series: &Series) -> Series {
     let keep = |point: &&(f64, f64, Option<f64>)| point.0.is_finite() && point.1.is_finite();
-    let tidy = |point: &(f64, f64, Option<f64>)| (point.0, point.1, point.2.filter(|bar| bar.is_finite() && *bar > 0.0));
+    let tidy =
+        |point: &(f64, f64, Option<f64>)| (point.0, point.1, point.2.filter(|bar| bar.is_finite() && *bar > 0.0));
     Series { points: series.points.iter().filter(keep).map(tidy).collect(), ..series.clone() }
 }
 
@@ -286,13 +288,20 @@ fn labels(chart: &Chart, frame: &Frame, x_ticks: &Ticks, y_ticks: &Ticks, height
     }
     for tick in &x_ticks.list {
         let width = text_width(&tick.label) + 2.0;
-        parts.push(placed(frame.x_mm(tick.at) - width / 2.0, frame.bottom() + 1.4, width, "center", &typst_text(&tick.label)));
+        parts.push(placed(
+            frame.x_mm(tick.at) - width / 2.0,
+            frame.bottom() + 1.4,
+            width,
+            "center",
+            &typst_text(&tick.label),
+        ));
     }
     if !y_ticks.note.is_empty() {
         parts.push(placed(frame.left, frame.top - LINE_MM - 0.8, frame.width, "left", &typst_text(&y_ticks.note)));
     }
     let below = frame.bottom() + 1.6 + LINE_MM;
-    let x_label = label(&chart.x_label) + &if x_ticks.note.is_empty() { String::new() } else { typst_text(&format!(", {}", x_ticks.note)) };
+    let x_label = label(&chart.x_label)
+        + &if x_ticks.note.is_empty() { String::new() } else { typst_text(&format!(", {}", x_ticks.note)) };
     parts.push(placed(frame.left, below.min(height_mm - LINE_MM), frame.width, "center", &x_label));
     parts.push(format!(
         "place(top + left, dx: 0mm, dy: {}, rotate(-90deg, reflow: true, box(width: {}, height: {}, align(center + horizon)[{}])))",
@@ -313,9 +322,16 @@ struct Entry {
 
 /// The entries of the legend in rows; none when one unnamed series stands alone.
 fn legend_rows(chart: &Chart, width_mm: f64) -> Vec<Vec<Entry>> {
-    let series = chart.series.iter().enumerate().map(|(index, series)| (marks::sample(series.style, index), series.name.clone()));
+    let series = chart
+        .series
+        .iter()
+        .enumerate()
+        .map(|(index, series)| (marks::sample(series.style, index), series.name.clone()));
     let lines = chart.lines.iter().enumerate().map(|(index, line)| {
-        let sample = format!("line(start: (0mm, 0mm), end: (6mm, 0mm), stroke: (paint: luma(60), thickness: 0.7pt, dash: {}))", level_dash(index));
+        let sample = format!(
+            "line(start: (0mm, 0mm), end: (6mm, 0mm), stroke: (paint: luma(60), thickness: 0.7pt, dash: {}))",
+            level_dash(index)
+        );
         (sample, line.label.clone())
     });
     let mut rows: Vec<Vec<Entry>> = Vec::new();

@@ -49,7 +49,8 @@ pub fn make_report(engine: &Engine, path: &str) -> Option<Report> {
     let rendered = engine.keep(templates.render(&page.values()), place)?;
     let mut files = templates.files();
     files.extend(writing.images.iter().map(|(path, bytes)| (path.clone(), bytes.clone())));
-    let document = TypstDocument { source: rendered.source, files, attachments: dossier.attachments(), spans: rendered.spans };
+    let document =
+        TypstDocument { source: rendered.source, files, attachments: dossier.attachments(), spans: rendered.spans };
     let (pdf, pages) = print(engine, &document, &dossier, &writing.front)?;
     Some(Report { pdf, pages, dossier })
 }
@@ -68,7 +69,8 @@ fn print(engine: &Engine, document: &TypstDocument, dossier: &Dossier, front: &F
 /// The laboratory's own templates where it has them, else those of the program.
 fn templates(engine: &Engine) -> Option<Templates> {
     let mut templates = Templates::built_in();
-    for (path, slot) in [(Templates::REPORT_PATH, &mut templates.report), (Templates::PARTS_PATH, &mut templates.parts)] {
+    for (path, slot) in [(Templates::REPORT_PATH, &mut templates.report), (Templates::PARTS_PATH, &mut templates.parts)]
+    {
         if let Ok(bytes) = engine.intake.read(path) {
             match String::from_utf8(bytes) {
                 Ok(text) => *slot = text,
@@ -114,7 +116,13 @@ impl<'e> Writing<'e> {
         }
         let requests = self.requests(&expressions);
         let leave_out: Vec<Place> = self.record.blocks.iter().map(|block| block.place).collect();
-        let prose = Prose { blanked: &blanked, expressions: &expressions, body: self.record.body, leave_out: &leave_out, top_level: 1 };
+        let prose = Prose {
+            blanked: &blanked,
+            expressions: &expressions,
+            body: self.record.body,
+            leave_out: &leave_out,
+            top_level: 1,
+        };
         let mut complaints = Complaints::default();
         let mut answers = Answers { writing: self, requests };
         let markup = typeset_prose(&prose, &mut answers, &mut complaints);
@@ -147,14 +155,16 @@ impl Insert for Answers<'_, '_> {
     fn expression(&mut self, index: usize) -> Inserted {
         let Some((text, place, request)) = self.requests.get(index) else { return gap("") };
         let engine = self.writing.engine;
-        let answered = request.as_ref().and_then(|request| engine.keep(answer(engine, request, &self.writing.results), *place));
+        let answered =
+            request.as_ref().and_then(|request| engine.keep(answer(engine, request, &self.writing.results), *place));
         answered.unwrap_or_else(|| gap(text))
     }
 
     fn image(&mut self, path: &str) -> Result<String, Problem> {
         let full = path_in_folder(&self.writing.folder, path)?;
         let bytes = self.writing.engine.intake.read(&full).map_err(|error| {
-            Problem::new(Code::FileMissing, format!("The image {path} cannot be read: {error}.")).hint("The path counts from the folder of the record.")
+            Problem::new(Code::FileMissing, format!("The image {path} cannot be read: {error}."))
+                .hint("The path counts from the folder of the record.")
         })?;
         self.writing.images.insert(full.clone(), bytes);
         Ok(full)

@@ -29,7 +29,12 @@ pub fn derivation_json(engine: &Engine) -> String {
         .collect();
     text.push_str(&nodes.join(",\n"));
     text.push_str("\n],\n\"estimators\": [\n");
-    text.push_str(&(0..graph.estimators.len()).map(|index| estimator_json(&graph, index).to_string()).collect::<Vec<_>>().join(",\n"));
+    text.push_str(
+        &(0..graph.estimators.len())
+            .map(|index| estimator_json(&graph, index).to_string())
+            .collect::<Vec<_>>()
+            .join(",\n"),
+    );
     text.push_str("\n]}\n");
     text
 }

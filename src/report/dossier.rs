@@ -85,7 +85,8 @@ impl Dossier {
             files.insert(name.into(), text.into_bytes());
         }
         entries.sort_by(|a, b| a.name.cmp(&b.name));
-        let contents = Contents { format: DOSSIER_FORMAT, engine: crate::VERSION.into(), report: report.into(), files: entries };
+        let contents =
+            Contents { format: DOSSIER_FORMAT, engine: crate::VERSION.into(), report: report.into(), files: entries };
         let mut text = serde_json::to_string_pretty(&contents).unwrap_or_default();
         text.push('\n');
         let seal = sha256(text.as_bytes());
@@ -101,12 +102,20 @@ impl Dossier {
     fn attachment(&self, name: &str, bytes: &[u8]) -> Attachment {
         let original = self.contents.files.iter().find(|entry| entry.name == name).and_then(|entry| entry.path.clone());
         let (relationship, description) = match name {
-            CONTENTS => (Relationship::Supplement, "list of contents of the dossier, over which the seal is taken".to_string()),
+            CONTENTS => {
+                (Relationship::Supplement, "list of contents of the dossier, over which the seal is taken".to_string())
+            }
             RESULTS => (Relationship::Data, "every named quantity with its standard uncertainty".into()),
             DERIVATION => (Relationship::Data, "operations and values from which every quantity is computed".into()),
             _ => (Relationship::Source, format!("file {} of the laboratory folder", original.unwrap_or_default())),
         };
-        Attachment { name: name.into(), bytes: bytes.to_vec(), relationship, mime_type: mime_type(name).into(), description }
+        Attachment {
+            name: name.into(),
+            bytes: bytes.to_vec(),
+            relationship,
+            mime_type: mime_type(name).into(),
+            description,
+        }
     }
 }
 
@@ -128,7 +137,8 @@ fn entry(name: &str, path: Option<String>, bytes: &[u8]) -> Entry {
 /// A path as a name without `/`, different from all names taken.
 fn flat_name(path: &str, taken: &mut BTreeSet<String>) -> String {
     let safe = |c: char| if c.is_ascii_alphanumeric() || matches!(c, '.' | '-' | '_') { c } else { '_' };
-    let plain: String = path.split('/').map(|name| name.chars().map(safe).collect::<String>()).collect::<Vec<_>>().join("--");
+    let plain: String =
+        path.split('/').map(|name| name.chars().map(safe).collect::<String>()).collect::<Vec<_>>().join("--");
     let mut name = plain.clone();
     let mut number = 2;
     while !taken.insert(name.clone()) {

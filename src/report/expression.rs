@@ -77,21 +77,65 @@ struct Asked<'a> {
 
 /// Every function of reports, in order of name.
 static FUNCTIONS: &[Function] = &[
-    Function { name: "assumptions", usage: "assumptions()", answer: |engine, _| block(parts::statements::assumptions_list(engine)) },
-    Function { name: "budget", usage: "budget(W1.mass)", answer: |engine, asked| block(parts::budget::budget_table(engine, asked.quantity(engine)?)) },
+    Function {
+        name: "assumptions",
+        usage: "assumptions()",
+        answer: |engine, _| block(parts::statements::assumptions_list(engine)),
+    },
+    Function {
+        name: "budget",
+        usage: "budget(W1.mass)",
+        answer: |engine, asked| block(parts::budget::budget_table(engine, asked.quantity(engine)?)),
+    },
     Function { name: "chart", usage: "chart(W1)", answer: chart },
     Function { name: "conditions", usage: "conditions(A1)", answer: conditions },
-    Function { name: "deviation", usage: "deviation(W1.mass, \"mg\")", answer: |engine, asked| deviation(engine, asked, false) },
-    Function { name: "distribution", usage: "distribution(W1.mass)", answer: |engine, asked| block(parts::distribution::distribution_part(engine, asked.quantity(engine)?)?) },
-    Function { name: "excluded", usage: "excluded()", answer: |engine, _| block(parts::excluded::excluded_table(engine)) },
-    Function { name: "expanded", usage: "expanded(W1.mass)", answer: |engine, asked| inline(&asked.figure(engine)?.expanded()) },
-    Function { name: "expanded_deviation", usage: "expanded_deviation(W1.mass, \"mg\")", answer: |engine, asked| deviation(engine, asked, true) },
-    Function { name: "expanded_uncertainty", usage: "expanded_uncertainty(W1.mass)", answer: |engine, asked| inline(&asked.figure(engine)?.expanded_uncertainty()) },
+    Function {
+        name: "deviation",
+        usage: "deviation(W1.mass, \"mg\")",
+        answer: |engine, asked| deviation(engine, asked, false),
+    },
+    Function {
+        name: "distribution",
+        usage: "distribution(W1.mass)",
+        answer: |engine, asked| block(parts::distribution::distribution_part(engine, asked.quantity(engine)?)?),
+    },
+    Function {
+        name: "excluded",
+        usage: "excluded()",
+        answer: |engine, _| block(parts::excluded::excluded_table(engine)),
+    },
+    Function {
+        name: "expanded",
+        usage: "expanded(W1.mass)",
+        answer: |engine, asked| inline(&asked.figure(engine)?.expanded()),
+    },
+    Function {
+        name: "expanded_deviation",
+        usage: "expanded_deviation(W1.mass, \"mg\")",
+        answer: |engine, asked| deviation(engine, asked, true),
+    },
+    Function {
+        name: "expanded_uncertainty",
+        usage: "expanded_uncertainty(W1.mass)",
+        answer: |engine, asked| inline(&asked.figure(engine)?.expanded_uncertainty()),
+    },
     Function { name: "readings", usage: "readings(W1)", answer: readings },
-    Function { name: "results", usage: "results()", answer: |engine, asked| block(parts::results::results_table(engine, asked.results)) },
+    Function {
+        name: "results",
+        usage: "results()",
+        answer: |engine, asked| block(parts::results::results_table(engine, asked.results)),
+    },
     Function { name: "series", usage: "series(W1)", answer: series },
-    Function { name: "traceability", usage: "traceability()", answer: |engine, _| block(parts::traceability::traceability_table(engine)) },
-    Function { name: "trail", usage: "trail(W1.mass)", answer: |engine, asked| block(parts::trail::trail_table(engine, asked.quantity(engine)?)) },
+    Function {
+        name: "traceability",
+        usage: "traceability()",
+        answer: |engine, _| block(parts::traceability::traceability_table(engine)),
+    },
+    Function {
+        name: "trail",
+        usage: "trail(W1.mass)",
+        answer: |engine, asked| block(parts::trail::trail_table(engine, asked.quantity(engine)?)),
+    },
     Function { name: "uncertainty_statement", usage: "uncertainty_statement(W1.mass)", answer: statement },
 ];
 
@@ -117,7 +161,8 @@ impl Evaluator {
                 Ok(Value::from_object(CallValue { function: name, arguments }))
             });
         }
-        let names = engine.blocks().keys().map(|name| (name.clone(), Value::from_object(PathValue(name.clone())))).collect();
+        let names =
+            engine.blocks().keys().map(|name| (name.clone(), Value::from_object(PathValue(name.clone())))).collect();
         Evaluator { environment, names }
     }
 
@@ -143,7 +188,10 @@ impl Evaluator {
             ValueKind::String => Ok(Request::Text(value.as_str().unwrap_or_default().into())),
             ValueKind::Number if value.is_integer() => Ok(Request::Text(value.to_string())),
             other => {
-                let problem = Problem::new(Code::TemplateFaulty, format!("The expression {text} gives a {other}, which cannot be printed."));
+                let problem = Problem::new(
+                    Code::TemplateFaulty,
+                    format!("The expression {text} gives a {other}, which cannot be printed."),
+                );
                 Err(problem.hint("Cite a result such as `W1.mass`, or call a function such as `expanded(W1.mass)`."))
             }
         }
@@ -154,7 +202,10 @@ impl Evaluator {
     }
 
     fn unknown(&self, name: &str) -> Problem {
-        let problem = Problem::new(Code::FigureMissing, format!("The report cites {name}, but no block and no function has that name."));
+        let problem = Problem::new(
+            Code::FigureMissing,
+            format!("The report cites {name}, but no block and no function has that name."),
+        );
         let known = self.names.keys().map(String::as_str).chain(FUNCTIONS.iter().map(|function| function.name));
         match nearest(name, known) {
             Some(near) => problem.hint(format!("Did you mean {near}?")),
@@ -165,12 +216,18 @@ impl Evaluator {
     fn faulty(&self, text: &str, error: &minijinja::Error) -> Problem {
         let reason = match error.kind() {
             ErrorKind::SyntaxError => "it is not written as an expression",
-            ErrorKind::BadSerialization | ErrorKind::WriteFailure => "a result cannot be joined with text inside an expression",
+            ErrorKind::BadSerialization | ErrorKind::WriteFailure => {
+                "a result cannot be joined with text inside an expression"
+            }
             ErrorKind::OutOfFuel => "it takes too much work",
             _ => error.detail().unwrap_or("it has no value"),
         };
-        let problem = Problem::new(Code::TemplateFaulty, format!("The expression {text} cannot be evaluated: {reason}."));
-        problem.hint(format!("Functions of reports: {}.", FUNCTIONS.iter().map(|function| function.usage).collect::<Vec<_>>().join(", ")))
+        let problem =
+            Problem::new(Code::TemplateFaulty, format!("The expression {text} cannot be evaluated: {reason}."));
+        problem.hint(format!(
+            "Functions of reports: {}.",
+            FUNCTIONS.iter().map(|function| function.usage).collect::<Vec<_>>().join(", ")
+        ))
     }
 }
 
@@ -180,7 +237,10 @@ fn argument(value: &Value) -> Result<Argument, minijinja::Error> {
     }
     match value.as_str() {
         Some(text) => Ok(Argument::Text(text.into())),
-        None => Err(minijinja::Error::new(ErrorKind::InvalidOperation, "arguments are results such as W1.mass, block names, or texts in quotes")),
+        None => Err(minijinja::Error::new(
+            ErrorKind::InvalidOperation,
+            "arguments are results such as W1.mass, block names, or texts in quotes",
+        )),
     }
 }
 
@@ -191,7 +251,10 @@ const PARTICULARS: &[&str] = &["u", "k", "U", "label", "symbol"];
 pub fn prepare(engine: &Engine, request: &Request, place: Place) {
     let paths: Vec<&String> = match request {
         Request::Path(path) => vec![path],
-        Request::Call(_, arguments) => arguments.iter().filter_map(|argument| if let Argument::Path(path) = argument { Some(path) } else { None }).collect(),
+        Request::Call(_, arguments) => arguments
+            .iter()
+            .filter_map(|argument| if let Argument::Path(path) = argument { Some(path) } else { None })
+            .collect(),
         Request::Text(_) => Vec::new(),
     };
     for path in paths {
@@ -210,7 +273,9 @@ pub fn answer(engine: &Engine, request: &Request, results: &[NodeId]) -> Result<
         Request::Call(name, arguments) => {
             let asked = Asked { arguments, results };
             match FUNCTIONS.iter().find(|function| function.name == *name) {
-                Some(function) => (function.answer)(engine, &asked).map_err(|problem| problem.hint_once(function.usage)),
+                Some(function) => {
+                    (function.answer)(engine, &asked).map_err(|problem| problem.hint_once(function.usage))
+                }
                 None => Err(Problem::new(Code::TemplateFaulty, format!("No function is called {name}."))),
             }
         }
@@ -276,7 +341,8 @@ fn missing(engine: &Engine, path: &str) -> Problem {
     let name = path.split('.').next().unwrap_or_default();
     let prefix = format!("{name}.");
     let graph = engine.graph();
-    let outputs: Vec<&str> = graph.names.keys().filter(|known| known.starts_with(&prefix)).map(String::as_str).collect();
+    let outputs: Vec<&str> =
+        graph.names.keys().filter(|known| known.starts_with(&prefix)).map(String::as_str).collect();
     let problem = Problem::new(Code::FigureMissing, format!("The report cites {path}, but there is no such result."));
     match nearest(path, outputs.iter().copied()) {
         Some(near) => problem.hint(format!("Did you mean {near}?")),
@@ -289,7 +355,10 @@ impl Asked<'_> {
     fn path(&self) -> Result<&str, Problem> {
         match self.arguments.first() {
             Some(Argument::Path(path)) => Ok(path),
-            _ => Err(Problem::new(Code::TemplateFaulty, "This function needs a result or a block as its first argument.")),
+            _ => Err(Problem::new(
+                Code::TemplateFaulty,
+                "This function needs a result or a block as its first argument.",
+            )),
         }
     }
 
@@ -306,14 +375,21 @@ impl Asked<'_> {
         let path = self.path()?;
         match engine.blocks().get(path) {
             Some(found) if kinds.contains(&found.kind.name) => Ok(path.to_string()),
-            Some(found) => Err(Problem::new(Code::TemplateFaulty, format!("{path} is of the kind {}, but {} is expected here.", found.kind.name, kinds.join(" or ")))),
-            None => Err(Problem::new(Code::TemplateFaulty, format!("{path} is no block; {} is expected here.", kinds.join(" or ")))),
+            Some(found) => Err(Problem::new(
+                Code::TemplateFaulty,
+                format!("{path} is of the kind {}, but {} is expected here.", found.kind.name, kinds.join(" or ")),
+            )),
+            None => Err(Problem::new(
+                Code::TemplateFaulty,
+                format!("{path} is no block; {} is expected here.", kinds.join(" or ")),
+            )),
         }
     }
 }
 
 fn uncomputed(name: &str) -> Problem {
-    Problem::new(Code::FigureMissing, format!("{name} could not be computed, so there is nothing to show.")).hint("See the other complaints.")
+    Problem::new(Code::FigureMissing, format!("{name} could not be computed, so there is nothing to show."))
+        .hint("See the other complaints.")
 }
 
 fn readings(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
@@ -350,7 +426,10 @@ fn deviation(engine: &Engine, asked: &Asked<'_>, expanded: bool) -> Result<Inser
     let figure = asked.figure(engine)?;
     let kind = engine.graph().node(asked.quantity(engine)?).kind;
     if !matches!(kind, Kind::Mass | Kind::ConventionalMass) {
-        return Err(Problem::new(Code::TemplateFaulty, format!("{path} is {}, which has no nominal value to deviate from.", kind.phrase())));
+        return Err(Problem::new(
+            Code::TemplateFaulty,
+            format!("{path} is {}, which has no nominal value to deviate from.", kind.phrase()),
+        ));
     }
     let unit = match asked.arguments.get(1) {
         Some(Argument::Text(text)) => Unit::parse(text).map_err(|problem| Problem { range: None, ..problem })?,
@@ -358,11 +437,14 @@ fn deviation(engine: &Engine, asked: &Asked<'_>, expanded: bool) -> Result<Inser
     };
     let block = path.split('.').next().unwrap_or_default();
     let (nominal_text, nominal) = nominal_of(engine, block).ok_or_else(|| {
-        Problem::new(Code::FigureMissing, format!("The nominal value of {path} is not known.")).hint("Name the item in the combined-result: `item: S1`.")
+        Problem::new(Code::FigureMissing, format!("The nominal value of {path} is not known."))
+            .hint("Name the item in the combined-result: `item: S1`.")
     })?;
     let style = engine.laboratory.style;
     let text = match expanded {
-        true => style.expanded_deviation(&nominal_text, figure.value - nominal, figure.coverage.expanded_uncertainty, &unit),
+        true => {
+            style.expanded_deviation(&nominal_text, figure.value - nominal, figure.coverage.expanded_uncertainty, &unit)
+        }
         false => style.deviation(&nominal_text, figure.value - nominal, figure.coverage.standard_uncertainty, &unit),
     };
     inline(&text?)

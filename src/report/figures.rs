@@ -109,7 +109,12 @@ pub fn freedom(style: Style, value: f64) -> String {
 
 /// A probability in per cent, without trailing zeros: 95.45 %.
 pub fn per_cent(style: Style, probability: f64) -> String {
-    let decimals = if (probability * 1e4 - (probability * 1e4).round()).abs() < 0.005 && (probability * 1e2).fract() == 0.0 { 0 } else { 2 };
+    let decimals =
+        if (probability * 1e4 - (probability * 1e4).round()).abs() < 0.005 && (probability * 1e2).fract() == 0.0 {
+            0
+        } else {
+            2
+        };
     let unit = Unit::parse("%").unwrap_or_else(|_| Unit::one());
     style.value(probability, &unit, decimals).unwrap_or_else(|problem| problem.message)
 }

@@ -13,10 +13,8 @@ use crate::intake::Place;
 use crate::record::{Record, Text};
 use chrono::{DateTime, NaiveDate};
 
-const METHOD_FIELDS: &[Field] = &[
-    needed("id", Shape::Text, "the procedure"),
-    needed("revision", Shape::Text, "its revision"),
-];
+const METHOD_FIELDS: &[Field] =
+    &[needed("id", Shape::Text, "the procedure"), needed("revision", Shape::Text, "its revision")];
 
 const REPORT_FIELDS: &[Field] = &[
     needed("title", Shape::Text, "the title of the report"),
@@ -62,18 +60,25 @@ impl Front {
         let fields = Fields { node };
         let report = fields.mapping("report")?;
         let method = report.mapping("method");
-        let duties = [("Performed by", "performed_by"), ("Reviewed by", "reviewed_by"), ("Authorised by", "authorised_by")];
+        let duties =
+            [("Performed by", "performed_by"), ("Reviewed by", "reviewed_by"), ("Authorised by", "authorised_by")];
         Some(Front {
             title: report.words("title"),
             date: fields.date("date")?,
             results: report.texts("results"),
             place: report.place_of("title"),
             location: report.words("place"),
-            method: method.map_or_else(String::new, |method| format!("{}, revision {}", method.words("id"), method.words("revision"))),
+            method: method.map_or_else(String::new, |method| {
+                format!("{}, revision {}", method.words("id"), method.words("revision"))
+            }),
             deviations: report.words("deviations"),
             customer: report.text("customer"),
             items: report.texts("items"),
-            duties: duties.iter().filter(|(_, field)| report.get(field).is_some()).map(|(duty, field)| (*duty, report.words(field))).collect(),
+            duties: duties
+                .iter()
+                .filter(|(_, field)| report.get(field).is_some())
+                .map(|(duty, field)| (*duty, report.words(field)))
+                .collect(),
         })
     }
 
@@ -90,7 +95,11 @@ impl Front {
             particulars: self.particulars(engine),
             body,
             statements: statements(),
-            signatures: self.duties.iter().map(|(duty, person)| Signature { duty: (*duty).into(), person: person.clone(), date: String::new() }).collect(),
+            signatures: self
+                .duties
+                .iter()
+                .map(|(duty, person)| Signature { duty: (*duty).into(), person: person.clone(), date: String::new() })
+                .collect(),
             annex: Some(annex(engine, results, dossier)),
         }
     }
@@ -124,7 +133,10 @@ impl Front {
 fn item_words(engine: &Engine, item: &Block) -> String {
     let fields = item.fields();
     let nominal = dress(&fields.words("nominal"), engine.laboratory.style);
-    let mut words = vec![format!("{}, nominal value {nominal}", fields.text("identification").map_or_else(|| item.label(), |text| text.text))];
+    let mut words = vec![format!(
+        "{}, nominal value {nominal}",
+        fields.text("identification").map_or_else(|| item.label(), |text| text.text)
+    )];
     for (name, lead) in [("material", ""), ("maker", "maker: "), ("class", "class ")] {
         let text = fields.words(name);
         if !text.is_empty() {
@@ -151,7 +163,8 @@ fn condition_words(item: &Block) -> String {
         "no" => add("not adjusted".into()),
         done => add(format!("adjusted: {done}")),
     }
-    let supplied = fields.texts("supplied_by_customer").into_iter().map(|text| text.text.replace('_', " ")).collect::<Vec<_>>();
+    let supplied =
+        fields.texts("supplied_by_customer").into_iter().map(|text| text.text.replace('_', " ")).collect::<Vec<_>>();
     if !supplied.is_empty() {
         add(format!("supplied by the customer: {}", supplied.join(", ")));
     }
@@ -160,11 +173,24 @@ fn condition_words(item: &Block) -> String {
 
 /// First and last day of the weighings used.
 fn calibration_dates(engine: &Engine) -> String {
-    let times: Vec<f64> = engine.used_blocks().iter().filter_map(|name| engine.weighing(name)).flat_map(|comparison| comparison.weighings).map(|weighing| weighing.time).collect();
-    let (first, last) = (times.iter().copied().fold(f64::INFINITY, f64::min), times.iter().copied().fold(f64::NEG_INFINITY, f64::max));
+    let times: Vec<f64> = engine
+        .used_blocks()
+        .iter()
+        .filter_map(|name| engine.weighing(name))
+        .flat_map(|comparison| comparison.weighings)
+        .map(|weighing| weighing.time)
+        .collect();
+    let (first, last) =
+        (times.iter().copied().fold(f64::INFINITY, f64::min), times.iter().copied().fold(f64::NEG_INFINITY, f64::max));
     let day = |time: f64| DateTime::from_timestamp(time as i64, 0).map(|at| at.date_naive());
     match (day(first), day(last)) {
-        (Some(first), Some(last)) if times.is_empty() || first == last => if times.is_empty() { String::new() } else { long_date(first) },
+        (Some(first), Some(last)) if times.is_empty() || first == last => {
+            if times.is_empty() {
+                String::new()
+            } else {
+                long_date(first)
+            }
+        }
         (Some(first), Some(last)) => format!("{} to {}", long_date(first), long_date(last)),
         _ => String::new(),
     }

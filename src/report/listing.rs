@@ -107,10 +107,8 @@ fn listed(graph: &Graph, sources: &Sources, id: NodeId, style: Style) -> Listed 
         standard_uncertainty: uncertainty,
         degrees_of_freedom: freedom,
         rows: value.length(),
-        printed: derivatives.map_or_else(
-            || format!("{} values", value.rows().len()),
-            |of| print_quantity(graph, id, &of, style),
-        ),
+        printed: derivatives
+            .map_or_else(|| format!("{} values", value.rows().len()), |of| print_quantity(graph, id, &of, style)),
         origin: listed_origin(sources, &node.origin),
         typed: graph.input(id).and_then(|input| input.text.clone()),
     }
@@ -122,7 +120,9 @@ pub fn print_quantity(graph: &Graph, id: NodeId, of: &Sensitivities, style: Styl
     let (value, u) = (graph.number(id), standard_uncertainty(graph, of));
     if u > 0.0 {
         let in_own = style.standard(value, u, &name.unit);
-        return in_own.or_else(|_| style.standard(value, u, &choose_unit(u, &name.unit))).unwrap_or_else(|problem| problem.message);
+        return in_own
+            .or_else(|_| style.standard(value, u, &choose_unit(u, &name.unit)))
+            .unwrap_or_else(|problem| problem.message);
     }
     let decimals = name.unit.decimal_from_si(value).map_or(0, |decimal| decimal.decimals());
     style.value(value, &name.unit, decimals.clamp(0, 15)).unwrap_or_else(|problem| problem.message)
@@ -160,7 +160,21 @@ impl Results {
     /// The results as CSV with a line of heads.
     pub fn csv(&self) -> String {
         let mut writer = csv::Writer::from_writer(Vec::new());
-        let heads = ["name", "label", "kind", "state", "basis", "unit", "si_unit", "value", "standard_uncertainty", "degrees_of_freedom", "printed", "file", "line"];
+        let heads = [
+            "name",
+            "label",
+            "kind",
+            "state",
+            "basis",
+            "unit",
+            "si_unit",
+            "value",
+            "standard_uncertainty",
+            "degrees_of_freedom",
+            "printed",
+            "file",
+            "line",
+        ];
         let mut written = writer.write_record(heads);
         for one in &self.quantities {
             let number = |value: Option<f64>| value.map(|value| format!("{value:e}")).unwrap_or_default();

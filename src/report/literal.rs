@@ -76,7 +76,8 @@ fn word_cuts(word: &str) -> Vec<usize> {
         let joins = matches!(character, '_' | '/' | '-' | '.' | ':' | '\\' | '=' | '&' | '?');
         // A combining mark stays with its letter, a digit with its neighbour of the same number.
         let next = index + character.len_utf8();
-        let combining = word[next..].chars().next().is_none_or(|after| matches!(after, '\u{300}'..='\u{36f}' | '\u{200d}'));
+        let combining =
+            word[next..].chars().next().is_none_or(|after| matches!(after, '\u{300}'..='\u{36f}' | '\u{200d}'));
         if (joins && run > 2 || run >= LONG_RUN) && !combining {
             cuts.push(next);
             run = 0;

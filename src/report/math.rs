@@ -49,7 +49,11 @@ enum Part {
     Root(Vec<Part>, Option<Vec<Part>>),
     /// Typst function over an argument, and its word.
     Over(&'static str, &'static str, Vec<Part>),
-    Scripts { base: Box<Part>, below: Option<Vec<Part>>, above: Option<Vec<Part>> },
+    Scripts {
+        base: Box<Part>,
+        below: Option<Vec<Part>>,
+        above: Option<Vec<Part>>,
+    },
     Fenced(String, Vec<Part>, String),
 }
 
@@ -99,7 +103,13 @@ impl Reader<'_> {
             }
             match self.peek() {
                 None if closing.is_none() => break,
-                None => return Err(problem("A bracket of the formula is never closed.".into(), opened.saturating_sub(1), opened)),
+                None => {
+                    return Err(problem(
+                        "A bracket of the formula is never closed.".into(),
+                        opened.saturating_sub(1),
+                        opened,
+                    ));
+                }
                 Some('^' | '_') => {
                     let part = self.scripts(parts.pop())?;
                     parts.push(part);
@@ -126,7 +136,11 @@ impl Reader<'_> {
                 _ => break,
             };
             if slot.is_some() {
-                return Err(problem("A sign of the formula has two scripts of the same kind.".into(), start, self.at + 1));
+                return Err(problem(
+                    "A sign of the formula has two scripts of the same kind.".into(),
+                    start,
+                    self.at + 1,
+                ));
             }
             self.at += 1;
             *slot = Some(self.argument()?);
@@ -146,14 +160,18 @@ impl Reader<'_> {
                 self.at += 1;
                 Ok(vec![Part::Number(digit.to_string())])
             }
-            Some('^' | '_' | '}') | None => Err(problem("A command of the formula lacks its argument.".into(), self.at, self.at)),
+            Some('^' | '_' | '}') | None => {
+                Err(problem("A command of the formula lacks its argument.".into(), self.at, self.at))
+            }
             Some(_) => Ok(vec![self.part()?]),
         }
     }
 
     fn part(&mut self) -> Result<Part, Problem> {
         let start = self.at;
-        let Some(character) = self.take() else { return Err(problem("The formula ends too early.".into(), start, start)) };
+        let Some(character) = self.take() else {
+            return Err(problem("The formula ends too early.".into(), start, start));
+        };
         match character {
             '{' => Ok(Part::Group(self.sequence(Some("}"))?)),
             '\\' => self.command(start),
@@ -175,7 +193,8 @@ impl Reader<'_> {
                 Ok(sign(&letter.to_string(), word.trim_start_matches("var")))
             }
             symbol if SIGNS.iter().any(|(_, source, _)| source.chars().eq([symbol])) => {
-                let word = SIGNS.iter().find(|(_, source, _)| source.chars().eq([symbol])).map_or("", |(_, _, word)| word);
+                let word =
+                    SIGNS.iter().find(|(_, source, _)| source.chars().eq([symbol])).map_or("", |(_, _, word)| word);
                 Ok(sign(&symbol.to_string(), word))
             }
             other => Err(problem(format!("The character {other} has no place in a formula."), start, self.at)
@@ -307,7 +326,12 @@ fn known_commands() -> impl Iterator<Item = &'static str> {
     let structures = ["frac", "sqrt", "mathrm", "text", "mathbf", "left", "right"];
     let accents = ACCENTS.iter().map(|(name, _, _)| *name);
     let signs = SIGNS.iter().map(|(name, _, _)| *name);
-    structures.into_iter().chain(accents).chain(GREEK.iter().map(|(name, _)| *name)).chain(signs).chain(FUNCTIONS.iter().copied())
+    structures
+        .into_iter()
+        .chain(accents)
+        .chain(GREEK.iter().map(|(name, _)| *name))
+        .chain(signs)
+        .chain(FUNCTIONS.iter().copied())
 }
 
 /// Typst source of a row of parts.
@@ -479,7 +503,8 @@ mod tests {
 
     #[test]
     fn a_formula_reads_as_words() {
-        let formula = formula(r"m_\mathrm{c} = m \frac{1 - \rho_0/\rho}{1 - \rho_0/\rho_\mathrm{c}}", true).expect("known");
+        let formula =
+            formula(r"m_\mathrm{c} = m \frac{1 - \rho_0/\rho}{1 - \rho_0/\rho_\mathrm{c}}", true).expect("known");
         assert_eq!(
             formula.words,
             "m sub c equals m (1 minus rho sub 0 divided by rho) over (1 minus rho sub 0 divided by rho sub c)"
@@ -489,7 +514,8 @@ mod tests {
 
     #[test]
     fn scripts_sums_and_roots_have_words() {
-        let in_words = |latex| formula(latex, false).map(|formula| formula.words).unwrap_or_else(|problem| problem.message);
+        let in_words =
+            |latex| formula(latex, false).map(|formula| formula.words).unwrap_or_else(|problem| problem.message);
         assert_eq!(in_words(r"\sum_{i=1}^n x_i^2"), "sum from i equals 1 to n x sub i squared");
         assert_eq!(in_words(r"\sqrt{u_1^2 + u_2^2}"), "square root of (u sub 1 squared plus u sub 2 squared)");
         assert_eq!(in_words(r"\bar{x} \pm 2\,\text{mg}"), "x bar plus or minus 2 mg");

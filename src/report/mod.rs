@@ -3,7 +3,6 @@
 //! Prose becomes Typst markup ([`prose`]), a template arranges it ([`template`]), the typesetter makes the pages and
 //! the PDF ([`typeset`]).
 
-mod world;
 pub mod chart;
 pub mod compile;
 pub mod derivation;
@@ -22,6 +21,7 @@ pub mod prose_text;
 pub mod table;
 pub mod template;
 pub mod typeset;
+mod world;
 
 pub use compile::{Report, examine_reports, make_report, report_records};
 pub use markup::Markup;

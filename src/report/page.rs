@@ -44,8 +44,11 @@ impl Page {
     /// The variables of the template.
     pub fn values(&self) -> Value {
         let markup = |markup: &Markup| Value::from_object(markup.clone());
-        let particulars: Vec<Value> =
-            self.particulars.iter().map(|(label, content)| Value::from(vec![Value::from(label.as_str()), markup(content)])).collect();
+        let particulars: Vec<Value> = self
+            .particulars
+            .iter()
+            .map(|(label, content)| Value::from(vec![Value::from(label.as_str()), markup(content)]))
+            .collect();
         let signatures: Vec<Value> = self
             .signatures
             .iter()

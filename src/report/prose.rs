@@ -132,7 +132,11 @@ struct Stretch {
 
 impl<'a> Writer<'a, '_> {
     fn place(&self, range: &Range<usize>) -> Place {
-        Place::new(self.prose.body.file, self.prose.body.start as usize + range.start, self.prose.body.start as usize + range.end)
+        Place::new(
+            self.prose.body.file,
+            self.prose.body.start as usize + range.start,
+            self.prose.body.start as usize + range.end,
+        )
     }
 
     fn refuse(&mut self, message: impl Into<String>, hint: &str, place: Place) {
@@ -418,7 +422,11 @@ impl<'a> Writer<'a, '_> {
                     let place = if exact { self.place(&(offset..offset + text.len())) } else { self.place(range) };
                     let mut markup = Markup::new();
                     // A blank alone is a blank of the line, not a text of its own.
-                    if text.trim().is_empty() { markup.push_code(" ") } else { markup.push_text_at(text, place) };
+                    if text.trim().is_empty() {
+                        markup.push_code(" ")
+                    } else {
+                        markup.push_text_at(text, place)
+                    };
                     stretches.push(Stretch { markup, block: None });
                     offset += text.len();
                 }
@@ -505,7 +513,11 @@ impl<'a> Writer<'a, '_> {
             return inner;
         }
         let mut markup = Markup::code("#link(");
-        markup.push_code_at(&super::literal::typst_string(&target), place).push_code(")").push_content(&inner).push_code(";");
+        markup
+            .push_code_at(&super::literal::typst_string(&target), place)
+            .push_code(")")
+            .push_content(&inner)
+            .push_code(";");
         markup
     }
 

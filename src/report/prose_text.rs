@@ -10,7 +10,11 @@ pub fn dress(typed: &str, style: Style) -> String {
         match letter {
             '-' if letters.peek().is_some_and(|next| next.is_ascii_digit() || *next == ' ') => dressed.push('\u{2212}'),
             ' ' => dressed.push('\u{a0}'),
-            '.' if style.marker == crate::quantity::Marker::Comma && letters.peek().is_some_and(char::is_ascii_digit) => dressed.push(','),
+            '.' if style.marker == crate::quantity::Marker::Comma
+                && letters.peek().is_some_and(char::is_ascii_digit) =>
+            {
+                dressed.push(',')
+            }
             letter => dressed.push(letter),
         }
     }

@@ -66,10 +66,16 @@ impl Table {
     pub fn markup(&self) -> Markup {
         let mut made = Markup::code(format!("#table-block({}(", self.helper));
         if !self.columns.is_empty() {
-            made.push_code(&format!("columns: ({}), ", self.columns.iter().map(|width| format!("{width}, ")).collect::<String>()));
+            made.push_code(&format!(
+                "columns: ({}), ",
+                self.columns.iter().map(|width| format!("{width}, ")).collect::<String>()
+            ));
         }
         if !self.align.is_empty() {
-            made.push_code(&format!("align: ({}), ", self.align.iter().map(|side| format!("{side}, ")).collect::<String>()));
+            made.push_code(&format!(
+                "align: ({}), ",
+                self.align.iter().map(|side| format!("{side}, ")).collect::<String>()
+            ));
         }
         made.push_code("header: ");
         write_row(&self.header, &mut made);

@@ -71,7 +71,8 @@ pub fn render(template: &str, values: &Value) -> Result<Markup, Problem> {
         }
         output.write_str(&typst_text(&plain_text(value)?)).map_err(Error::from)
     });
-    let rendered = environment.render_named_str("report.typ", template, values).map_err(|error| template_problem(&error))?;
+    let rendered =
+        environment.render_named_str("report.typ", template, values).map_err(|error| template_problem(&error))?;
     let pieces = pieces.lock().unwrap_or_else(PoisonError::into_inner);
     Ok(put_in(&rendered, &pieces))
 }
@@ -143,7 +144,8 @@ fn literal_map(value: &Value) -> Result<Markup, Error> {
 
 fn template_problem(error: &Error) -> Problem {
     let line = error.line().map(|line| format!(" in line {line}")).unwrap_or_default();
-    let reason = error.detail().map_or_else(|| error.kind().to_string(), |detail| format!("{}, {detail}", error.kind()));
+    let reason =
+        error.detail().map_or_else(|| error.kind().to_string(), |detail| format!("{}, {detail}", error.kind()));
     Problem::new(Code::TemplateFaulty, format!("The page template cannot be filled{line}: {reason}."))
 }
 
@@ -166,8 +168,10 @@ mod tests {
 
     #[test]
     fn the_literal_filter_writes_arguments() {
-        let values = context! { rows => vec![vec!["a\"", "b"]], yes => true, cell => Value::from_object(Markup::text("m")) };
-        let rendered = render("{{ rows|literal }} {{ yes|literal }} {{ [cell, none, {'k': 1}]|literal }}", &values).expect("renders");
+        let values =
+            context! { rows => vec![vec!["a\"", "b"]], yes => true, cell => Value::from_object(Markup::text("m")) };
+        let rendered = render("{{ rows|literal }} {{ yes|literal }} {{ [cell, none, {'k': 1}]|literal }}", &values)
+            .expect("renders");
         assert_eq!(rendered.source, "((\"a\\\"\", \"b\", ), ) true ([#\"m\";], none, (\"k\": 1, ), )");
     }
 

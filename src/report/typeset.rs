@@ -129,7 +129,8 @@ impl Typeset {
             ..Default::default()
         };
         let exported = typst_pdf::pdf(&self.pages, &settings);
-        let exported = exported.map_err(|errors| errors.iter().map(|item| fault(&self.world, &self.spans, item)).collect());
+        let exported =
+            exported.map_err(|errors| errors.iter().map(|item| fault(&self.world, &self.spans, item)).collect());
         forget();
         exported
     }
@@ -150,7 +151,9 @@ fn timestamp(time: DateTime<Utc>) -> Result<Timestamp, Vec<TypesetFault>> {
         time.minute() as u8,
         second,
     );
-    datetime.map(Timestamp::new_utc).ok_or_else(|| vec![plain_fault("the time of the report cannot be written into a PDF")])
+    datetime
+        .map(Timestamp::new_utc)
+        .ok_or_else(|| vec![plain_fault("the time of the report cannot be written into a PDF")])
 }
 
 /// The source with its attachments declared at the end, where they shift no place, and the files they are read from.

@@ -22,11 +22,7 @@ fn faces() -> &'static Faces {
     static FACES: OnceLock<Faces> = OnceLock::new();
     FACES.get_or_init(|| {
         let fonts: Vec<Font> = typst_assets::fonts().flat_map(|data| Font::iter(Bytes::new(data))).collect();
-        Faces {
-            book: LazyHash::new(FontBook::from_fonts(&fonts)),
-            fonts,
-            library: LazyHash::new(Library::default()),
-        }
+        Faces { book: LazyHash::new(FontBook::from_fonts(&fonts)), fonts, library: LazyHash::new(Library::default()) }
     })
 }
 

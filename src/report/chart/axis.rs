@@ -54,7 +54,8 @@ pub fn number_ticks(range: (f64, f64), wanted: f64, marker: char) -> Ticks {
     // Every tick is a whole number of 10^exponent, so that its label is exact.
     let first = libm::ceil(range.0 / step) as i64;
     let last = libm::floor(range.1 / step) as i64;
-    let units: Vec<i64> = (first..=last.min(first.saturating_add(40))).map(|count| count.saturating_mul(unit)).collect();
+    let units: Vec<i64> =
+        (first..=last.min(first.saturating_add(40))).map(|count| count.saturating_mul(unit)).collect();
     let at = |units: i64| units as f64 / unit as f64 * step;
     let largest = units.iter().map(|units| units.unsigned_abs()).max().unwrap_or(0);
     let offset = if largest > 999_999 { units.first().map_or(0, |first| first.div_euclid(1000) * 1000) } else { 0 };
@@ -67,7 +68,11 @@ pub fn number_ticks(range: (f64, f64), wanted: f64, marker: char) -> Ticks {
         note.push(format!("× 10{}", superscript(factor)));
     }
     if offset != 0 {
-        note.push(format!("{} {}", if offset < 0 { '−' } else { '+' }, decimal(offset.saturating_abs(), exponent, marker)));
+        note.push(format!(
+            "{} {}",
+            if offset < 0 { '−' } else { '+' },
+            decimal(offset.saturating_abs(), exponent, marker)
+        ));
     }
     Ticks { list: list.collect(), note: note.join(" ") }
 }
@@ -164,7 +169,13 @@ const TIME_STEPS: &[i64] = &[
 pub fn time_ticks(range: (f64, f64), width_mm: f64) -> Ticks {
     let span = range.1 - range.0;
     let room = |step: i64| {
-        let label = if step >= DAY { 20.0 } else if step < 60 { 16.0 } else { 12.0 };
+        let label = if step >= DAY {
+            20.0
+        } else if step < 60 {
+            16.0
+        } else {
+            12.0
+        };
         span / step as f64 * label <= width_mm
     };
     let step = TIME_STEPS.iter().copied().find(|step| room(*step)).unwrap_or(50_000 * DAY);
@@ -181,7 +192,9 @@ pub fn time_ticks(range: (f64, f64), width_mm: f64) -> Ticks {
         };
         Some(Tick { at: second as f64, label: time.format(pattern).to_string() })
     });
-    let date = |second: f64| DateTime::<Utc>::from_timestamp(libm::floor(second) as i64, 0).map(|time| time.date_naive().to_string());
+    let date = |second: f64| {
+        DateTime::<Utc>::from_timestamp(libm::floor(second) as i64, 0).map(|time| time.date_naive().to_string())
+    };
     let note = match (date(range.0), date(range.1)) {
         _ if step >= DAY => String::new(),
         (Some(from), Some(to)) if from == to => from,
@@ -197,7 +210,10 @@ pub fn named_ticks(names: &[String], width_mm: f64) -> Ticks {
     let widest = names.iter().map(|name| super::text_width(name)).fold(0.0, f64::max) + 2.0;
     let every = (libm::ceil(widest / slot) as usize).max(1);
     let list = names.iter().enumerate().step_by(every);
-    Ticks { list: list.map(|(index, name)| Tick { at: index as f64, label: name.clone() }).collect(), note: String::new() }
+    Ticks {
+        list: list.map(|(index, name)| Tick { at: index as f64, label: name.clone() }).collect(),
+        note: String::new(),
+    }
 }
 
 #[cfg(test)]
@@ -213,14 +229,19 @@ mod tests {
     fn labels_are_exact_and_short() {
         assert_eq!(labels(-0.11, 0.32).0, ["−0.1", "0.0", "0.1", "0.2", "0.3"]);
         assert_eq!(labels(0.0, 52_000.0).0, ["0", "20\u{202f}000", "40\u{202f}000"]);
-        assert_eq!(labels(1e-9, 6e-9), (vec!["1".into(), "2".into(), "3".into(), "4".into(), "5".into(), "6".into()], "× 10⁻⁹".into()));
+        assert_eq!(
+            labels(1e-9, 6e-9),
+            (vec!["1".into(), "2".into(), "3".into(), "4".into(), "5".into(), "6".into()], "× 10⁻⁹".into())
+        );
         assert_eq!(labels(0.119_234_5, 0.119_234_9).0.len(), 5);
         assert_eq!(labels(1000.000_000_1, 1000.000_000_4).1, "× 10⁻⁹ + 1000.000\u{202f}000\u{202f}00");
     }
 
     #[test]
     fn ranges_are_never_empty() {
-        for values in [vec![], vec![0.0], vec![5.0], vec![-1e300, 1e300], vec![f64::MAX, f64::MIN], vec![1.0, 1.0 + 1e-15]] {
+        for values in
+            [vec![], vec![0.0], vec![5.0], vec![-1e300, 1e300], vec![f64::MAX, f64::MIN], vec![1.0, 1.0 + 1e-15]]
+        {
             let (low, high) = padded(values, 0.05);
             assert!(low < high);
             assert!(!number_ticks((low, high), 5.0, '.').list.is_empty());

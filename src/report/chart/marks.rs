@@ -10,8 +10,7 @@ const RADIUS: f64 = 0.85;
 
 /// A series as Typst code, empty when it has no points.
 pub fn series(series: &Series, index: usize, frame: &Frame) -> String {
-    let points: Vec<(f64, f64)> =
-        series.points.iter().map(|(x, y, _)| (frame.x_mm(*x), frame.y_mm(*y))).collect();
+    let points: Vec<(f64, f64)> = series.points.iter().map(|(x, y, _)| (frame.x_mm(*x), frame.y_mm(*y))).collect();
     if points.is_empty() {
         return String::new();
     }
@@ -25,7 +24,8 @@ pub fn series(series: &Series, index: usize, frame: &Frame) -> String {
         Style::Line => line(&points, index),
         Style::Steps => {
             let corners = points.windows(2).filter_map(|pair| Some((pair.get(1)?.0, pair.first()?.1)));
-            let mut path: Vec<(f64, f64)> = points.iter().zip(corners).flat_map(|(point, corner)| [*point, corner]).collect();
+            let mut path: Vec<(f64, f64)> =
+                points.iter().zip(corners).flat_map(|(point, corner)| [*point, corner]).collect();
             path.extend(points.last());
             line(&path, index)
         }
@@ -42,7 +42,8 @@ pub fn sample(style: Style, index: usize) -> String {
 }
 
 fn line(points: &[(f64, f64)], index: usize) -> String {
-    let dash = ["solid", "dashed", "dotted", "dash-dotted", "densely-dashed"].get(index % 5).copied().unwrap_or("solid");
+    let dash =
+        ["solid", "dashed", "dotted", "dash-dotted", "densely-dashed"].get(index % 5).copied().unwrap_or("solid");
     let mut path = String::new();
     for (number, (x, y)) in points.iter().enumerate() {
         path.push_str(&format!("curve.{}(({}, {})), ", if number == 0 { "move" } else { "line" }, mm(*x), mm(*y)));
@@ -59,10 +60,18 @@ fn mark(index: usize, (x, y): (f64, f64)) -> String {
     let r = RADIUS;
     match index % 6 {
         0 => disc(x, y, 0.8 * r),
-        1 => closed(&[(x - 0.8 * r, y - 0.8 * r), (x + 0.8 * r, y - 0.8 * r), (x + 0.8 * r, y + 0.8 * r), (x - 0.8 * r, y + 0.8 * r)]),
+        1 => closed(&[
+            (x - 0.8 * r, y - 0.8 * r),
+            (x + 0.8 * r, y - 0.8 * r),
+            (x + 0.8 * r, y + 0.8 * r),
+            (x - 0.8 * r, y + 0.8 * r),
+        ]),
         2 => closed(&[(x, y - 1.1 * r), (x + r, y + 0.7 * r), (x - r, y + 0.7 * r)]),
         3 => closed(&[(x, y - 1.2 * r), (x + 1.1 * r, y), (x, y + 1.2 * r), (x - 1.1 * r, y)]),
-        4 => stroke((x - 0.8 * r, y - 0.8 * r), (x + 0.8 * r, y + 0.8 * r)) + &stroke((x - 0.8 * r, y + 0.8 * r), (x + 0.8 * r, y - 0.8 * r)),
+        4 => {
+            stroke((x - 0.8 * r, y - 0.8 * r), (x + 0.8 * r, y + 0.8 * r))
+                + &stroke((x - 0.8 * r, y + 0.8 * r), (x + 0.8 * r, y - 0.8 * r))
+        }
         _ => stroke((x - 1.1 * r, y), (x + 1.1 * r, y)) + &stroke((x, y - 1.1 * r), (x, y + 1.1 * r)),
     }
 }

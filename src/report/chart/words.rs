@@ -12,7 +12,8 @@ pub fn alternative_text(chart: &Chart) -> String {
         text.push_str(&series_words(chart, series));
     }
     for line in chart.lines.iter().filter(|line| line.y.is_finite()) {
-        let band = line.half_width.filter(|half| half.is_finite()).map(|half| format!(" with a band of ± {}", number(half)));
+        let band =
+            line.half_width.filter(|half| half.is_finite()).map(|half| format!(" with a band of ± {}", number(half)));
         text.push_str(&format!("Line {} at {}{}. ", line.label, number(line.y), band.unwrap_or_default()));
     }
     text.trim_end().to_string()
@@ -21,7 +22,8 @@ pub fn alternative_text(chart: &Chart) -> String {
 fn series_words(chart: &Chart, series: &Series) -> String {
     let points: Vec<_> = series.points.iter().filter(|point| point.0.is_finite() && point.1.is_finite()).collect();
     let name = if series.name.is_empty() { "The series".to_string() } else { format!("Series {}", series.name) };
-    let (Some(x), Some(y)) = (range(points.iter().map(|point| point.0)), range(points.iter().map(|point| point.1))) else {
+    let (Some(x), Some(y)) = (range(points.iter().map(|point| point.0)), range(points.iter().map(|point| point.1)))
+    else {
         return format!("{name} has no points. ");
     };
     let count = if points.len() == 1 { "1 point".to_string() } else { format!("{} points", points.len()) };

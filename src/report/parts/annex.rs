@@ -1,10 +1,10 @@
 //! The annex: symbols used, and the files attached.
 
+use super::budget::SMALLEST_SHARE;
 use crate::block::Engine;
 use crate::graph::{NodeId, budget};
 use crate::report::Markup;
 use crate::report::dossier::Dossier;
-use super::budget::SMALLEST_SHARE;
 use crate::report::table::{Cell, Table, symbol};
 use std::collections::BTreeMap;
 
@@ -16,7 +16,9 @@ pub fn symbols_table(engine: &Engine, results: &[NodeId]) -> Markup {
         if let Some(name) = &graph.node(*id).name {
             used.insert(name.symbol.clone(), (name.label.clone(), name.unit.text_or_one()));
         }
-        for line in budget(&graph, *id).lines.into_iter().filter(|line| line.share >= SMALLEST_SHARE && !line.symbol.is_empty()) {
+        for line in
+            budget(&graph, *id).lines.into_iter().filter(|line| line.share >= SMALLEST_SHARE && !line.symbol.is_empty())
+        {
             used.entry(line.symbol).or_insert((line.label, line.unit.text_or_one()));
         }
     }
@@ -29,7 +31,8 @@ pub fn symbols_table(engine: &Engine, results: &[NodeId]) -> Markup {
         ("ν", "degrees of freedom"),
         ("ν_eff", "effective degrees of freedom"),
     ];
-    let mut table = Table::new("Symbols used in results and budgets", vec!["Symbol".into(), "Quantity".into(), "Unit".into()]);
+    let mut table =
+        Table::new("Symbols used in results and budgets", vec!["Symbol".into(), "Quantity".into(), "Unit".into()]);
     table.columns = vec!["auto", "1fr", "auto"];
     for (text, (label, unit)) in used {
         table.rows.push(vec![Cell::Markup(symbol(&text)), label.into(), engine.laboratory.style.digits(&unit).into()]);
@@ -42,7 +45,8 @@ pub fn symbols_table(engine: &Engine, results: &[NodeId]) -> Markup {
 
 /// Every attached file with its path, size and digest.
 pub fn files_table(engine: &Engine, dossier: &Dossier) -> Markup {
-    let header = vec!["Attached as".into(), "Path in the laboratory folder".into(), "Bytes".into(), "SHA-256 begins".into()];
+    let header =
+        vec!["Attached as".into(), "Path in the laboratory folder".into(), "Bytes".into(), "SHA-256 begins".into()];
     let mut table = Table::new("Files attached to this report; their full digests stand in contents.json", header);
     table.columns = vec!["1fr", "1fr", "auto", "auto"];
     table.align = vec!["left", "left", "right", "left"];

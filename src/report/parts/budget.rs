@@ -61,7 +61,9 @@ fn row(line: &BudgetLine, unit: &Unit, style: Style) -> Vec<Cell> {
         uncertainty.into(),
         format!("{}, {}", line.evaluation.letter(), line.distribution).into(),
         freedom(style, line.degrees_of_freedom).into(),
-        line.sensitivity_coefficient.map_or_else(|| "by row".into(), |c| coefficient(c, unit, &line.unit, style)).into(),
+        line.sensitivity_coefficient
+            .map_or_else(|| "by row".into(), |c| coefficient(c, unit, &line.unit, style))
+            .into(),
         significant(style, unit.difference_from_si(line.contribution), 3).into(),
         share(line.share, style).into(),
     ]
@@ -71,10 +73,15 @@ fn row(line: &BudgetLine, unit: &Unit, style: Style) -> Vec<Cell> {
 fn estimate_text(estimate: f64, line: &BudgetLine, style: Style) -> String {
     // A mass stated as nominal plus deviation is shown whole, in the coherent unit.
     let large = line.unit.difference_from_si(estimate).abs() >= 1e5;
-    let coherent = if large { Unit::parse("kg").ok().filter(|kg| kg.dimension() == line.unit.dimension()) } else { None };
+    let coherent =
+        if large { Unit::parse("kg").ok().filter(|kg| kg.dimension() == line.unit.dimension()) } else { None };
     if let Some(kilogram) = coherent {
-        let u = kilogram.difference_decimal_from_si(line.standard_uncertainty).and_then(|u| u.rounded_to_digits(2).leading_power());
-        return style.value(estimate, &kilogram, u.map_or(9, |lead| 1 - lead)).unwrap_or_else(|problem| problem.message);
+        let u = kilogram
+            .difference_decimal_from_si(line.standard_uncertainty)
+            .and_then(|u| u.rounded_to_digits(2).leading_power());
+        return style
+            .value(estimate, &kilogram, u.map_or(9, |lead| 1 - lead))
+            .unwrap_or_else(|problem| problem.message);
     }
     let spread = line.unit.difference_decimal_from_si(line.standard_uncertainty);
     let decimals = spread.and_then(|u| u.rounded_to_digits(2).leading_power()).map_or(6, |lead| 1 - lead);
@@ -86,7 +93,8 @@ fn estimate_text(estimate: f64, line: &BudgetLine, style: Style) -> String {
 
 fn difference_in(value: f64, unit: &Unit, style: Style) -> String {
     // A difference of temperatures is printed in kelvin.
-    let unit = if unit.is_celsius() { Unit::parse("K").unwrap_or_else(|_| unit.clone()) } else { choose_unit(value, unit) };
+    let unit =
+        if unit.is_celsius() { Unit::parse("K").unwrap_or_else(|_| unit.clone()) } else { choose_unit(value, unit) };
     style.difference(value, &unit, 2).unwrap_or_else(|problem| problem.message)
 }
 

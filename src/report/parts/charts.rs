@@ -37,7 +37,11 @@ fn differences(engine: &Engine, name: &str, comparison: &Comparison) -> Chart {
     let mut series = vec![Series { name: "cycles".into(), points: points(false), style: Style::Points }];
     let means = series_means(engine, name, comparison);
     if means.len() > 1 {
-        series.push(Series { name: "series means with standard deviation".into(), points: means, style: Style::Points });
+        series.push(Series {
+            name: "series means with standard deviation".into(),
+            points: means,
+            style: Style::Points,
+        });
     }
     let left_out = points(true);
     if !left_out.is_empty() {
@@ -75,7 +79,12 @@ fn series_means(engine: &Engine, name: &str, comparison: &Comparison) -> Vec<(f6
     series.dedup();
     let mean = |number: &u32| {
         let id = graph.find(&format!("{name}.series.{number}"))?;
-        let times: Vec<f64> = comparison.cycles.iter().filter(|cycle| cycle.series == *number && !cycle.excluded).map(|cycle| cycle.start).collect();
+        let times: Vec<f64> = comparison
+            .cycles
+            .iter()
+            .filter(|cycle| cycle.series == *number && !cycle.excluded)
+            .map(|cycle| cycle.start)
+            .collect();
         let middle = times.iter().sum::<f64>() / times.len().max(1) as f64;
         let crate::graph::Op::Output(estimator, output) = graph.node(id).op else { return None };
         let own = graph.estimators[estimator.index()].estimate.own_covariance[output as usize][output as usize];
@@ -127,19 +136,29 @@ fn combined(engine: &Engine, name: &str) -> Option<Chart> {
     let paths = block.fields().texts("results");
     let ids: Vec<NodeId> = paths.iter().map(|path| engine.graph().find(&path.text)).collect::<Option<_>>()?;
     let figures: Vec<Figure> = ids.iter().map(|id| Figure::of(engine, *id)).collect::<Option<_>>()?;
-    let own = ["mass", "conventional_mass", "difference", "value"].iter().find_map(|path| engine.graph().find(&format!("{name}.{path}")))?;
+    let own = ["mass", "conventional_mass", "difference", "value"]
+        .iter()
+        .find_map(|path| engine.graph().find(&format!("{name}.{path}")))?;
     let own = Figure::of(engine, own)?;
     let unit = choose_unit(own.coverage.standard_uncertainty, &own.unit);
     let centre = own.value;
     let points = figures.iter().enumerate().map(|(index, figure)| {
-        (index as f64, unit.difference_from_si(figure.value - centre), Some(unit.difference_from_si(figure.coverage.standard_uncertainty)))
+        (
+            index as f64,
+            unit.difference_from_si(figure.value - centre),
+            Some(unit.difference_from_si(figure.coverage.standard_uncertainty)),
+        )
     });
     Some(Chart {
         title: format!("{name}: results combined, as departures from the combined result, with standard uncertainties"),
         x_label: "result".into(),
         y_label: format!("departure/{}", engine.laboratory.style.unit(&unit)),
         series: vec![Series { name: "results".into(), points: points.collect(), style: Style::Points }],
-        lines: vec![Mean { y: 0.0, half_width: Some(unit.difference_from_si(own.coverage.standard_uncertainty)), label: "combined result and its standard uncertainty".into() }],
+        lines: vec![Mean {
+            y: 0.0,
+            half_width: Some(unit.difference_from_si(own.coverage.standard_uncertainty)),
+            label: "combined result and its standard uncertainty".into(),
+        }],
         x_ticks: paths.iter().map(|path| path.text.clone()).collect(),
         decimal_marker: marker(engine),
         ..Chart::default()

@@ -35,7 +35,8 @@ impl Comparison {
         let mut values = propagate_distributions(&engine.graph(), &[result], trials)?.values.swap_remove(0);
         let found = distributed(&mut values, figure.coverage.probability);
         let expanded = figure.coverage.expanded_uncertainty;
-        let validation = Validation::new(figure.value, expanded, found.symmetric, figure.coverage.standard_uncertainty, DIGITS);
+        let validation =
+            Validation::new(figure.value, expanded, found.symmetric, figure.coverage.standard_uncertainty, DIGITS);
         Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation }))
     }
 
@@ -55,7 +56,11 @@ impl Comparison {
 pub fn distribution_part(engine: &Engine, result: NodeId) -> Result<Markup, Problem> {
     let Some(comparison) = Comparison::of(engine, result)? else { return Ok(Markup::new()) };
     engine.builder.assume(
-        format!("Monte Carlo trials: {} with the constant seed “{}”", comparison.found.trials, crate::numeric::stream::SEED),
+        format!(
+            "Monte Carlo trials: {} with the constant seed “{}”",
+            comparison.found.trials,
+            crate::numeric::stream::SEED
+        ),
         None,
     );
     let mut made = table(engine, &comparison);
@@ -91,14 +96,33 @@ fn table(engine: &Engine, comparison: &Comparison) -> Markup {
     );
     let mut table = Table::new(caption, header);
     table.align = vec!["left", "right", "right", "right", "right"];
-    let row = |name: &str, y: f64, u: f64, ends: (f64, f64)| vec![name.into(), shown(y - estimate), shown(u), shown(ends.0 - estimate), shown(ends.1 - estimate)];
+    let row = |name: &str, y: f64, u: f64, ends: (f64, f64)| {
+        vec![name.into(), shown(y - estimate), shown(u), shown(ends.0 - estimate), shown(ends.1 - estimate)]
+    };
     let (found, validation) = (&comparison.found, &comparison.validation);
-    table.rows.push(row("first order", estimate, comparison.figure.coverage.standard_uncertainty, validation.first_order));
+    table.rows.push(row(
+        "first order",
+        estimate,
+        comparison.figure.coverage.standard_uncertainty,
+        validation.first_order,
+    ));
     table.rows.push(row("trials, symmetric interval", found.estimate, found.standard_uncertainty, found.symmetric));
     table.rows.push(row("trials, shortest interval", found.estimate, found.standard_uncertainty, found.shortest));
     let blank = || Cell::from("");
-    table.closing.push(vec!["difference of the ends".into(), blank(), blank(), shown(validation.low_difference), shown(validation.high_difference)]);
-    table.closing.push(vec!["numerical tolerance δ".into(), blank(), blank(), significant(style, unit.difference_from_si(validation.tolerance), 1).into(), blank()]);
+    table.closing.push(vec![
+        "difference of the ends".into(),
+        blank(),
+        blank(),
+        shown(validation.low_difference),
+        shown(validation.high_difference),
+    ]);
+    table.closing.push(vec![
+        "numerical tolerance δ".into(),
+        blank(),
+        blank(),
+        significant(style, unit.difference_from_si(validation.tolerance), 1).into(),
+        blank(),
+    ]);
     table.markup()
 }
 
@@ -114,8 +138,12 @@ fn chart(engine: &Engine, comparison: &Comparison) -> Chart {
     let width = (classes.to - classes.from) / classes.counts.len() as f64;
     let total: f64 = classes.counts.iter().map(|count| *count as f64).sum();
     let density = |count: u64| count as f64 / (total * unit.difference_from_si(width));
-    let mut steps: Vec<(f64, f64, Option<f64>)> =
-        classes.counts.iter().enumerate().map(|(index, count)| (at(classes.from + width * index as f64), density(*count), None)).collect();
+    let mut steps: Vec<(f64, f64, Option<f64>)> = classes
+        .counts
+        .iter()
+        .enumerate()
+        .map(|(index, count)| (at(classes.from + width * index as f64), density(*count), None))
+        .collect();
     steps.push((at(classes.to), 0.0, None));
     let highest = steps.iter().map(|(_, y, _)| *y).fold(0.0, f64::max);
     let scale = unit.difference_from_si(u);
@@ -123,17 +151,30 @@ fn chart(engine: &Engine, comparison: &Comparison) -> Chart {
         let z = -4.0 + f64::from(index) * 0.1;
         (z * scale, crate::numeric::distribution::normal_density(z) / scale, None)
     });
-    let bar = |ends: (f64, f64), height: f64| vec![(at(ends.0), height * highest, None), (at(ends.1), height * highest, None)];
+    let bar = |ends: (f64, f64), height: f64| {
+        vec![(at(ends.0), height * highest, None), (at(ends.1), height * highest, None)]
+    };
     let probability = per_cent(engine.laboratory.style, nominal_probability(comparison.found.probability));
     Chart {
-        title: format!("{}: distribution of the trials, and the density of first-order propagation", comparison.figure.label),
+        title: format!(
+            "{}: distribution of the trials, and the density of first-order propagation",
+            comparison.figure.label
+        ),
         x_label: format!("departure/{}", engine.laboratory.style.unit(&unit)),
         y_label: format!("density × {}", engine.laboratory.style.unit(&unit)),
         series: vec![
             Series { name: "trials".into(), points: steps, style: Look::Steps },
             Series { name: "first order".into(), points: normal.collect(), style: Look::Line },
-            Series { name: format!("{probability} interval, trials"), points: bar(comparison.found.symmetric, 0.10), style: Look::Line },
-            Series { name: format!("{probability} interval, first order"), points: bar(comparison.validation.first_order, 0.05), style: Look::Line },
+            Series {
+                name: format!("{probability} interval, trials"),
+                points: bar(comparison.found.symmetric, 0.10),
+                style: Look::Line,
+            },
+            Series {
+                name: format!("{probability} interval, first order"),
+                points: bar(comparison.validation.first_order, 0.05),
+                style: Look::Line,
+            },
         ],
         decimal_marker: if engine.laboratory.style.marker == Marker::Comma { ',' } else { '.' },
         ..Chart::default()

@@ -43,8 +43,20 @@ fn by_cycle(engine: &Engine, name: &str, comparison: &Comparison) -> Markup {
     header.extend(pans.iter().map(|pan| head(&format!("I_{}", pan_letter(*pan, per_cycle)), &unit)));
     header.extend(comparison.b.iter().map(|_| head("d", "µg")));
     header.push("".into());
-    let mut table = Table::new(format!("{name}: {} against {}, cycle {}; d is corrected for buoyancy", comparison.b.join(", "), comparison.a, comparison.scheme), header);
-    table.align = ["center", "center", "left"].into_iter().chain((0..per_cycle + comparison.b.len()).map(|_| "right")).chain(["left"]).collect();
+    let mut table = Table::new(
+        format!(
+            "{name}: {} against {}, cycle {}; d is corrected for buoyancy",
+            comparison.b.join(", "),
+            comparison.a,
+            comparison.scheme
+        ),
+        header,
+    );
+    table.align = ["center", "center", "left"]
+        .into_iter()
+        .chain((0..per_cycle + comparison.b.len()).map(|_| "right"))
+        .chain(["left"])
+        .collect();
     for cycle in &comparison.cycles {
         table.rows.push(row(engine, comparison, cycle));
     }
@@ -54,9 +66,11 @@ fn by_cycle(engine: &Engine, name: &str, comparison: &Comparison) -> Markup {
 fn row(engine: &Engine, comparison: &Comparison, cycle: &CycleResult) -> Vec<Cell> {
     let style = engine.laboratory.style;
     let decimals = decimals_of(&comparison.indications, &comparison.unit);
-    let mut cells: Vec<Cell> = vec![cycle.series.to_string().into(), cycle.cycle.to_string().into(), time_of_day(cycle.start).into()];
+    let mut cells: Vec<Cell> =
+        vec![cycle.series.to_string().into(), cycle.cycle.to_string().into(), time_of_day(cycle.start).into()];
     let rows = comparison.weighings.iter().zip(&comparison.indications);
-    for (_, indication) in rows.filter(|(weighing, _)| weighing.series == cycle.series && weighing.cycle == cycle.cycle) {
+    for (_, indication) in rows.filter(|(weighing, _)| weighing.series == cycle.series && weighing.cycle == cycle.cycle)
+    {
         cells.push(fixed(style, comparison.unit.difference_from_si(*indication), decimals).into());
     }
     cells.extend(cycle.differences.iter().map(|difference| Cell::from(fixed(style, difference * 1e9, 2))));
@@ -66,13 +80,26 @@ fn row(engine: &Engine, comparison: &Comparison, cycle: &CycleResult) -> Vec<Cel
 
 fn by_series(engine: &Engine, name: &str, comparison: &Comparison) -> Markup {
     let style = engine.laboratory.style;
-    let header = vec!["Series".into(), "Start (UTC)".into(), "Cycles used".into(), "Cycles left out".into(), head("d", "µg")];
-    let mut table = Table::new(format!("{name}: {} against {}, cycle {}; mean difference of each series", comparison.b.join(", "), comparison.a, comparison.scheme), header);
+    let header =
+        vec!["Series".into(), "Start (UTC)".into(), "Cycles used".into(), "Cycles left out".into(), head("d", "µg")];
+    let mut table = Table::new(
+        format!(
+            "{name}: {} against {}, cycle {}; mean difference of each series",
+            comparison.b.join(", "),
+            comparison.a,
+            comparison.scheme
+        ),
+        header,
+    );
     let mut series: Vec<u32> = comparison.cycles.iter().map(|cycle| cycle.series).collect();
     series.dedup();
     for number in series {
         let cycles: Vec<&CycleResult> = comparison.cycles.iter().filter(|cycle| cycle.series == number).collect();
-        let used: Vec<f64> = cycles.iter().filter(|cycle| !cycle.excluded).filter_map(|cycle| cycle.differences.first().copied()).collect();
+        let used: Vec<f64> = cycles
+            .iter()
+            .filter(|cycle| !cycle.excluded)
+            .filter_map(|cycle| cycle.differences.first().copied())
+            .collect();
         let mean = used.iter().sum::<f64>() / used.len().max(1) as f64;
         table.rows.push(vec![
             number.to_string().into(),
@@ -87,7 +114,9 @@ fn by_series(engine: &Engine, name: &str, comparison: &Comparison) -> Markup {
 
 /// The decimals the indications were written with, as far as the values show.
 fn decimals_of(indications: &[f64], unit: &Unit) -> i32 {
-    let decimals = |value: &f64| Decimal::from_f64_shortest(unit.difference_from_si(*value)).map_or(0, |decimal| decimal.decimals());
+    let decimals = |value: &f64| {
+        Decimal::from_f64_shortest(unit.difference_from_si(*value)).map_or(0, |decimal| decimal.decimals())
+    };
     indications.iter().map(decimals).filter(|decimals| *decimals <= 9).max().unwrap_or(4).max(0)
 }
 

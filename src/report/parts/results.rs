@@ -10,7 +10,13 @@ use crate::report::table::{Cell, Table, head, symbol};
 /// Results with expanded uncertainty, coverage factor and degrees of freedom.
 pub fn results_table(engine: &Engine, results: &[NodeId]) -> Markup {
     let style = engine.laboratory.style;
-    let header = vec!["Result of".into(), "Quantity".into(), "Value and expanded uncertainty".into(), head("k", ""), head("ν_eff", "")];
+    let header = vec![
+        "Result of".into(),
+        "Quantity".into(),
+        "Value and expanded uncertainty".into(),
+        head("k", ""),
+        head("ν_eff", ""),
+    ];
     let caption = format!(
         "Results with expanded uncertainty for a coverage probability of {}",
         per_cent(style, nominal_probability(engine.laboratory.settings.coverage_probability))

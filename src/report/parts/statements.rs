@@ -27,13 +27,16 @@ pub fn uncertainty_statement(engine: &Engine, result: NodeId) -> Markup {
         nu if nu.is_finite() => {
             made.push_text("The factor is taken from the ").push_code("#emph(\"t\")").push_text(" distribution with ");
             let equals = if nu > 99_999.5 { "" } else { "= " };
-            made.push(&symbol("ν_eff")).push_text(&format!(" {equals}{} effective degrees of freedom", freedom(style, nu)));
+            made.push(&symbol("ν_eff"))
+                .push_text(&format!(" {equals}{} effective degrees of freedom", freedom(style, nu)));
             if engine.laboratory.settings.degrees_of_freedom == DegreesOfFreedomRule::Truncated {
                 made.push_text(" (truncated to a whole number)");
             }
         }
         _ => {
-            made.push_text("The factor is taken from the normal distribution, for the degrees of freedom are unlimited");
+            made.push_text(
+                "The factor is taken from the normal distribution, for the degrees of freedom are unlimited",
+            );
         }
     }
     made.push_text(&format!(

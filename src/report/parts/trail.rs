@@ -26,7 +26,9 @@ fn row(engine: &Engine, graph: &Graph, step: &TrailStep) -> Vec<Cell> {
     let Some(name) = &node.name else { return Vec::new() };
     let value = match graph.value(step.node).length() {
         Some(rows) => format!("{rows} values"),
-        None => print_quantity(graph, step.node, &crate::graph::sensitivities(graph, step.node), engine.laboratory.style),
+        None => {
+            print_quantity(graph, step.node, &crate::graph::sensitivities(graph, step.node), engine.laboratory.style)
+        }
     };
     vec![
         step.depth.to_string().into(),
@@ -43,11 +45,22 @@ fn from(engine: &Engine, graph: &Graph, step: &TrailStep) -> String {
         let (path, line, _) = sources.locate(place);
         format!("{path}, line {line}")
     };
-    let rests = || step.rests_on.iter().filter_map(|id| graph.node(*id).name.as_ref()).map(|name| name.path.as_str()).collect::<Vec<_>>().join(", ");
+    let rests = || {
+        step.rests_on
+            .iter()
+            .filter_map(|id| graph.node(*id).name.as_ref())
+            .map(|name| name.path.as_str())
+            .collect::<Vec<_>>()
+            .join(", ")
+    };
     match &graph.node(step.node).origin {
         Origin::Reading(place) => format!("reading, {}", at(*place)),
         Origin::Stated(place) => format!("stated, {}", at(*place)),
-        Origin::ReadingList(_) => graph.node(step.node).origin.place().map_or_else(String::new, |place| format!("readings, {} and following", at(place))),
+        Origin::ReadingList(_) => graph
+            .node(step.node)
+            .origin
+            .place()
+            .map_or_else(String::new, |place| format!("readings, {} and following", at(place))),
         Origin::Readings(column) => format!(
             "readings, {}, column {}, lines {} to {}",
             sources.file(column.file).path,
@@ -61,4 +74,3 @@ fn from(engine: &Engine, graph: &Graph, step: &TrailStep) -> String {
         Origin::Step => format!("from {}", rests()),
     }
 }
-

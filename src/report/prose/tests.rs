@@ -48,7 +48,10 @@ fn text_lists_and_tables() {
     assert!(source("- a\n- b\n").starts_with("#list(tight: true, [#\"a\";\n\n], [#\"b\";"));
     assert!(source("3. a\n\n4. b\n").starts_with("#enum(tight: false, start: 3, ["));
     let table = source("| a | b |\n|---|--:|\n| 1 | {{ x }} |\n");
-    assert_eq!(table, "#data-table(align: (left, right, ), header: ([#\"a\";], [#\"b\";], ), rows: (([#\"1\";], [#\"x\";], ), ));");
+    assert_eq!(
+        table,
+        "#data-table(align: (left, right, ), header: ([#\"a\";], [#\"b\";], ), rows: (([#\"1\";], [#\"x\";], ), ));"
+    );
 }
 
 #[test]
@@ -71,7 +74,8 @@ fn an_expression_enters_where_it_stands() {
 #[test]
 fn places_lead_back_to_the_record() {
     let (markup, _) = set("ab {{ m }} cd");
-    let place_of = |needle: &str| markup.place_of(markup.source.find(needle).expect("there") + 1).expect("a place").start - 100;
+    let place_of =
+        |needle: &str| markup.place_of(markup.source.find(needle).expect("there") + 1).expect("a place").start - 100;
     assert_eq!(place_of("#\"ab"), 0);
     assert_eq!(place_of("#\"m\""), 3);
     assert_eq!(place_of("#\" cd"), 10);
