@@ -215,7 +215,7 @@ impl<'e> Work<'e> {
                 &format!("mass of {}", weight_a.block.label()),
                 Kind::Mass,
             )?,
-            None if a_is_known => weight_a.mass(day, a_name.place)?,
+            None if a_is_known => weight_a.mass_in_air(day, a_name.place)?,
             None => weight_a.nominal()?,
         };
         let gradient = comparator.gravity_gradient();
@@ -439,7 +439,7 @@ impl<'e> Work<'e> {
         for (side, sign) in [("a", -1.0), ("b", 1.0)] {
             for name in added.texts(side) {
                 let small = Weight::find(self.engine, &name)?;
-                let mass = small.mass(self.day, name.place)?;
+                let mass = small.mass_in_air(self.day, name.place)?;
                 if let (Some(known), Some(reference)) = (self.basis_of(mass), self.basis_of(self.m_a))
                     && known != reference
                 {

@@ -6,7 +6,7 @@
 use super::given::{Given, distribution_of};
 use super::laboratory::Laboratory;
 use super::{BlockKind, Fields, KINDS, field::check_fields, find_kind};
-use crate::diagnostic::{Code, Complaints, Problem, nearest};
+use crate::diagnostic::{Code, Complaints, Problem, Severity, nearest};
 use crate::graph::{Builder, Distribution, Graph, InputDraft, NodeId, Origin, Quantity, Value};
 use crate::intake::{FileId, Intake, IntakeError, Place, Sources};
 use crate::quantity::{Kind, Unit};
@@ -49,6 +49,8 @@ struct Progress {
     complaints: Complaints,
     done: BTreeSet<String>,
     open: Vec<String>,
+    /// Blocks whose building drew a fault: what they do not give is no second fault.
+    failed: BTreeSet<String>,
     /// Names of blocks used so far, in order of first use.
     used: Vec<String>,
     /// Files used so far beside those of the blocks.
@@ -238,11 +240,22 @@ impl<'i> Engine<'i> {
             }
             progress.open.push(name.to_string());
         }
+        let before = self.count_faults();
         (block.kind.build)(self, block);
         for problem in self.builder.take_problems() {
             self.complain(problem, block.raw.place);
         }
-        self.progress.borrow_mut().open.pop();
+        let failed = self.count_faults() > before;
+        let mut progress = self.progress.borrow_mut();
+        progress.open.pop();
+        if failed {
+            progress.failed.insert(name.to_string());
+        }
+    }
+
+    fn count_faults(&self) -> usize {
+        let progress = self.progress.borrow();
+        progress.complaints.list.iter().filter(|complaint| complaint.severity == Severity::Fault).count()
     }
 
     /// Builds every block that computes something.
@@ -282,11 +295,7 @@ impl<'i> Engine<'i> {
 
     fn complain_unknown_output(&self, path: &Text, name: &str) {
         // A block that was complained of says nothing twice.
-        let place = self.blocks[name].raw.place;
-        let inside = |at: Option<Place>| {
-            at.is_some_and(|at| at.file == place.file && at.start >= place.start && at.end <= place.end)
-        };
-        if self.progress.borrow().complaints.list.iter().any(|complaint| inside(complaint.place)) {
+        if self.progress.borrow().failed.contains(name) {
             return;
         }
         let graph = self.graph();
@@ -322,7 +331,9 @@ impl<'i> Engine<'i> {
                         found.kind().phrase(),
                         kind.phrase()
                     );
-                    self.complain(Problem::new(Code::KindMismatch, message), reference.place);
+                    let hint =
+                        "Cite a result of the kind expected; mass and conventional mass are never exchanged by hand.";
+                    self.complain(Problem::new(Code::KindMismatch, message).hint(hint), reference.place);
                     return None;
                 }
                 Some(found)

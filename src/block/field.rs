@@ -129,10 +129,15 @@ fn unknown_field(found: &str, fields: &[Field], owner: &str) -> Problem {
 }
 
 fn mismatch(owner: &str, expected: String, node: &Node) -> Problem {
-    Problem::new(
-        Code::ShapeMismatch,
-        format!("{} holds {}, but {expected} is expected.", capital(owner), node.describe()),
-    )
+    let message = format!("{} holds {}, but {expected} is expected.", capital(owner), node.describe());
+    let problem = Problem::new(Code::ShapeMismatch, message);
+    match (expected.contains("list"), node.as_list().is_some()) {
+        (true, false) => {
+            problem.hint("Write a list: each item on a line of its own behind a dash, or all in square brackets.")
+        }
+        (false, true) => problem.hint("Write one value, without dashes and square brackets."),
+        _ => problem.hint(format!("Write {expected}.")),
+    }
 }
 
 fn capital(text: &str) -> String {

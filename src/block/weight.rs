@@ -5,7 +5,7 @@ use super::engine::{Block, Engine};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::given::Given;
-use super::{BlockKind, Output, no_check};
+use super::{BlockKind, Output};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Quantity, State};
 use crate::intake::Place;
@@ -205,6 +205,25 @@ impl<'e> Weight<'e> {
         let label = format!("mass of {}", self.block.label());
         engine.builder.name(made.id, crate::graph::Name { path, symbol: format!("m_{name}"), label, unit: unit("kg") });
         Some(made)
+    }
+
+    /// The mass on `day` for a weighing in air; a value in vacuum is refused, for the sorbed layers differ.
+    pub fn mass_in_air(self, day: NaiveDate, used_at: Place) -> Option<Quantity<'e>> {
+        let mass = self.mass(day, used_at)?;
+        if mass.state() != Some(State::Vacuum) {
+            return Some(mass);
+        }
+        let name = self.block.name();
+        let calibrations = self.block.fields().mappings("calibrations");
+        let in_vacuum = calibrations.iter().find(|calibration| calibration.words("state") == "vacuum");
+        let place = in_vacuum.map_or(self.block.raw.name.place, |calibration| calibration.place_of("state"));
+        let message =
+            format!("The mass of {name} holds in vacuum, but {name} is weighed in air without a stated link.");
+        let problem = Problem::new(Code::StateMismatch, message)
+            .hint("Use a certificate that holds in air, or a result that carries the mass from vacuum to air.");
+        let complaint = problem.at(place).hint_at("It is used here.", used_at);
+        self.engine.complain_all(crate::diagnostic::Complaints { list: vec![complaint] });
+        None
     }
 
     /// The certificate's mass; a conventional mass is converted with the density.

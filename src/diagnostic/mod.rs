@@ -51,8 +51,8 @@ impl Problem {
             severity: self.code.severity(),
             code: self.code,
             place: Some(place),
-            message: self.message,
-            hints: self.hints.into_iter().map(|text| Hint { text, place: None }).collect(),
+            message: sentence(self.message),
+            hints: self.hints.into_iter().map(|text| Hint { text: sentence(text), place: None }).collect(),
         }
     }
 
@@ -62,6 +62,24 @@ impl Problem {
         complaint.place = None;
         complaint
     }
+}
+
+/// Text as a sentence: a capital letter in front where it begins with a plain word, a full stop behind.
+fn sentence(text: String) -> String {
+    let text = text.trim();
+    let first = text.split_whitespace().next().unwrap_or_default();
+    let plain = first.chars().all(|c| c.is_alphabetic() || matches!(c, ',' | ':' | ';'));
+    let mut letters = text.chars();
+    let mut made: String = match letters.next() {
+        Some(letter) if plain && letter.is_lowercase() && (first == "a" || first.chars().count() > 1) => {
+            letter.to_uppercase().chain(letters).collect()
+        }
+        _ => text.to_string(),
+    };
+    if made.ends_with(|c: char| c.is_alphanumeric() || matches!(c, ')' | '`' | '”' | '"' | '…')) {
+        made.push('.');
+    }
+    made
 }
 
 /// How much a complaint weighs.
@@ -105,9 +123,12 @@ pub struct Complaints {
 }
 
 impl Complaints {
-    /// Adds one, unless the very same stands already.
+    /// Adds one, unless the same is said of the same place already.
     pub fn add(&mut self, complaint: Complaint) {
-        if !self.list.contains(&complaint) {
+        let said = |other: &Complaint| {
+            other.code == complaint.code && other.place == complaint.place && other.message == complaint.message
+        };
+        if !self.list.iter().any(said) {
             self.list.push(complaint);
         }
     }

@@ -190,6 +190,11 @@ fn plain_fault(message: &str) -> TypesetFault {
 fn fault(world: &PageWorld, spans: &[(Range<usize>, Place)], diagnostic: &SourceDiagnostic) -> TypesetFault {
     let mut problem = Problem::new(Code::TypesettingFailed, sentence(&diagnostic.message));
     problem.hints.extend(diagnostic.hints.iter().map(|hint| sentence(&hint.v)));
+    if diagnostic.message.contains("could not be displayed with font") {
+        let letters = diagnostic.message.split('"').nth(1).unwrap_or_default().trim_matches('`');
+        problem.message = format!("The report's typefaces have no sign for “{letters}”.");
+        problem.hints = vec!["Write it in Latin, Greek or Cyrillic letters, or with signs common in print.".into()];
+    }
     let own = diagnostic.span.id().is_some_and(|id| world.is_main(id)).then(|| world.range(diagnostic.span)).flatten();
     let called = diagnostic.trace.iter().filter(|point| point.span.id().is_some_and(|id| world.is_main(id)));
     let offset = own.or_else(|| called.filter_map(|point| world.range(point.span)).next()).map(|range| range.start);

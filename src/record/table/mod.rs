@@ -284,10 +284,15 @@ impl Table<'_> {
             }
             None => ("The raw data file has no rows below its header.".into(), Place::new(self.file, 0, 0)),
         };
-        self.complaints.add_at(Problem::new(Code::DesignIncomplete, message), place);
+        let problem = Problem::new(Code::DesignIncomplete, message).hint("Check the file and the text under `rows:`.");
+        self.complaints.add_at(problem, place);
     }
 
-    fn complain(&mut self, complaint: Complaint) {
+    fn complain(&mut self, mut complaint: Complaint) {
+        if complaint.hints.is_empty() {
+            let text = "Correct it from the instrument's own log; a reading that does not exist is left out with rule and reason.";
+            complaint.hints.push(crate::diagnostic::Hint { text: text.into(), place: None });
+        }
         if self.complaints.list.len() < MOST_COMPLAINTS {
             return self.complaints.add(complaint);
         }

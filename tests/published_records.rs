@@ -1,0 +1,89 @@
+//! Published worked examples written as ordinary records, compiled end to end.
+//!
+//! Each folder under `tests/published/` with a `laboratory.md` is a laboratory folder; its `expected.json` lists what
+//! the source prints, with source and tolerance.
+
+#![allow(clippy::disallowed_methods)]
+
+use libripens::block::Engine;
+use libripens::graph::{coverage, sensitivities, standard_uncertainty};
+use libripens::intake::MemoryIntake;
+use serde_json::Value;
+use std::collections::BTreeMap;
+use std::fs;
+use std::path::{Path, PathBuf};
+
+fn folders() -> Vec<PathBuf> {
+    let root = Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/published");
+    let mut found: Vec<PathBuf> = fs::read_dir(root)
+        .expect("published")
+        .map(|entry| entry.expect("entry").path())
+        .filter(|path| path.join("laboratory.md").is_file() && path.join("expected.json").is_file())
+        .collect();
+    found.sort();
+    found
+}
+
+fn files_of(folder: &Path) -> BTreeMap<String, Vec<u8>> {
+    let entries = fs::read_dir(folder).expect("folder").map(|entry| entry.expect("entry").path());
+    entries
+        .filter(|path| path.is_file())
+        .map(|path| (path.file_name().expect("name").to_string_lossy().into_owned(), fs::read(&path).expect("file")))
+        .collect()
+}
+
+fn found(engine: &Engine, name: &str, quantity: &str) -> f64 {
+    let graph = engine.graph();
+    let Some(id) = graph.find(name) else { return f64::NAN };
+    let derivatives = sensitivities(&graph, id);
+    match quantity {
+        "value" => graph.number(id),
+        "standard_uncertainty" => standard_uncertainty(&graph, &derivatives),
+        "expanded_uncertainty" => coverage(&graph, &derivatives, engine.laboratory.settings).expanded_uncertainty,
+        "coverage_factor" => coverage(&graph, &derivatives, engine.laboratory.settings).factor,
+        "degrees_of_freedom" => coverage(&graph, &derivatives, engine.laboratory.settings).effective_degrees_of_freedom,
+        other => panic!("unknown quantity {other}"),
+    }
+}
+
+#[test]
+fn published_examples_compile_to_their_printed_digits() {
+    let mut faults = Vec::new();
+    let mut checks = 0;
+    for folder in folders() {
+        let intake = MemoryIntake { files: files_of(&folder), ..MemoryIntake::default() };
+        let engine = libripens::reduce(&intake, None).expect("readable");
+        let complaints = engine.complaints();
+        let name = folder.file_name().expect("name").to_string_lossy().into_owned();
+        if complaints.has_faults() {
+            let printed = libripens::diagnostic::print_complaints(
+                &complaints,
+                &engine.sources(),
+                libripens::diagnostic::Look::Plain,
+            );
+            faults.push(format!("{name}:\n{printed}"));
+            continue;
+        }
+        let expected: Value =
+            serde_json::from_slice(&fs::read(folder.join("expected.json")).expect("file")).expect("JSON");
+        for one in expected.as_array().expect("a list") {
+            let text = |key: &str| one[key].as_str().unwrap_or_default();
+            let ours = found(&engine, text("name"), text("quantity"));
+            let (value, tolerance) =
+                (one["value"].as_f64().expect("value"), one["tolerance"].as_f64().expect("tolerance"));
+            checks += 1;
+            // A hair for the binary form of the decimal tolerance.
+            if !((ours - value).abs() <= tolerance * (1.0 + 1e-9)) {
+                let source = text("source");
+                faults.push(format!(
+                    "{name}, {} {}: printed {}, found {ours} ({source})",
+                    text("name"),
+                    text("quantity"),
+                    text("printed")
+                ));
+            }
+        }
+    }
+    assert!(faults.is_empty(), "{}", faults.join("\n"));
+    assert!(checks >= 10, "only {checks} checks were made");
+}
