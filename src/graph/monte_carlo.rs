@@ -12,7 +12,7 @@ use super::evaluate::evaluate_displaced;
 use super::interval::{Distributed, distributed};
 use super::node::*;
 use super::sensitivity::{Sensitivities, linear_response};
-use super::tape::{CHUNK, Register, Tape};
+use super::tape::{CHUNK, Register, Row, Tape};
 use super::value::Value;
 use crate::diagnostic::Problem;
 use crate::numeric::linear::covariance_factor;
@@ -43,13 +43,15 @@ impl Trials {
 /// When a covariance on the way is impossible.
 pub fn propagate_distributions(graph: &Graph, measurands: &[NodeId], trials: usize) -> Result<Trials, Problem> {
     let plan = Plan::new(graph, measurands)?;
-    let blocks: Vec<Vec<Vec<f64>>> = (0..trials.div_ceil(BLOCK))
+    let mut values = vec![vec![0.0; trials]; measurands.len()];
+    let mut blocks: Vec<Vec<&mut [f64]>> = (0..trials.div_ceil(BLOCK)).map(|_| Vec::new()).collect();
+    for measurand in &mut values {
+        measurand.chunks_mut(BLOCK).zip(&mut blocks).for_each(|(chunk, block)| block.push(chunk));
+    }
+    blocks
         .into_par_iter()
-        .map(|block| plan.block(block as u64, BLOCK.min(trials - block * BLOCK)))
-        .collect();
-    let values = (0..measurands.len())
-        .map(|index| blocks.iter().flat_map(|block| block[index].iter().copied()).collect())
-        .collect();
+        .enumerate()
+        .for_each_init(|| plan.memory(), |rows, (block, mut values)| plan.block(block as u64, rows, &mut values));
     Ok(Trials { values })
 }
 
@@ -79,7 +81,6 @@ pub fn linearity_departure(graph: &Graph, boundary: NodeId) -> Result<f64, Probl
 /// What is drawn and evaluated in every trial.
 struct Plan<'g> {
     graph: &'g Graph,
-    measurands: usize,
     tape: Tape,
     /// Inputs drawn, by number, each with its row.
     draws: Vec<(u32, Register)>,
@@ -114,30 +115,37 @@ impl<'g> Plan<'g> {
             }
         }
         tape.ask(measurands);
-        Ok(Self { graph, measurands: measurands.len(), tape, draws, noise, noise_rows })
+        tape.settle();
+        Ok(Self { graph, tape, draws, noise, noise_rows })
     }
 
-    /// The measurands in the trials of one block.
-    fn block(&self, block: u64, length: usize) -> Vec<Vec<f64>> {
-        let mut rows = vec![[0.0; CHUNK]; self.tape.registers()];
-        let mut streams: Vec<(Draw<'_>, Register)> =
-            self.draws.iter().map(|(number, register)| (Draw::new(self.graph, *number, block), *register)).collect();
+    /// The working memory of one thread.
+    fn memory(&self) -> Vec<Row> {
+        vec![[0.0; CHUNK]; self.tape.rows()]
+    }
+
+    /// The measurands in the trials of one block, written where they belong.
+    fn block(&self, block: u64, rows: &mut [Row], values: &mut [&mut [f64]]) {
+        let length = values.first().map_or(0, |values| values.len());
+        let mut streams: Vec<(Draw<'_>, usize)> = self
+            .draws
+            .iter()
+            .map(|(number, register)| (Draw::new(self.graph, *number, block), self.tape.row_of(*register)))
+            .collect();
         let noise = self.noise.draw(self.graph, block, length);
-        let mut values = vec![vec![0.0; length]; self.measurands];
         for start in (0..length).step_by(CHUNK) {
             let count = CHUNK.min(length - start);
-            for (draw, register) in &mut streams {
-                draw.fill(&mut rows[*register][..count]);
+            for (draw, row) in &mut streams {
+                draw.fill(&mut rows[*row][..count]);
             }
             for (register, row) in self.noise_rows.iter().zip(&noise) {
-                rows[*register][..count].copy_from_slice(&row[start..start + count]);
+                rows[self.tape.row_of(*register)][..count].copy_from_slice(&row[start..start + count]);
             }
-            self.tape.run(&mut rows, count);
+            self.tape.run(rows, count);
             for (measurand, into) in values.iter_mut().enumerate() {
-                self.tape.read(measurand, &rows, &mut into[start..start + count]);
+                self.tape.read(measurand, rows, &mut into[start..start + count]);
             }
         }
-        values
     }
 }
 

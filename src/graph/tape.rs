@@ -12,6 +12,9 @@ use std::collections::BTreeMap;
 /// Trials worked on at a time.
 pub(super) const CHUNK: usize = 256;
 
+/// A row of the working memory.
+pub(super) type Row = [f64; CHUNK];
+
 /// A row of trials in the working memory.
 pub(super) type Register = usize;
 
@@ -49,6 +52,44 @@ enum Step {
         op: Op,
         a: Register,
     },
+}
+
+impl Step {
+    fn writes(&self) -> Register {
+        match self {
+            Step::Weighted { to, .. }
+            | Step::Product { to, .. }
+            | Step::Ratio { to, .. }
+            | Step::Reciprocal { to, .. }
+            | Step::Square { to, .. }
+            | Step::Single { to, .. } => *to,
+        }
+    }
+
+    fn reads(&self, mut visit: impl FnMut(Register)) {
+        match self {
+            Step::Weighted { terms, .. } => terms.iter().for_each(|(register, _)| visit(*register)),
+            Step::Product { a, b, .. } | Step::Ratio { a, b, .. } => {
+                visit(*a);
+                visit(*b);
+            }
+            Step::Reciprocal { b: a, .. } | Step::Square { a, .. } | Step::Single { a, .. } => visit(*a),
+        }
+    }
+
+    fn move_to(&mut self, places: &[usize]) {
+        let shift = |register: &mut Register| *register = places[*register];
+        match self {
+            Step::Weighted { to, terms, .. } => {
+                shift(to);
+                terms.iter_mut().for_each(|(register, _)| shift(register));
+            }
+            Step::Product { to, a, b } | Step::Ratio { to, a, b } => [to, a, b].into_iter().for_each(shift),
+            Step::Reciprocal { to, b: a, .. } | Step::Square { to, a } | Step::Single { to, a, .. } => {
+                [to, a].into_iter().for_each(shift);
+            }
+        }
+    }
 }
 
 /// A scalar as a weighted sum of rows, not yet worked out.
@@ -95,6 +136,9 @@ const LONGEST_SUM: usize = 8;
 pub(super) struct Tape {
     steps: Vec<Step>,
     registers: usize,
+    /// Row of each register, once settled.
+    places: Vec<usize>,
+    rows: usize,
     forms: BTreeMap<NodeId, Form>,
     /// Registers of the measurands, or the number of one that nothing uncertain reaches.
     outputs: Vec<Result<Register, f64>>,
@@ -108,8 +152,53 @@ impl Tape {
     }
 
     /// How many rows the working memory needs.
-    pub fn registers(&self) -> usize {
-        self.registers
+    pub fn rows(&self) -> usize {
+        self.rows
+    }
+
+    /// The row of the working memory that a reserved register has from the beginning.
+    pub fn row_of(&self, register: Register) -> usize {
+        self.places.get(register).copied().unwrap_or(0)
+    }
+
+    /// Gives every register a row; a row is used again when nothing reads it any more.
+    pub fn settle(&mut self) {
+        let kept = self.outputs.iter().flatten().copied();
+        let mut last_use = vec![0; self.registers];
+        for (index, step) in self.steps.iter().enumerate() {
+            step.reads(|register| last_use[register] = index + 1);
+        }
+        kept.for_each(|register| last_use[register] = usize::MAX);
+        let written: std::collections::BTreeSet<Register> = self.steps.iter().map(Step::writes).collect();
+        self.places = vec![usize::MAX; self.registers];
+        let mut free = Vec::new();
+        let mut rows = 0;
+        let mut take = |free: &mut Vec<usize>| {
+            free.pop().unwrap_or_else(|| {
+                rows += 1;
+                rows - 1
+            })
+        };
+        for register in (0..self.registers).filter(|register| !written.contains(register)) {
+            self.places[register] = take(&mut free);
+        }
+        for index in 0..self.steps.len() {
+            let to = self.steps[index].writes();
+            self.places[to] = take(&mut free);
+            self.steps[index].reads(|register| {
+                // A register read twice by one step is freed once.
+                if last_use[register] == index + 1 {
+                    last_use[register] = 0;
+                    free.push(self.places[register]);
+                }
+            });
+        }
+        let places = &self.places;
+        self.steps.iter_mut().for_each(|step| step.move_to(places));
+        for register in self.outputs.iter_mut().flatten() {
+            *register = places[*register];
+        }
+        self.rows = rows;
     }
 
     /// The scalar `id` is the row `register`.
@@ -239,21 +328,15 @@ impl Tape {
     }
 
     /// Runs the tape over the first `length` trials of every row.
-    pub fn run(&self, rows: &mut [[f64; CHUNK]], length: usize) {
-        for step in &self.steps {
-            match step {
-                Step::Weighted { to, constant, terms } => weighted(rows, *to, *constant, terms),
-                Step::Product { to, a, b } => binary(rows, *to, *a, *b, |a, b| a * b),
-                Step::Ratio { to, a, b } => binary(rows, *to, *a, *b, |a, b| a / b),
-                Step::Reciprocal { to, number, b } => unary(rows, *to, *b, CHUNK, |b| number / b),
-                Step::Square { to, a } => unary(rows, *to, *a, CHUNK, |a| a * a),
-                Step::Single { to, op, a } => unary(rows, *to, *a, length, |a| apply_scalar(op, a)),
-            }
-        }
+    ///
+    /// The same loops are compiled for wider registers too and chosen by what the processor has; each operation is
+    /// rounded by itself in all of them, so the bits are the same.
+    pub fn run(&self, rows: &mut [Row], length: usize) {
+        crate::numeric::wide::widest!(run_steps(&self.steps, rows, length));
     }
 
     /// Copies a measurand's trials out of the working memory.
-    pub fn read(&self, measurand: usize, rows: &[[f64; CHUNK]], into: &mut [f64]) {
+    pub fn read(&self, measurand: usize, rows: &[Row], into: &mut [f64]) {
         match self.outputs.get(measurand) {
             Some(Ok(register)) => into.copy_from_slice(&rows[*register][..into.len()]),
             Some(Err(number)) => into.fill(*number),
@@ -262,43 +345,55 @@ impl Tape {
     }
 }
 
-/// Rows are written in order of register, each from rows before it, so that the borrow can be split.
-fn binary(rows: &mut [[f64; CHUNK]], to: Register, a: Register, b: Register, f: impl Fn(f64, f64) -> f64) {
-    let (before, rest) = rows.split_at_mut(to);
-    let (a, b, to) = (&before[a], &before[b], &mut rest[0]);
-    for index in 0..CHUNK {
-        to[index] = f(a[index], b[index]);
+#[inline(always)]
+fn run_steps(steps: &[Step], rows: &mut [Row], length: usize) {
+    for step in steps {
+        match step {
+            Step::Weighted { to, constant, terms } => weighted(rows, *to, *constant, terms),
+            Step::Product { to, a, b } => binary(rows, *to, *a, *b, |a, b| a * b),
+            Step::Ratio { to, a, b } => binary(rows, *to, *a, *b, |a, b| a / b),
+            Step::Reciprocal { to, number, b } => unary(rows, *to, *b, CHUNK, |b| number / b),
+            Step::Square { to, a } => unary(rows, *to, *a, CHUNK, |a| a * a),
+            Step::Single { to, op, a } => unary(rows, *to, *a, length, |a| apply_scalar(op, a)),
+        }
     }
 }
 
-fn unary(rows: &mut [[f64; CHUNK]], to: Register, a: Register, length: usize, f: impl Fn(f64) -> f64) {
-    let (before, rest) = rows.split_at_mut(to);
-    let (a, to) = (&before[a], &mut rest[0]);
-    for index in 0..length {
-        to[index] = f(a[index]);
+#[inline(always)]
+fn binary(rows: &mut [Row], to: usize, a: usize, b: usize, f: impl Fn(f64, f64) -> f64) {
+    // The rows of one step are distinct: a square is a step of its own, and a row is taken before any is freed.
+    if let Ok([to, a, b]) = rows.get_disjoint_mut([to, a, b]) {
+        for index in 0..CHUNK {
+            to[index] = f(a[index], b[index]);
+        }
     }
 }
 
-fn weighted(rows: &mut [[f64; CHUNK]], to: Register, constant: f64, terms: &[(Register, f64)]) {
-    let (before, rest) = rows.split_at_mut(to);
-    let to = &mut rest[0];
-    match terms {
-        [(a, v)] => {
-            let a = &before[*a];
-            (0..CHUNK).for_each(|index| to[index] = constant + v * a[index]);
+#[inline(always)]
+fn unary(rows: &mut [Row], to: usize, a: usize, length: usize, f: impl Fn(f64) -> f64) {
+    if let Ok([to, a]) = rows.get_disjoint_mut([to, a]) {
+        for (to, a) in to[..length].iter_mut().zip(&a[..length]) {
+            *to = f(*a);
         }
-        [(a, v), (b, w)] => {
-            let (a, b) = (&before[*a], &before[*b]);
-            (0..CHUNK).for_each(|index| to[index] = constant + v * a[index] + w * b[index]);
+    }
+}
+
+#[inline(always)]
+fn weighted(rows: &mut [Row], to: usize, constant: f64, terms: &[(Register, f64)]) {
+    let Some((&(first, weight), others)) = terms.split_first() else { return rows[to].fill(constant) };
+    if let ([(second, other)], Ok([to, a, b])) = (others, rows.get_disjoint_mut([to, first, others.first().map_or(to, |(row, _)| *row)])) {
+        let _ = second;
+        for index in 0..CHUNK {
+            to[index] = constant + weight * a[index] + other * b[index];
         }
-        [(a, v), (b, w), others @ ..] => {
-            let (a, b) = (&before[*a], &before[*b]);
-            (0..CHUNK).for_each(|index| to[index] = constant + v * a[index] + w * b[index]);
-            for (c, x) in others {
-                let c = &before[*c];
-                (0..CHUNK).for_each(|index| to[index] += x * c[index]);
+        return;
+    }
+    unary(rows, to, first, CHUNK, |a| constant + weight * a);
+    for &(row, weight) in others {
+        if let Ok([to, a]) = rows.get_disjoint_mut([to, row]) {
+            for index in 0..CHUNK {
+                to[index] += weight * a[index];
             }
         }
-        [] => to.fill(constant),
     }
 }

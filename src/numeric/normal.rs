@@ -20,6 +20,29 @@ pub fn normal_quantile(p: f64) -> f64 {
     if p < 0.5 { -quantile_of_halves(0.5 - p, p) } else { quantile_of_halves(p - 0.5, 1.0 - p) }
 }
 
+/// [`normal_quantile`] of every number: the centre for all at once, the tails one by one after it.
+pub fn quantiles_in_place(numbers: &mut [f64]) {
+    super::wide::widest!(fill_quantiles(numbers));
+}
+
+#[inline(always)]
+fn fill_quantiles(numbers: &mut [f64]) {
+    let mut centres = [0.0; 64];
+    for part in numbers.chunks_mut(64) {
+        let centres = &mut centres[..part.len()];
+        for (centre, p) in centres.iter_mut().zip(part.iter()) {
+            // Below one half the quantile is that of 1 - p with the other sign.
+            let half = if *p < 0.5 { 0.5 - p } else { p - 0.5 };
+            let size = half * quotient(&CENTRE, 0.180625 - half * half);
+            *centre = if *p < 0.5 { -size } else { size };
+        }
+        for (p, centre) in part.iter_mut().zip(centres.iter()) {
+            let half = if *p < 0.5 { 0.5 - *p } else { *p - 0.5 };
+            *p = if half <= 0.425 { *centre } else { normal_quantile(*p) };
+        }
+    }
+}
+
 /// A polynomial divided by another, highest power first.
 type Quotient = [[f64; 8]; 2];
 

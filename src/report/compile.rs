@@ -34,9 +34,23 @@ pub fn examine_reports(engine: &Engine) {
     }
 }
 
+/// What a report record becomes before the typesetter: pages in Typst with all they need, and the dossier.
+pub struct Manuscript {
+    pub document: TypstDocument,
+    pub options: PdfOptions,
+    pub dossier: Dossier,
+}
+
 /// Makes the report of the record at `path` as a draft. Complaints are with the engine; where nothing can be made of
 /// the record there is no report.
 pub fn make_report(engine: &Engine, path: &str) -> Option<Report> {
+    let manuscript = write_report(engine, path)?;
+    let (pdf, pages) = print(engine, &manuscript)?;
+    Some(Report { pdf, pages, dossier: manuscript.dossier })
+}
+
+/// Writes the report of the record at `path` out as Typst, up to the door of the typesetter.
+pub fn write_report(engine: &Engine, path: &str) -> Option<Manuscript> {
     let mut writing = Writing::new(engine, path)?;
     let body = writing.body();
     let templates = templates(engine)?;
@@ -51,18 +65,17 @@ pub fn make_report(engine: &Engine, path: &str) -> Option<Report> {
     files.extend(writing.images.iter().map(|(path, bytes)| (path.clone(), bytes.clone())));
     let document =
         TypstDocument { source: rendered.source, files, attachments: dossier.attachments(), spans: rendered.spans };
-    let (pdf, pages) = print(engine, &document, &dossier, &writing.front)?;
-    Some(Report { pdf, pages, dossier })
+    let timestamp = writing.front.date.and_hms_opt(0, 0, 0)?.and_utc();
+    let options = PdfOptions { identifier: dossier.seal.clone(), timestamp };
+    Some(Manuscript { document, options, dossier })
 }
 
-fn print(engine: &Engine, document: &TypstDocument, dossier: &Dossier, front: &Front) -> Option<(Vec<u8>, usize)> {
+fn print(engine: &Engine, manuscript: &Manuscript) -> Option<(Vec<u8>, usize)> {
     let refuse = |faults: Vec<super::typeset::TypesetFault>| {
         engine.complain_all(Complaints { list: faults.into_iter().map(|fault| fault.complaint()).collect() });
     };
-    let typeset = typeset(document).map_err(refuse).ok()?;
-    let timestamp = front.date.and_hms_opt(0, 0, 0)?.and_utc();
-    let options = PdfOptions { identifier: dossier.seal.clone(), timestamp };
-    let pdf = typeset.pdf(&options).map_err(refuse).ok()?;
+    let typeset = typeset(&manuscript.document).map_err(refuse).ok()?;
+    let pdf = typeset.pdf(&manuscript.options).map_err(refuse).ok()?;
     Some((pdf, typeset.page_count()))
 }
 

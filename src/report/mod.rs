@@ -23,5 +23,5 @@ pub mod template;
 pub mod typeset;
 mod world;
 
-pub use compile::{Report, examine_reports, make_report, report_records};
+pub use compile::{Manuscript, Report, examine_reports, make_report, report_records, write_report};
 pub use markup::Markup;

@@ -1,5 +1,6 @@
 //! Ranges, ticks and their labels.
 
+use crate::numeric::elementary::log10;
 use chrono::{DateTime, Utc};
 
 /// A tick and what stands beside it.
@@ -38,7 +39,7 @@ fn power_of_ten(exponent: i32) -> f64 {
 /// Steps of 1, 2 or 5 times a power of ten, about `wanted` of them over the range.
 pub fn number_ticks(range: (f64, f64), wanted: f64, marker: char) -> Ticks {
     let rough = (range.1 - range.0) / wanted;
-    let mut exponent = libm::floor(libm::log10(rough)) as i32;
+    let mut exponent = libm::floor(log10(rough)) as i32;
     let lead = rough / power_of_ten(exponent);
     let mut unit = match lead {
         lead if lead <= 1.0 => 1,
