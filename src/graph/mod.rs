@@ -10,6 +10,7 @@
 //! | `evaluate`      | the graph with some inputs displaced                                     |
 //! | `sensitivity`   | one reverse sweep per measurand                                          |
 //! | `uncertainty`   | standard uncertainty, covariance, effective degrees of freedom, coverage |
+//! | `adaptive`      | trials until the results are stable                                       |
 //! | `tape`          | scalars as operations on rows of trials                                   |
 //! | `budget`        | the uncertainty budget                                                   |
 //! | `trail`         | from a result down to readings                                           |
@@ -18,6 +19,7 @@
 //!
 //! Values are in coherent SI units. A sum of unlike dimensions, kinds, states or unit bases cannot be built.
 
+mod adaptive;
 mod budget;
 mod build;
 mod estimator;
@@ -32,13 +34,14 @@ mod trail;
 mod uncertainty;
 mod value;
 
+pub use adaptive::{Adaptive, propagate_until_stable};
 pub use budget::{Budget, BudgetLine, budget};
 pub use build::{Assumption, Builder, InputDraft, ScopeGuard};
 pub use estimator::{Decision, Estimate, Estimator, EstimatorId, EstimatorNode};
 pub use evaluate::evaluate_displaced;
 pub use handle::Quantity;
 pub use interval::{Distributed, Histogram, Validation, distributed, histogram, numerical_tolerance};
-pub use monte_carlo::{Trials, linearity_departure, propagate_distributions};
+pub use monte_carlo::{Sampler, Trials, linearity_departure, propagate_distributions};
 pub use node::{
     Basis, Distribution, Evaluation, Graph, Input, MethodInfo, Name, Node, NodeId, Op, Origin, ReadingColumn, State,
 };

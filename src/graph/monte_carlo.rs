@@ -21,7 +21,7 @@ use rayon::prelude::*;
 use std::collections::{BTreeMap, BTreeSet};
 
 /// Trials in one block; sums are taken block by block in order, so the bits do not depend on threads.
-const BLOCK: usize = 1024;
+pub const BLOCK: usize = 1024;
 
 /// A run of trials over any number of measurands.
 #[derive(Debug, Clone)]
@@ -42,17 +42,37 @@ impl Trials {
 /// # Errors
 /// When a covariance on the way is impossible.
 pub fn propagate_distributions(graph: &Graph, measurands: &[NodeId], trials: usize) -> Result<Trials, Problem> {
-    let plan = Plan::new(graph, measurands)?;
-    let mut values = vec![vec![0.0; trials]; measurands.len()];
-    let mut blocks: Vec<Vec<&mut [f64]>> = (0..trials.div_ceil(BLOCK)).map(|_| Vec::new()).collect();
-    for measurand in &mut values {
-        measurand.chunks_mut(BLOCK).zip(&mut blocks).for_each(|(chunk, block)| block.push(chunk));
+    Ok(Sampler::new(graph, measurands)?.trials(0, trials))
+}
+
+/// Draws joint values of measurands, any part of the sequence of trials at a time.
+pub struct Sampler<'g> {
+    plan: Plan<'g>,
+    measurands: usize,
+}
+
+impl<'g> Sampler<'g> {
+    /// Prepares the draws of these measurands.
+    ///
+    /// # Errors
+    /// When a covariance on the way is impossible.
+    pub fn new(graph: &'g Graph, measurands: &[NodeId]) -> Result<Self, Problem> {
+        Ok(Self { plan: Plan::new(graph, measurands)?, measurands: measurands.len() })
     }
-    blocks
-        .into_par_iter()
-        .enumerate()
-        .for_each_init(|| plan.memory(), |rows, (block, mut values)| plan.block(block as u64, rows, &mut values));
-    Ok(Trials { values })
+
+    /// The trials from block `first` on, a block being [`BLOCK`] trials.
+    pub fn trials(&self, first: u64, trials: usize) -> Trials {
+        let mut values = vec![vec![0.0; trials]; self.measurands];
+        let mut blocks: Vec<Vec<&mut [f64]>> = (0..trials.div_ceil(BLOCK)).map(|_| Vec::new()).collect();
+        for measurand in &mut values {
+            measurand.chunks_mut(BLOCK).zip(&mut blocks).for_each(|(chunk, block)| block.push(chunk));
+        }
+        blocks.into_par_iter().enumerate().for_each_init(
+            || self.plan.memory(),
+            |rows, (block, mut values)| self.plan.block(first + block as u64, rows, &mut values),
+        );
+        Trials { values }
+    }
 }
 
 /// How far the linear response of `boundary` departs from the graph evaluated anew, when every scalar that shapes

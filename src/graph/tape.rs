@@ -381,7 +381,9 @@ fn unary(rows: &mut [Row], to: usize, a: usize, length: usize, f: impl Fn(f64) -
 #[inline(always)]
 fn weighted(rows: &mut [Row], to: usize, constant: f64, terms: &[(Register, f64)]) {
     let Some((&(first, weight), others)) = terms.split_first() else { return rows[to].fill(constant) };
-    if let ([(second, other)], Ok([to, a, b])) = (others, rows.get_disjoint_mut([to, first, others.first().map_or(to, |(row, _)| *row)])) {
+    if let ([(second, other)], Ok([to, a, b])) =
+        (others, rows.get_disjoint_mut([to, first, others.first().map_or(to, |(row, _)| *row)]))
+    {
         let _ = second;
         for index in 0..CHUNK {
             to[index] = constant + weight * a[index] + other * b[index];
