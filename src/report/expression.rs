@@ -127,6 +127,11 @@ static FUNCTIONS: &[Function] = &[
     },
     Function { name: "series", usage: "series(W1)", answer: series },
     Function {
+        name: "shares",
+        usage: "shares(W1.mass)",
+        answer: |engine, asked| block(parts::shares::shares_chart(engine, asked.quantity(engine)?)),
+    },
+    Function {
         name: "traceability",
         usage: "traceability()",
         answer: |engine, _| block(parts::traceability::traceability_table(engine)),

@@ -40,11 +40,25 @@ impl Comparison {
         Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation }))
     }
 
-    /// The verdict in a sentence.
-    pub fn verdict(&self) -> String {
+    /// The verdict: which interval is valid, and why.
+    pub fn verdict(&self, style: Style) -> String {
+        let unit = unit_of(self);
+        let ends = |(low, high): (f64, f64)| {
+            let decimals = unit.difference_decimal_from_si(self.found.standard_uncertainty);
+            let decimals = decimals.and_then(|u| u.rounded_to_digits(2).leading_power()).map_or(4, |lead| 1 - lead);
+            let estimate = self.figure.value;
+            let text = |value: f64| fixed(style, unit.difference_from_si(value - estimate), decimals.max(0));
+            format!("[{}, {}] {}", text(low), text(high), style.unit(&unit))
+        };
         match self.validation.is_valid() {
-            true => "Both ends agree within the numerical tolerance: first-order propagation is validated, and its interval is stated.".into(),
-            false => "An end departs by more than the numerical tolerance: first-order propagation is not validated, and the interval found by the trials is the valid one.".into(),
+            true => format!(
+                "Both ends agree within the numerical tolerance, so first-order propagation is validated; the interval stated is {} about the estimate.",
+                ends(self.validation.first_order)
+            ),
+            false => format!(
+                "An end departs by more than the numerical tolerance, so first-order propagation is not validated; the valid interval is that of the trials, {} about the first-order estimate.",
+                ends(self.found.symmetric)
+            ),
         }
     }
 }
@@ -65,7 +79,7 @@ pub fn distribution_part(engine: &Engine, result: NodeId) -> Result<Markup, Prob
     );
     let mut made = table(engine, &comparison);
     made.push(&figure(&chart(engine, &comparison), 150.0, 62.0)).push_code("\n\n");
-    made.push_code("#note[").push_text(&comparison.verdict()).push_code("]\n\n");
+    made.push_code("#note[").push_text(&comparison.verdict(engine.laboratory.style)).push_code("]\n\n");
     Ok(made)
 }
 

@@ -8,6 +8,7 @@ pub mod distribution;
 pub mod excluded;
 pub mod readings;
 pub mod results;
+pub mod shares;
 pub mod statements;
 pub mod traceability;
 pub mod trail;
