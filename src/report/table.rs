@@ -3,6 +3,9 @@
 use super::literal::typst_string;
 use super::markup::Markup;
 
+/// Tables with no more rows than this stay on one page.
+const LONGEST_WHOLE: usize = 12;
+
 /// One cell.
 #[derive(Debug, Clone, PartialEq)]
 pub enum Cell {
@@ -89,7 +92,8 @@ impl Table {
             write_row(row, &mut made);
             made.push_code(", ");
         }
-        made.push_code(&format!(")), caption: {});\n\n", typst_string(&self.caption)));
+        let breakable = self.rows.len() > LONGEST_WHOLE;
+        made.push_code(&format!(")), caption: {}, breakable: {breakable});\n\n", typst_string(&self.caption)));
         made
     }
 }
