@@ -59,7 +59,7 @@ fn holds(part: &str, made: &str) {
 
 /// A text as the cell of a table.
 fn cell(text: &str) -> String {
-    text.replace('|', "\\|").replace('<', "&lt;").replace('*', "\\*").replace('_', "\\_")
+    text.replace('|', "\\|").replace('<', "&lt;")
 }
 
 fn program(arguments: &[&str]) -> String {
