@@ -84,11 +84,11 @@ fn combine<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
     };
     let combined = combination::weighted(&results, &weights)?;
     let listed = paths.iter().map(|path| path.text.as_str()).collect::<Vec<_>>().join(", ");
-    name(engine, block, combined, &listed);
-    conventional(engine, block, combined)
+    let named = name(engine, block, combined, &listed);
+    conventional(engine, block, named)
 }
 
-fn name<'e>(engine: &'e Engine<'e>, block: &Block, combined: Quantity<'e>, listed: &str) {
+fn name<'e>(engine: &'e Engine<'e>, block: &Block, combined: Quantity<'e>, listed: &str) -> Quantity<'e> {
     let subject = subject(block);
     let of_item = block.fields().text("item").and_then(|item| engine.blocks().get(&item.text)).map(Block::label);
     let (path, symbol, words, shown) = match combined.kind() {
@@ -99,7 +99,7 @@ fn name<'e>(engine: &'e Engine<'e>, block: &Block, combined: Quantity<'e>, liste
     };
     let _scope = engine.builder.scope(block.name(), Some(&combination::METHOD.info));
     let label = of_item.map_or_else(|| format!("{words}, mean of {listed}"), |label| format!("{words} of {label}"));
-    combined.alias().result(path, &symbol, &label, &unit(shown));
+    combined.alias().result(path, &symbol, &label, &unit(shown))
 }
 
 /// The conventional mass of a combined mass, with the density of the item.
