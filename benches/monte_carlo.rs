@@ -141,6 +141,7 @@ fn numpy(case: &str) -> Option<f64> {
 
 fn main() {
     let trials = 1 << 20;
+    #[allow(clippy::type_complexity)]
     let cases: [(&str, fn(&Builder) -> NodeId, fn(usize) -> f64); 2] = [
         ("mass_calibration", mass_calibration, mass_calibration_loop),
         ("arithmetic", arithmetic_graph, arithmetic_loop),

@@ -168,7 +168,7 @@ impl<'e> Instrument<'e> {
         let label = format!("correction of {}, certificate {}", self.block.label(), calibration.words("certificate"));
         let correction = match calibration.given("correction", difference) {
             Some(given) => engine.given(&given, &path, &format!("c_{name}"), &label, difference)?,
-            None => self.from_table(calibration, indications, &path, &label, used_at)?,
+            None => self.interpolated_correction(calibration, indications, &path, &label, used_at)?,
         };
         let mut corrected = indications.as_kind(Kind::Plain) + correction.as_kind(Kind::Plain);
         let drift_label = format!("change of {} since its calibration", self.block.label());
@@ -185,7 +185,7 @@ impl<'e> Instrument<'e> {
         Some(corrected.as_kind(kind))
     }
 
-    fn from_table(
+    fn interpolated_correction(
         self,
         calibration: Fields<'_>,
         indications: Quantity<'e>,

@@ -79,13 +79,6 @@ fn show(mut message: &'static str, news: &Receiver<&'static str>) {
 }
 
 impl Progress {
-    /// Says what is being done now.
-    pub fn set_message(&self, message: &'static str) {
-        if let Some(working) = &self.working {
-            let _ = working.send(message);
-        }
-    }
-
     /// Takes the sign of life away before anything is printed.
     pub fn finish_and_clear(self) {}
 }

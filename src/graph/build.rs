@@ -169,6 +169,7 @@ impl Builder {
     }
 
     /// A constant with its source; it is named and stands in the trail.
+    #[allow(clippy::too_many_arguments)]
     pub fn constant(
         &self,
         path: &str,

@@ -23,10 +23,10 @@ pub fn evaluate_displaced(
             (Op::Input(_), None) => graph.values[index].clone(),
             (Op::Output(estimator, output), None) => {
                 let node = &graph.estimators[estimator.index()];
-                if !outputs.contains_key(&estimator.0) {
+                if let std::collections::btree_map::Entry::Vacant(e) = outputs.entry(estimator.0) {
                     let columns: Vec<&[f64]> =
                         node.columns.iter().map(|column| values[column.index()].rows()).collect();
-                    outputs.insert(estimator.0, node.rule.estimate(&columns)?.values);
+                    e.insert(node.rule.estimate(&columns)?.values);
                 }
                 Value::Scalar(outputs[&estimator.0].get(*output as usize).copied().unwrap_or(f64::NAN))
             }

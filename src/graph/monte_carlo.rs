@@ -255,8 +255,7 @@ impl Noise {
         graph: &Graph,
         below: impl Iterator<Item = (NodeId, &'a BTreeMap<u32, Vec<f64>>)>,
     ) -> Result<Self, Problem> {
-        let taken: Vec<(NodeId, Vec<(u32, Vec<f64>)>)> =
-            below.map(|(id, inputs)| (id, noisy_columns(graph, inputs))).collect();
+        let taken: Vec<(NodeId, NoisyColumns)> = below.map(|(id, inputs)| (id, noisy_columns(graph, inputs))).collect();
         let kept: Vec<_> = taken
             .into_iter()
             .filter(|(id, columns)| !columns.is_empty() || matches!(graph.node(*id).op, Op::Output(..)))
@@ -314,8 +313,11 @@ fn output_of(graph: &Graph, id: NodeId) -> Option<(u32, usize)> {
     }
 }
 
+/// Weights of noisy columns, by number of the input.
+type NoisyColumns = Vec<(u32, Vec<f64>)>;
+
 /// Weights times standard uncertainty, row by row, of the columns that carry a per-row uncertainty.
-fn noisy_columns(graph: &Graph, inputs: &BTreeMap<u32, Vec<f64>>) -> Vec<(u32, Vec<f64>)> {
+fn noisy_columns(graph: &Graph, inputs: &BTreeMap<u32, Vec<f64>>) -> NoisyColumns {
     inputs
         .iter()
         .filter_map(|(number, weights)| {

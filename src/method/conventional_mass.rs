@@ -73,6 +73,6 @@ fn density<'g>(builder: &'g Builder, value: f64) -> Quantity<'g> {
 
 fn check(make: impl for<'g> Fn(&'g Builder) -> Quantity<'g>) -> f64 {
     let builder = Builder::default();
-    let grams = make(&builder).number() * 1e3;
-    grams
+
+    make(&builder).number() * 1e3
 }

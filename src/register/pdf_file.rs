@@ -68,10 +68,10 @@ fn unreadable(reason: &str) -> Problem {
 
 /// How often the file ends: `startxref`, a number and the end mark on lines of their own.
 fn end_marks(bytes: &[u8]) -> usize {
-    let mut lines = bytes.split(|byte| matches!(byte, b'\n' | b'\r')).filter(|line| !line.is_empty());
+    let lines = bytes.split(|byte| matches!(byte, b'\n' | b'\r')).filter(|line| !line.is_empty());
     let (mut before, mut last): (&[u8], &[u8]) = (b"", b"");
     let mut count = 0;
-    while let Some(line) = lines.next() {
+    for line in lines {
         if line.starts_with(b"%%EOF") && before == b"startxref" && last.iter().all(u8::is_ascii_digit) {
             count += 1;
         }

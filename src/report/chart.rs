@@ -212,7 +212,7 @@ fn placed(x: f64, y: f64, width: f64, align: &str, content: &str) -> String {
 /// A label with its symbols, marked by underscores, in italics.
 fn label(text: &str) -> String {
     let parts: Vec<&str> = text.split('_').collect();
-    if parts.len() % 2 == 0 {
+    if parts.len().is_multiple_of(2) {
         return typst_text(text);
     }
     let set = |(index, part): (usize, &&str)| {

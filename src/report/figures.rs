@@ -21,7 +21,7 @@ impl Figure {
         let name = graph.node(id).name.clone()?;
         let coverage = coverage(&graph, &sensitivities(&graph, id), engine.laboratory.settings);
         let value = graph.number(id);
-        value.is_finite().then(|| Figure {
+        value.is_finite().then_some(Figure {
             value,
             coverage,
             unit: name.unit,

@@ -120,7 +120,7 @@ impl Typeset {
     /// The document as PDF/A-3a and PDF/UA-1; the same bytes whenever and wherever it is made.
     pub fn pdf(&self, options: &PdfOptions) -> Result<Vec<u8>, Vec<TypesetFault>> {
         let standards = PdfStandards::new(&[PdfStandard::A_3a, PdfStandard::Ua_1]);
-        let standards = standards.map_err(|error| vec![plain_fault(&error.message().to_string())])?;
+        let standards = standards.map_err(|error| vec![plain_fault(error.message().as_ref())])?;
         let settings = typst_pdf::PdfOptions {
             ident: Smart::Custom(options.identifier.clone()),
             creator: Smart::Custom(Some("libripens".into())),
@@ -157,6 +157,7 @@ fn timestamp(time: DateTime<Utc>) -> Result<Timestamp, Vec<TypesetFault>> {
 }
 
 /// The source with its attachments declared at the end, where they shift no place, and the files they are read from.
+#[allow(clippy::type_complexity)]
 fn with_attachments(document: &TypstDocument) -> Result<(String, BTreeMap<String, Vec<u8>>), Vec<TypesetFault>> {
     let mut source = document.source.clone();
     let mut files = document.files.clone();

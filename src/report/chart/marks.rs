@@ -52,7 +52,7 @@ fn line(points: &[(f64, f64)], index: usize) -> String {
 }
 
 fn fill(index: usize) -> &'static str {
-    if index % 2 == 0 { "black" } else { "white" }
+    if index.is_multiple_of(2) { "black" } else { "white" }
 }
 
 /// The mark of a series around a point: disc, square, triangle, diamond, cross, upright cross.

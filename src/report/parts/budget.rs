@@ -85,7 +85,7 @@ fn estimate_text(estimate: f64, line: &BudgetLine, style: Style) -> String {
     }
     let spread = line.unit.difference_decimal_from_si(line.standard_uncertainty);
     let decimals = spread.and_then(|u| u.rounded_to_digits(2).leading_power()).map_or(6, |lead| 1 - lead);
-    if decimals < 0 || decimals > 12 {
+    if !(0..=12).contains(&decimals) {
         return plain(style, estimate, &line.unit);
     }
     style.value(estimate, &line.unit, decimals).unwrap_or_else(|problem| problem.message)
@@ -126,7 +126,7 @@ fn gathered(lines: &[&BudgetLine], unit: &Unit, style: Style) -> Vec<Cell> {
 
 fn closing(figure: &Figure, unit: &Unit, style: Style) -> Vec<Vec<Cell>> {
     let coverage = figure.coverage;
-    let mut line = |label: &str, symbol_text: &str, text: String| {
+    let line = |label: &str, symbol_text: &str, text: String| {
         let mut cells = vec![Cell::from(label), Cell::Markup(symbol(symbol_text)), Cell::from(text)];
         cells.extend((0..6).map(|_| Cell::from("")));
         cells
