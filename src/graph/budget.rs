@@ -51,7 +51,7 @@ pub fn budget(graph: &Graph, measurand: NodeId) -> Budget {
 }
 
 fn line(graph: &Graph, derivatives: &Sensitivities, source: Source, term: f64, variance: f64) -> BudgetLine {
-    let contribution = term.max(0.0).sqrt();
+    let contribution = own_contribution(graph, derivatives, source, term);
     let share = if variance > 0.0 { term / variance } else { 0.0 };
     let degrees_of_freedom = source_degrees_of_freedom(graph, source);
     match source {
@@ -81,6 +81,18 @@ fn line(graph: &Graph, derivatives: &Sensitivities, source: Source, term: f64, v
             }
         }
         Source::Estimator(number) => estimator_line(graph, derivatives, number, contribution, share),
+    }
+}
+
+/// |c| u: without what correlation adds or takes away, which stands in the share.
+fn own_contribution(graph: &Graph, derivatives: &Sensitivities, source: Source, term: f64) -> f64 {
+    match source {
+        Source::Input(number) => {
+            let u = graph.inputs[number as usize].distribution.standard_uncertainty();
+            let squares = derivatives.inputs[&number].iter().map(|c| (c * u) * (c * u));
+            crate::numeric::sum::sum(squares).sqrt()
+        }
+        Source::Estimator(_) => term.max(0.0).sqrt(),
     }
 }
 

@@ -153,6 +153,34 @@ impl Builder {
         self.growing.borrow().assumptions.clone()
     }
 
+    /// States correlation coefficients between inputs, by the numbers of their nodes.
+    ///
+    /// # Errors
+    /// When the matrix is impossible, or an input stands in another group already.
+    pub fn correlate(&self, path: &str, nodes: &[NodeId], coefficients: Vec<Vec<f64>>) -> Result<(), Problem> {
+        crate::numeric::linear::covariance_factor(&coefficients)?;
+        let mut growing = self.growing.borrow_mut();
+        let graph = &mut growing.graph;
+        let mut inputs = Vec::new();
+        for node in nodes {
+            match graph.nodes[node.index()].op {
+                Op::Input(number) if graph.values[node.index()].length().is_none() => inputs.push(number),
+                _ => {
+                    let message =
+                        "Only stated single values are correlated by a block; results are by what they share.";
+                    return Err(Problem::new(Code::KindMismatch, message));
+                }
+            }
+        }
+        let taken = |group: &CorrelatedInputs| inputs.iter().any(|input| group.position(*input).is_some());
+        if let Some(group) = graph.correlated.iter().find(|group| taken(group)) {
+            let message = format!("One of the inputs is correlated by {} already.", group.path);
+            return Err(Problem::new(Code::CorrelationImpossible, message));
+        }
+        graph.correlated.push(CorrelatedInputs { path: path.into(), inputs, coefficients });
+        Ok(())
+    }
+
     /// An exact number without dimension.
     pub fn number(&self, value: f64) -> Quantity<'_> {
         self.exact(Value::Scalar(value), Dimension::ONE, Kind::Plain)

@@ -43,7 +43,8 @@ pub use handle::Quantity;
 pub use interval::{Distributed, Histogram, Validation, distributed, histogram, numerical_tolerance};
 pub use monte_carlo::{Sampler, Trials, linearity_departure, propagate_distributions};
 pub use node::{
-    Basis, Distribution, Evaluation, Graph, Input, MethodInfo, Name, Node, NodeId, Op, Origin, ReadingColumn, State,
+    Basis, CorrelatedInputs, Distribution, Evaluation, Graph, Input, MethodInfo, Name, Node, NodeId, Op, Origin,
+    ReadingColumn, State,
 };
 pub use sensitivity::{Sensitivities, Source, sensitivities};
 pub use trail::{TrailStep, TrailSteps, trail};

@@ -16,7 +16,7 @@ use super::tape::{CHUNK, Register, Row, Tape};
 use super::value::Value;
 use crate::diagnostic::Problem;
 use crate::numeric::linear::covariance_factor;
-use crate::numeric::{self, stream::Stream};
+use crate::numeric::{self, sampler, stream::Stream};
 use rayon::prelude::*;
 use std::collections::{BTreeMap, BTreeSet};
 
@@ -104,6 +104,7 @@ struct Plan<'g> {
     tape: Tape,
     /// Inputs drawn, by number, each with its row.
     draws: Vec<(u32, Register)>,
+    groups: Vec<GroupDraw>,
     noise: Noise,
     noise_rows: Vec<Register>,
 }
@@ -136,7 +137,8 @@ impl<'g> Plan<'g> {
         }
         tape.ask(measurands);
         tape.settle();
-        Ok(Self { graph, tape, draws, noise, noise_rows })
+        let (draws, groups) = split_groups(graph, draws)?;
+        Ok(Self { graph, tape, draws, groups, noise, noise_rows })
     }
 
     /// The working memory of one thread.
@@ -152,11 +154,15 @@ impl<'g> Plan<'g> {
             .iter()
             .map(|(number, register)| (Draw::new(self.graph, *number, block), self.tape.row_of(*register)))
             .collect();
+        let mut group_streams: Vec<Stream> = self.groups.iter().map(|group| Stream::new(&group.path, block)).collect();
         let noise = self.noise.draw(self.graph, block, length);
         for start in (0..length).step_by(CHUNK) {
             let count = CHUNK.min(length - start);
             for (draw, row) in &mut streams {
                 draw.fill(&mut rows[*row][..count]);
+            }
+            for (group, stream) in self.groups.iter().zip(&mut group_streams) {
+                group.fill(self.graph, stream, rows, count, |register| self.tape.row_of(register));
             }
             for (register, row) in self.noise_rows.iter().zip(&noise) {
                 rows[self.tape.row_of(*register)][..count].copy_from_slice(&row[start..start + count]);
@@ -164,6 +170,64 @@ impl<'g> Plan<'g> {
             self.tape.run(rows, count);
             for (measurand, into) in values.iter_mut().enumerate() {
                 self.tape.read(measurand, rows, &mut into[start..start + count]);
+            }
+        }
+    }
+}
+
+/// The joint draw of correlated inputs: multivariate normal, or multivariate t with the fewest degrees of freedom
+/// among them (JCGM 101, 6.4.8 and 6.4.9).
+struct GroupDraw {
+    path: String,
+    /// Inputs by number with their rows; those not needed are drawn all the same, so that streams stay in step.
+    members: Vec<(u32, Option<Register>)>,
+    root: Vec<Vec<f64>>,
+    degrees_of_freedom: f64,
+}
+
+/// Inputs drawn singly, by number with their rows.
+type SingleDraws = Vec<(u32, Register)>;
+
+/// Takes correlated inputs out of the single draws.
+fn split_groups(graph: &Graph, draws: SingleDraws) -> Result<(SingleDraws, Vec<GroupDraw>), Problem> {
+    let mut groups = Vec::new();
+    for group in &graph.correlated {
+        let register = |input: &u32| draws.iter().find(|(number, _)| number == input).map(|(_, register)| *register);
+        let members: Vec<(u32, Option<Register>)> =
+            group.inputs.iter().map(|input| (*input, register(input))).collect();
+        if members.iter().any(|(_, register)| register.is_some()) {
+            let freedoms = group.inputs.iter().map(|input| graph.inputs[*input as usize].degrees_of_freedom);
+            groups.push(GroupDraw {
+                path: group.path.clone(),
+                members,
+                root: covariance_factor(&group.coefficients)?,
+                degrees_of_freedom: freedoms.fold(f64::INFINITY, f64::min),
+            });
+        }
+    }
+    let single = |number: &u32| graph.correlated.iter().all(|group| group.position(*number).is_none());
+    Ok((draws.into_iter().filter(|(number, _)| single(number)).collect(), groups))
+}
+
+impl GroupDraw {
+    fn fill(
+        &self,
+        graph: &Graph,
+        stream: &mut Stream,
+        rows: &mut [Row],
+        count: usize,
+        row_of: impl Fn(Register) -> usize,
+    ) {
+        for trial in 0..count {
+            let freedom = self.degrees_of_freedom;
+            let scale = if freedom > 2.0 && freedom.is_finite() { t_scale(freedom, stream) } else { 1.0 };
+            let normals: Vec<f64> = self.root.iter().map(|_| stream.normal()).collect();
+            for ((number, register), root) in self.members.iter().zip(&self.root) {
+                let Some(register) = register else { continue };
+                let input = &graph.inputs[*number as usize];
+                let drawn: f64 = root.iter().zip(&normals).map(|(cell, normal)| cell * normal).sum();
+                let departure = input.distribution.standard_uncertainty() * scale * drawn;
+                rows[row_of(*register)][trial] = graph.number(input.node) + departure;
             }
         }
     }
@@ -236,6 +300,14 @@ fn departure(input: &Input, stream: &mut Stream) -> f64 {
         Distribution::StudentT { scale } => scale * stream.normal(),
         Distribution::Rectangular { half_width } => half_width * (2.0 * stream.uniform() - 1.0),
         Distribution::Triangular { half_width } => half_width * (stream.uniform() + stream.uniform() - 1.0),
+        Distribution::RectangularInexact { half_width, inexactness } => {
+            sampler::rectangular_inexact_limits(-half_width, half_width, inexactness, stream.uniform())
+        }
+        Distribution::Trapezoidal { half_width, beta } => {
+            sampler::trapezoidal(-half_width, half_width, beta, stream.uniform())
+        }
+        Distribution::Exponential { mean } => sampler::exponential(mean, stream.uniform()) - mean,
+        Distribution::Gamma { shape, rate } => sampler::gamma(shape, rate, stream.uniform()) - shape / rate,
         Distribution::Arcsine { half_width } => {
             half_width * numeric::elementary::sin(std::f64::consts::TAU * stream.uniform())
         }

@@ -145,6 +145,25 @@ pub enum Distribution {
     Arcsine {
         half_width: f64,
     },
+    /// Rectangular with limits that are themselves known to ± `inexactness` (JCGM 101, 6.4.3).
+    RectangularInexact {
+        half_width: f64,
+        inexactness: f64,
+    },
+    /// Symmetric trapezoid whose top is `beta` times as wide as its base (6.4.4).
+    Trapezoidal {
+        half_width: f64,
+        beta: f64,
+    },
+    /// Of a quantity that cannot be negative and is known by its mean alone (6.4.10).
+    Exponential {
+        mean: f64,
+    },
+    /// Of a rate known by a number of counts (6.4.11): shape and rate parameters.
+    Gamma {
+        shape: f64,
+        rate: f64,
+    },
 }
 
 impl Distribution {
@@ -157,6 +176,12 @@ impl Distribution {
             Distribution::Rectangular { half_width } => half_width / 3f64.sqrt(),
             Distribution::Triangular { half_width } => half_width / 6f64.sqrt(),
             Distribution::Arcsine { half_width } => half_width / 2f64.sqrt(),
+            Distribution::RectangularInexact { half_width, inexactness } => {
+                (half_width * half_width / 3.0 + inexactness * inexactness / 9.0).sqrt()
+            }
+            Distribution::Trapezoidal { half_width, beta } => half_width * ((1.0 + beta * beta) / 6.0).sqrt(),
+            Distribution::Exponential { mean } => mean,
+            Distribution::Gamma { shape, rate } => shape.sqrt() / rate,
         }
     }
 
@@ -169,6 +194,10 @@ impl Distribution {
             Distribution::Rectangular { .. } => "rectangular",
             Distribution::Triangular { .. } => "triangular",
             Distribution::Arcsine { .. } => "arcsine",
+            Distribution::RectangularInexact { .. } => "rectangular, limits inexact",
+            Distribution::Trapezoidal { .. } => "trapezoidal",
+            Distribution::Exponential { .. } => "exponential",
+            Distribution::Gamma { .. } => "gamma",
         }
     }
 
@@ -301,6 +330,23 @@ pub struct Node {
     pub name: Option<Name>,
 }
 
+/// Inputs with stated correlation coefficients: a certificate's matrix.
+#[derive(Debug, Clone, PartialEq)]
+pub struct CorrelatedInputs {
+    pub path: String,
+    /// Numbers of scalar inputs.
+    pub inputs: Vec<u32>,
+    /// Correlation coefficients, symmetric, ones on the diagonal.
+    pub coefficients: Vec<Vec<f64>>,
+}
+
+impl CorrelatedInputs {
+    /// The position of an input in the group.
+    pub fn position(&self, input: u32) -> Option<usize> {
+        self.inputs.iter().position(|other| *other == input)
+    }
+}
+
 /// The graph of quantities of one laboratory folder, with the value of every node.
 #[derive(Debug, Default)]
 pub struct Graph {
@@ -308,6 +354,7 @@ pub struct Graph {
     pub values: Vec<Value>,
     pub inputs: Vec<Input>,
     pub estimators: Vec<EstimatorNode>,
+    pub correlated: Vec<CorrelatedInputs>,
     /// Named nodes by path.
     pub names: BTreeMap<String, NodeId>,
 }

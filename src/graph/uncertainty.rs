@@ -12,11 +12,15 @@ use crate::numeric;
 
 /// Contribution of each source to a variance (or covariance of two measurands), in the order of [`Source`].
 pub(super) fn variance_terms(graph: &Graph, a: &Sensitivities, b: &Sensitivities) -> Vec<(Source, f64)> {
-    let inputs = a.inputs.iter().filter_map(|(number, left)| {
-        let right = b.inputs.get(number)?;
-        let uncertainty = graph.inputs[*number as usize].distribution.standard_uncertainty();
-        let products: Vec<f64> = left.iter().zip(right).map(|(c, d)| (c * uncertainty) * (d * uncertainty)).collect();
-        Some((Source::Input(*number), numeric::sum::sum(products)))
+    let inputs = a.inputs.iter().map(|(number, left)| {
+        let term = match graph.correlated.iter().find_map(|group| Some((group, group.position(*number)?))) {
+            Some((group, place)) => correlated_term(graph, group, place, left, b),
+            None => b.inputs.get(number).map_or(0.0, |right| {
+                let uncertainty = graph.inputs[*number as usize].distribution.standard_uncertainty();
+                numeric::sum::sum(left.iter().zip(right).map(|(c, d)| (c * uncertainty) * (d * uncertainty)))
+            }),
+        };
+        (Source::Input(*number), term)
     });
     let estimators = a.estimators.iter().filter_map(|(number, left)| {
         let right = b.estimators.get(number)?;
@@ -26,6 +30,17 @@ pub(super) fn variance_terms(graph: &Graph, a: &Sensitivities, b: &Sensitivities
         Some((Source::Estimator(*number), term))
     });
     inputs.chain(estimators).filter(|(_, term)| *term != 0.0).collect()
+}
+
+/// c_i u_i Σ_j r_ij d_j u_j: what one of several correlated inputs brings.
+fn correlated_term(graph: &Graph, group: &CorrelatedInputs, place: usize, left: &[f64], b: &Sensitivities) -> f64 {
+    let u = |input: u32| graph.inputs[input as usize].distribution.standard_uncertainty();
+    let own = left.first().copied().unwrap_or(0.0) * u(group.inputs[place]);
+    let others = group.inputs.iter().zip(&group.coefficients[place]).map(|(input, r)| {
+        let slope = b.inputs.get(input).and_then(|weights| weights.first()).copied().unwrap_or(0.0);
+        r * slope * u(*input)
+    });
+    own * numeric::sum::sum(others)
 }
 
 /// Covariance of two measurands, in the product of their coherent SI units.
@@ -57,8 +72,20 @@ pub(super) fn source_degrees_of_freedom(graph: &Graph, source: Source) -> f64 {
 pub fn degrees_of_freedom(graph: &Graph, of: &Sensitivities) -> f64 {
     let terms = variance_terms(graph, of, of);
     let total: f64 = terms.iter().map(|(_, term)| term).sum();
-    let weighted: f64 =
-        terms.iter().map(|(source, term)| term * term / source_degrees_of_freedom(graph, *source)).sum();
+    let group_of = |source: &Source| match source {
+        Source::Input(number) => graph.correlated.iter().position(|group| group.position(*number).is_some()),
+        Source::Estimator(_) => None,
+    };
+    let alone = terms.iter().filter(|(source, _)| group_of(source).is_none());
+    let mut weighted: f64 = alone.map(|(source, term)| term * term / source_degrees_of_freedom(graph, *source)).sum();
+    for index in 0..graph.correlated.len() {
+        // Correlated inputs are one component; the fewest degrees of freedom among them are taken for all.
+        let members: Vec<_> = terms.iter().filter(|(source, _)| group_of(source) == Some(index)).collect();
+        let part: f64 = members.iter().map(|(_, term)| term).sum();
+        let fewest =
+            members.iter().map(|(source, _)| source_degrees_of_freedom(graph, *source)).fold(f64::INFINITY, f64::min);
+        weighted += part * part / fewest;
+    }
     if weighted > 0.0 { total * total / weighted } else { f64::INFINITY }
 }
 

@@ -3,13 +3,19 @@
 //! A method is ordinary arithmetic on graph handles; the same nodes give numbers, sensitivities and trials.
 
 pub mod air_density;
+pub mod allan_deviation;
+pub mod analysis_of_variance;
+pub mod autocorrelation;
 pub mod averaging_cycle;
 pub mod combination;
 pub mod comparator_sensitivity;
+pub mod consistency;
 pub mod conventional_mass;
 pub mod instrument_correction;
 pub mod mass_on_day;
+pub mod polynomial_fit;
 pub mod profile_fit;
+pub mod statistic;
 pub mod straight_line;
 pub mod substitution;
 pub mod type_a_mean;
@@ -65,12 +71,17 @@ impl WorkedExample {
 /// Every method, in order of name.
 pub static METHODS: &[&Method] = &[
     &air_density::METHOD,
+    &allan_deviation::METHOD,
+    &analysis_of_variance::METHOD,
+    &autocorrelation::METHOD,
     &averaging_cycle::METHOD,
     &combination::METHOD,
     &comparator_sensitivity::METHOD,
+    &consistency::METHOD,
     &conventional_mass::METHOD,
     &instrument_correction::METHOD,
     &mass_on_day::METHOD,
+    &polynomial_fit::METHOD,
     &profile_fit::METHOD,
     &straight_line::METHOD,
     &substitution::METHOD,
