@@ -214,7 +214,8 @@ impl<'i> Engine<'i> {
         block.sound.then_some(block)
     }
 
-    fn mark_used(&self, name: &str) {
+    /// Marks a block as part of what results rest on.
+    pub fn mark_used(&self, name: &str) {
         let mut progress = self.progress.borrow_mut();
         if !progress.used.iter().any(|used| used == name) {
             progress.used.push(name.to_string());
@@ -245,6 +246,7 @@ impl<'i> Engine<'i> {
         for problem in self.builder.take_problems() {
             self.complain(problem, block.raw.place);
         }
+        super::correlation::apply_all(self);
         let failed = self.count_faults() > before;
         let mut progress = self.progress.borrow_mut();
         progress.open.pop();
@@ -263,6 +265,7 @@ impl<'i> Engine<'i> {
         for (name, block) in &self.blocks {
             self.build(name, block.raw.name.place);
         }
+        super::correlation::check_applied(self);
     }
 
     /// The result with this path; builds the block that gives it. What cannot be had is complained of at `path`.

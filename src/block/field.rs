@@ -41,6 +41,10 @@ pub enum Shape {
     Texts,
     /// A mapping from free names to mappings with these fields.
     Named(&'static [Field]),
+    /// A mapping from free names to values: in short form, or as mappings with these fields.
+    Inputs(&'static [Field]),
+    /// A mapping from free names to texts.
+    Equations,
     /// Either shape will do: the first that fits.
     Either(&'static Shape, &'static Shape),
 }
@@ -84,6 +88,8 @@ impl Shape {
             Shape::Numbers => "a list of numbers".into(),
             Shape::Grid => "a list of lists of numbers".into(),
             Shape::Texts => "a list of texts".into(),
+            Shape::Inputs(_) => "a mapping from names to values".into(),
+            Shape::Equations => "a mapping from names to equations".into(),
             Shape::Named(_) => "a mapping from names to their particulars".into(),
             Shape::Either(first, second) => format!("{}, or {}", first.words(), second.words()),
         }
@@ -157,6 +163,15 @@ fn check_shape(node: &Node, shape: Shape, owner: &str, complaints: &mut Complain
             }),
             None => complaints.add_at(mismatch(owner, shape.words(), node), node.place),
         },
+        Shape::Inputs(fields) => {
+            named(node, shape, owner, complaints, |value, owner, complaints| match value.as_map() {
+                Some(_) => check_fields(value, fields, owner, complaints),
+                None => check_value(value, Shape::AnyValue, owner, complaints),
+            })
+        }
+        Shape::Equations => named(node, shape, owner, complaints, |value, owner, complaints| {
+            check_scalar(value, Shape::Text, owner, complaints);
+        }),
         Shape::Texts | Shape::Numbers => {
             let inner = if matches!(shape, Shape::Texts) { Shape::Text } else { Shape::Number };
             each(node, shape, owner, complaints, |item, complaints| check_shape(item, inner, owner, complaints));
@@ -179,6 +194,31 @@ fn check_shape(node: &Node, shape: Shape, owner: &str, complaints: &mut Complain
         }
         Shape::Value(_) | Shape::AnyValue => check_value(node, shape, owner, complaints),
         _ => check_scalar(node, shape, owner, complaints),
+    }
+}
+
+/// Checks every value of a mapping from free names.
+fn named(
+    node: &Node,
+    shape: Shape,
+    owner: &str,
+    complaints: &mut Complaints,
+    mut check: impl FnMut(&Node, &str, &mut Complaints),
+) {
+    let Some(entries) = node.as_map() else {
+        complaints.add_at(mismatch(owner, shape.words(), node), node.place);
+        return;
+    };
+    for entry in entries {
+        let plain = entry.key.text.chars().all(|c| c.is_alphanumeric() || c == '_');
+        if !plain || !entry.key.text.starts_with(char::is_alphabetic) {
+            let message = format!(
+                "“{}” is no name for a quantity: a letter followed by letters, digits and underscores.",
+                entry.key.text
+            );
+            complaints.add_at(Problem::new(Code::NameInvalid, message).hint("Choose another name."), entry.key.place);
+        }
+        check(&entry.value, &format!("{} of {owner}", entry.key.text), complaints);
     }
 }
 

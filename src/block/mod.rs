@@ -18,12 +18,15 @@ pub mod calibration;
 pub mod combined_result;
 pub mod comparator;
 pub mod comparison;
+pub mod correlation;
 pub mod engine;
+pub mod equation;
 pub mod field;
 pub mod fields;
 pub mod given;
 pub mod instrument;
 pub mod laboratory;
+pub mod measurement_model;
 pub mod particulars;
 pub mod raw_data;
 pub mod weighing;
@@ -64,10 +67,12 @@ pub static KINDS: &[&BlockKind] = &[
     &combined_result::KIND,
     &comparator::KIND,
     &comparison::KIND,
+    &correlation::KIND,
     &particulars::CUSTOMER,
     &instrument::KIND,
     &weight::ITEM,
     &weight::MASS_STANDARD,
+    &measurement_model::KIND,
     &particulars::PERSON,
     &raw_data::KIND,
     &particulars::RULE,

@@ -13,6 +13,7 @@ pub mod consistency;
 pub mod conventional_mass;
 pub mod instrument_correction;
 pub mod mass_on_day;
+pub mod measurement_model;
 pub mod polynomial_fit;
 pub mod profile_fit;
 pub mod statistic;
@@ -81,6 +82,7 @@ pub static METHODS: &[&Method] = &[
     &conventional_mass::METHOD,
     &instrument_correction::METHOD,
     &mass_on_day::METHOD,
+    &measurement_model::METHOD,
     &polynomial_fit::METHOD,
     &profile_fit::METHOD,
     &straight_line::METHOD,
