@@ -11,8 +11,7 @@ use std::fs;
 use std::path::{Path, PathBuf};
 
 /// Codes that no record of a comparison draws, with the test that covers them.
-const COVERED_ELSEWHERE: &[(&str, &str)] =
-    &[("correlation_impossible", "numeric::linear::tests"), ("pdf_unreadable", "register::pdf_file::tests")];
+const COVERED_ELSEWHERE: &[(&str, &str)] = &[("pdf_unreadable", "register::pdf_file::tests")];
 
 fn folder() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/complaints")

@@ -38,7 +38,7 @@ pub static METHOD: Method = Method {
     examples: &[
         planck("chi-square", "3.442127", || planck_consistency(|c| c.chi_square)),
         planck("p", "0.1788758", || planck_consistency(|c| c.probability)),
-        planck("Birge ratio", "1.311893121", || planck_consistency(|c| c.birge_ratio)),
+        planck("Birge ratio", "1.31189312", || planck_consistency(|c| c.birge_ratio)),
         special("h/(10⁻³⁴ J s)", "6.6260701563511", || special_adjustment(|c, _| c.mean)),
         special("chi-square", "23.0335", || special_adjustment(|c, _| c.chi_square)),
         special("expansion factor", "1.7", || special_adjustment(|c, u| expansion_factor(&c.residuals, u))),
