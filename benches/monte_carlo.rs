@@ -139,8 +139,23 @@ fn numpy(case: &str) -> Option<f64> {
     String::from_utf8_lossy(&output.stdout).trim().parse().ok()
 }
 
+/// The most memory the process held while ten million trials were made and summed up.
+fn print_memory() {
+    let builder = Builder::default();
+    let measurand = mass_calibration(&builder);
+    let (graph, _) = builder.finish();
+    let found = propagate_distributions(&graph, &[measurand], 10_000_000).map(|trials| trials.summary(0, 0.95));
+    let status = std::fs::read_to_string("/proc/self/status").unwrap_or_default();
+    let peak = status.lines().find_map(|line| line.strip_prefix("VmHWM:")).map(str::trim).unwrap_or("unknown");
+    println!(
+        "10 000 000 trials with intervals: u = {:.5} mg, peak memory {peak}",
+        found.map_or(f64::NAN, |found| found.standard_uncertainty * 1e6)
+    );
+}
+
 fn main() {
     let trials = 1 << 20;
+    print_memory();
     #[allow(clippy::type_complexity)]
     let cases: [(&str, fn(&Builder) -> NodeId, fn(usize) -> f64); 2] = [
         ("mass_calibration", mass_calibration, mass_calibration_loop),

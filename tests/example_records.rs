@@ -156,3 +156,19 @@ fn what_the_days_share_is_not_averaged_away() {
     assert!((total - 1.0).abs() < 1e-9, "shares add to {total}");
     assert!(lines.windows(2).all(|pair| pair[0].contribution >= pair[1].contribution));
 }
+
+/// One mistake in the reference standard stops every result; it is said once, not at every place that cites a result.
+#[test]
+fn a_mistake_is_not_repeated_by_its_consequences() {
+    let mut files = example();
+    let standard = files.get_mut("standards/k17.md").expect("the standard");
+    let text = String::from_utf8(standard.clone()).expect("UTF-8");
+    *standard = text.replace("nominal: 1 kg", "nominal: 1").into_bytes();
+    let intake = MemoryIntake { files, ..MemoryIntake::default() };
+    let engine = libripens::reduce(&intake, None).expect("readable");
+    libripens::report::examine_reports(&engine);
+    let list = engine.complaints().list;
+    let words: Vec<&str> = list.iter().map(|complaint| complaint.code.word()).collect();
+    assert_eq!(words, ["figure_missing", "bare_number"], "{list:#?}");
+    assert!(list[0].message.contains("stay marked gaps"));
+}

@@ -211,6 +211,9 @@ impl<'i> Engine<'i> {
             return None;
         }
         self.mark_used(block.name());
+        if !block.sound {
+            self.fail_open();
+        }
         block.sound.then_some(block)
     }
 
@@ -293,7 +296,23 @@ impl<'i> Engine<'i> {
         {
             self.complain_unknown_output(path, name);
         }
-        found.map(|id| self.builder.at(id)).filter(|quantity| self.graph().value(quantity.id).is_finite())
+        let found = found.map(|id| self.builder.at(id)).filter(|quantity| self.graph().value(quantity.id).is_finite());
+        if found.is_none() {
+            self.fail_open();
+        }
+        found
+    }
+
+    /// What is being built rests on something that was complained of: what it does not give is no second fault.
+    fn fail_open(&self) {
+        let mut progress = self.progress.borrow_mut();
+        let open = progress.open.clone();
+        progress.failed.extend(open);
+    }
+
+    /// Whether a block could not be computed, or not wholly, for a reason already complained of.
+    pub fn has_failed(&self, name: &str) -> bool {
+        self.progress.borrow().failed.contains(name) || self.blocks.get(name).is_some_and(|block| !block.sound)
     }
 
     fn complain_unknown_output(&self, path: &Text, name: &str) {

@@ -82,9 +82,13 @@ fn with_stated_uncertainty(given: Given, node: &Node, kind: Kind, owner: &str) -
     Ok(Given::Stated { value, place })
 }
 
+/// Says in the message which field is meant.
 fn naming(mut problem: Problem, owner: &str) -> Problem {
     if !problem.message.contains(owner) {
-        problem.hints.push(format!("This is {owner}."));
+        problem.message = format!("{} ({owner}).", problem.message.trim_end_matches('.'));
+    }
+    if problem.hints.is_empty() {
+        problem.hints.push("Correct the value and its unit, or move it to the field it belongs to.".into());
     }
     problem
 }

@@ -1,7 +1,7 @@
 //! From a report record to a PDF with its dossier.
 
 use super::dossier::Dossier;
-use super::expression::{Evaluator, Request, answer, gap, named_result, prepare};
+use super::expression::{Evaluator, Request, answer, failed_block, gap, named_result, prepare};
 use super::front::Front;
 use super::markup::Markup;
 use super::prose::{Insert, Inserted, Prose, path_in_folder, typeset_prose};
@@ -106,6 +106,8 @@ struct Writing<'e> {
     folder: String,
     results: Vec<NodeId>,
     images: BTreeMap<String, Vec<u8>>,
+    /// Blocks that could not be computed, once for each gap they leave in the prose.
+    gaps: Vec<String>,
 }
 
 impl<'e> Writing<'e> {
@@ -115,7 +117,7 @@ impl<'e> Writing<'e> {
         engine.use_file(file);
         let front = Front::read(engine, record)?;
         let folder = path.rsplit_once('/').map_or("", |(folder, _)| folder).to_string();
-        Some(Writing { engine, front, record, folder, results: Vec::new(), images: BTreeMap::new() })
+        Some(Writing { engine, front, record, folder, results: Vec::new(), images: BTreeMap::new(), gaps: Vec::new() })
     }
 
     /// The prose with everything it cites.
@@ -140,7 +142,25 @@ impl<'e> Writing<'e> {
         let mut answers = Answers { writing: self, requests };
         let markup = typeset_prose(&prose, &mut answers, &mut complaints);
         engine.complain_all(complaints);
+        self.complain_of_gaps();
         markup
+    }
+
+    /// One complaint for all gaps whose causes were complained of.
+    fn complain_of_gaps(&self) {
+        let mut blocks = self.gaps.clone();
+        blocks.sort();
+        blocks.dedup();
+        if blocks.is_empty() {
+            return;
+        }
+        let message = format!(
+            "{} places of the report stay marked gaps, because {} could not be computed.",
+            self.gaps.len(),
+            blocks.join(", ")
+        );
+        let problem = Problem::new(Code::FigureMissing, message).hint("The causes are among the other complaints.");
+        self.engine.complain(problem, self.front.place);
     }
 
     /// Evaluates all expressions and builds what they need, so that parts that speak of everything used are complete.
@@ -168,9 +188,17 @@ impl Insert for Answers<'_, '_> {
     fn expression(&mut self, index: usize) -> Inserted {
         let Some((text, place, request)) = self.requests.get(index) else { return gap("") };
         let engine = self.writing.engine;
-        let answered =
-            request.as_ref().and_then(|request| engine.keep(answer(engine, request, &self.writing.results), *place));
-        answered.unwrap_or_else(|| gap(text))
+        let Some(request) = request else { return gap(text) };
+        match answer(engine, request, &self.writing.results) {
+            Ok(inserted) => inserted,
+            Err(problem) => {
+                match failed_block(engine, request) {
+                    Some(block) => self.writing.gaps.push(block),
+                    None => engine.complain(problem, *place),
+                }
+                gap(text)
+            }
+        }
     }
 
     fn image(&mut self, path: &str) -> Result<String, Problem> {

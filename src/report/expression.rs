@@ -267,6 +267,26 @@ pub fn prepare(engine: &Engine, request: &Request, place: Place) {
     }
 }
 
+/// The block that a request fails on although its name is right: its cause was complained of already.
+pub fn failed_block(engine: &Engine, request: &Request) -> Option<String> {
+    let paths: Vec<&str> = match request {
+        Request::Path(path) => vec![path],
+        Request::Call(_, arguments) => arguments.iter().filter_map(Argument::path).collect(),
+        Request::Text(_) => Vec::new(),
+    };
+    let name = |path: &&str| path.split('.').next().unwrap_or_default().to_string();
+    paths.iter().map(name).find(|name| engine.has_failed(name))
+}
+
+impl Argument {
+    fn path(&self) -> Option<&str> {
+        match self {
+            Argument::Path(path) => Some(path),
+            Argument::Text(_) => None,
+        }
+    }
+}
+
 /// What stands in place of a request.
 ///
 /// # Errors
@@ -475,6 +495,10 @@ fn nominal_of(engine: &Engine, name: &str) -> Option<(String, f64)> {
 
 /// The node of a result named in a report's front matter; complained of at its place when missing.
 pub fn named_result(engine: &Engine, path: &Text) -> Option<NodeId> {
-    engine.build(path.text.split('.').next().unwrap_or_default(), path.place);
-    engine.keep(node_at(engine, &path.text), path.place)
+    let name = path.text.split('.').next().unwrap_or_default();
+    engine.build(name, path.place);
+    match node_at(engine, &path.text) {
+        Err(_) if engine.has_failed(name) => None,
+        found => engine.keep(found, path.place),
+    }
 }
