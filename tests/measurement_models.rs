@@ -1,6 +1,8 @@
 //! A user's own measurement models: what goes in comes out with its uncertainty, and what does not fit points into the
 //! equation.
 
+#![allow(clippy::disallowed_methods)]
+
 use libripens::block::Engine;
 use libripens::diagnostic::Code;
 use libripens::graph::{sensitivities, standard_uncertainty};

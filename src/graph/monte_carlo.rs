@@ -218,7 +218,7 @@ impl GroupDraw {
         count: usize,
         row_of: impl Fn(Register) -> usize,
     ) {
-        for trial in 0..count {
+        let mut draw = |trial: usize| {
             let freedom = self.degrees_of_freedom;
             let scale = if freedom > 2.0 && freedom.is_finite() { t_scale(freedom, stream) } else { 1.0 };
             let normals: Vec<f64> = self.root.iter().map(|_| stream.normal()).collect();
@@ -229,7 +229,8 @@ impl GroupDraw {
                 let departure = input.distribution.standard_uncertainty() * scale * drawn;
                 rows[row_of(*register)][trial] = graph.number(input.node) + departure;
             }
-        }
+        };
+        (0..count).for_each(&mut draw);
     }
 }
 
