@@ -8,6 +8,9 @@ use libripens::intake::MemoryIntake;
 
 const LABORATORY: &str = "---\nformat: 1\nname: Test laboratory\naddress: Nowhere\ncoverage_probability: 95.45 %\ndecimal_marker: point\ndegrees_of_freedom: truncated\n---\n";
 
+/// A weight on the pan with small ones beside it.
+type Load<'a> = (Weight, &'a [Weight]);
+
 /// The true state of one weight.
 #[derive(Clone, Copy)]
 struct Weight {
@@ -106,7 +109,7 @@ fn assert_mass(engine: &Engine, path: &str, weight: Weight) {
 
 #[test]
 fn abba_and_aba_give_the_mass_back_through_the_full_equation() {
-    let (a, b): ((Weight, &[Weight]), (Weight, &[Weight])) = ((REFERENCE, &[]), (STEEL, &[]));
+    let (a, b): (Load<'_>, Load<'_>) = ((REFERENCE, &[]), (STEEL, &[]));
     for (cycle, order) in [("ABBA", vec![a, b, b, a]), ("ABA", vec![a, b, a])] {
         let blocks = [
             standard("R", REFERENCE, "1 kg"),
