@@ -14,7 +14,9 @@
 //! | the kinds          | `ambient`, `combined_result`, `comparator`, `comparison`, …  |
 
 pub mod ambient;
+pub mod analysis_of_variance;
 pub mod calibration;
+pub mod columns;
 pub mod combined_result;
 pub mod comparator;
 pub mod comparison;
@@ -23,12 +25,14 @@ pub mod engine;
 pub mod equation;
 pub mod field;
 pub mod fields;
+pub mod fit;
 pub mod given;
 pub mod instrument;
 pub mod laboratory;
 pub mod measurement_model;
 pub mod particulars;
 pub mod raw_data;
+pub mod series_in_time;
 pub mod weighing;
 pub mod weight;
 
@@ -64,11 +68,13 @@ pub struct BlockKind {
 /// Every kind, in order of name.
 pub static KINDS: &[&BlockKind] = &[
     &ambient::KIND,
+    &analysis_of_variance::KIND,
     &combined_result::KIND,
     &comparator::KIND,
     &comparison::KIND,
     &correlation::KIND,
     &particulars::CUSTOMER,
+    &fit::KIND,
     &instrument::KIND,
     &weight::ITEM,
     &weight::MASS_STANDARD,
@@ -76,6 +82,7 @@ pub static KINDS: &[&BlockKind] = &[
     &particulars::PERSON,
     &raw_data::KIND,
     &particulars::RULE,
+    &series_in_time::KIND,
 ];
 
 /// The kind with this name.

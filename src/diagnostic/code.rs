@@ -62,6 +62,7 @@ codes! {
     PathOutside "path_outside" Fault "A path leaves the laboratory folder.";
     PdfUnreadable "pdf_unreadable" Fault "A PDF cannot be read back as a report.";
     ProseUnreadable "prose_unreadable" Fault "Prose uses something a report cannot typeset.";
+    ReadingsCorrelated "readings_correlated" Warning "The uncertainty of a mean is claimed for independent readings, but they depend on their neighbours.";
     RecordUnreadable "record_unreadable" Fault "A record is no readable text, or its front matter is damaged.";
     RuleDated "rule_dated" Fault "A rule is dated after the data it judges.";
     SameValueTwice "same_value_twice" Warning "The same value and uncertainty stand in two blocks: one input or two?";

@@ -150,7 +150,8 @@ mod tests {
     fn degrees_of_freedom_of_many_readings() {
         assert!((degrees_of_freedom_independent(1_000_000, 1) / 1e6 - 2.0 / 3.0).abs() < 1e-5);
         assert!((degrees_of_freedom_flicker(1_000_000, 1) / 1e6 - 2.0 / 2.3).abs() < 1e-5);
-        assert_eq!(degrees_of_freedom_independent(4, 2), 1.0);
+        // N = 5, m = 2 by hand: (3 − 6/5) · 16/21.
+        assert!((degrees_of_freedom_independent(4, 2) - 1.8 * 16.0 / 21.0).abs() < 1e-14);
     }
 
     #[test]

@@ -1,0 +1,60 @@
+//! Columns of readings given in a block: a list written there, or a column of raw data.
+
+use super::engine::Engine;
+use super::field::{Field, Shape, optional};
+use super::fields::Fields;
+use super::raw_data::RawData;
+use crate::diagnostic::{Code, Problem};
+use crate::graph::{Distribution, InputDraft, Origin, Quantity, Value};
+use crate::quantity::{Kind, Unit, parse_number};
+use crate::record::Node;
+
+/// The fields of a column.
+pub const COLUMN_FIELDS: &[Field] = &[
+    optional("values", Shape::Numbers, "the readings, written here"),
+    optional("unit", Shape::Text, "their unit"),
+    optional("data", Shape::Name, "raw data, instead of values"),
+    optional("column", Shape::Text, "the name of the column in the raw data"),
+    optional("label", Shape::Text, "what the readings are, in words"),
+];
+
+/// The column as an input of the graph; a scale temperature in °C becomes kelvin.
+pub fn read_column<'e>(
+    engine: &'e Engine<'e>,
+    fields: Fields<'_>,
+    path: &str,
+    symbol: &str,
+    label: &str,
+) -> Option<Quantity<'e>> {
+    let label = fields.text("label").map_or_else(|| label.to_string(), |text| text.text);
+    if let Some(data) = fields.text("data") {
+        let raw = RawData::find(engine, &data)?;
+        let column = fields.text("column").map_or_else(|| symbol.to_string(), |text| text.text);
+        let (_, unit) = raw.numbers(engine, &column, Kind::Plain)?;
+        let kind = if unit.is_celsius() { Kind::Temperature } else { Kind::Plain };
+        return Some(raw.input(engine, &column, path, symbol, &label, kind, Distribution::Exact)?.as_kind(Kind::Plain));
+    }
+    let Some(items) = fields.get("values").and_then(Node::as_list) else {
+        let problem = Problem::new(Code::FieldMissing, "A column needs either values or data.");
+        engine.complain(
+            problem.hint("Write `values: [1.2, 1.3]` with `unit:`, or `data:` with `column:`."),
+            fields.place(),
+        );
+        return None;
+    };
+    let Some(unit_text) = fields.text("unit") else {
+        let problem = Problem::new(Code::BareNumber, "The values of this column have no unit.");
+        engine.complain(problem.hint("Write `unit: K`, or `unit: 1` for plain numbers."), fields.place());
+        return None;
+    };
+    let unit = engine.keep(Unit::parse(&unit_text.text), unit_text.place)?;
+    let mut rows = Vec::new();
+    for item in items {
+        let number = engine.keep(parse_number(item.as_text().unwrap_or_default(), &Unit::one()), item.place)?;
+        rows.push(if unit.is_celsius() { unit.to_si_f64(number) } else { unit.difference_to_si(number) });
+    }
+    let places = items.iter().map(|item| item.place).collect();
+    let draft =
+        InputDraft::new(path, symbol, &label, Kind::Plain, unit, Value::column(rows), Origin::ReadingList(places));
+    Some(engine.builder.input(draft))
+}
