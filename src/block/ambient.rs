@@ -206,7 +206,7 @@ impl<'e> LoggedAir<'e> {
             carbon_dioxide: self.carbon_dioxide.id,
             density: density.id,
         };
-        self.engine.store_conditions(&self.name, conditions);
+        self.engine.store(&self.name, conditions);
     }
 
     fn air(&self) -> Air<'e> {

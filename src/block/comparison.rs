@@ -604,7 +604,7 @@ impl<'e> Work<'e> {
             decisions,
             source: self.weighings.source(self.engine),
         };
-        self.engine.store_weighing(self.block.name(), comparison);
+        self.engine.store(self.block.name(), comparison);
     }
 
     fn cycle_differences(&self, cycle: &Cycle, y: &[f64]) -> Vec<f64> {

@@ -12,8 +12,10 @@ use crate::intake::{FileId, Intake, IntakeError, Place, Sources};
 use crate::quantity::{Kind, Unit};
 use crate::record::{MeasurementBlock, Record, Text, parse_date, read_record};
 use chrono::NaiveDate;
+use std::any::{Any, TypeId};
 use std::cell::{Ref, RefCell};
 use std::collections::{BTreeMap, BTreeSet};
+use std::rc::Rc;
 
 /// A block of a known kind, checked against its fields.
 pub struct Block {
@@ -56,8 +58,8 @@ struct Progress {
     /// Files used so far beside those of the blocks.
     files: BTreeSet<FileId>,
     stated: Vec<(String, f64, f64, Kind, Place)>,
-    weighings: BTreeMap<String, super::weighing::Comparison>,
-    conditions: BTreeMap<String, super::ambient::Conditions>,
+    /// What blocks found beyond their quantities, for the report: one value of each type a block.
+    found: BTreeMap<(String, TypeId), Rc<dyn Any>>,
 }
 
 /// A laboratory folder read, and the graph built from it so far.
@@ -431,24 +433,25 @@ impl<'i> Engine<'i> {
         self.builder.input(draft)
     }
 
-    /// Stores what a comparison found, for the report.
-    pub fn store_weighing(&self, name: &str, comparison: super::weighing::Comparison) {
-        self.progress.borrow_mut().weighings.insert(name.to_string(), comparison);
+    /// Keeps what a block found beyond its quantities, for other blocks and the report; one value of a type a block.
+    pub fn store<T: Any>(&self, name: &str, found: T) {
+        self.progress.borrow_mut().found.insert((name.to_string(), TypeId::of::<T>()), Rc::new(found));
+    }
+
+    /// What the block of this name stored with [`Engine::store`]; nothing before it was built.
+    pub fn found<T: Any>(&self, name: &str) -> Option<Rc<T>> {
+        let found = self.progress.borrow().found.get(&(name.to_string(), TypeId::of::<T>())).cloned()?;
+        found.downcast().ok()
     }
 
     /// What a comparison found.
-    pub fn weighing(&self, name: &str) -> Option<super::weighing::Comparison> {
-        self.progress.borrow().weighings.get(name).cloned()
-    }
-
-    /// Stores the conditions of an ambient block, for the report.
-    pub fn store_conditions(&self, name: &str, conditions: super::ambient::Conditions) {
-        self.progress.borrow_mut().conditions.insert(name.to_string(), conditions);
+    pub fn weighing(&self, name: &str) -> Option<Rc<super::weighing::Comparison>> {
+        self.found(name)
     }
 
     /// The conditions of an ambient block.
-    pub fn conditions(&self, name: &str) -> Option<super::ambient::Conditions> {
-        self.progress.borrow().conditions.get(name).cloned()
+    pub fn conditions(&self, name: &str) -> Option<Rc<super::ambient::Conditions>> {
+        self.found(name)
     }
 
     /// The node behind an id, as a handle.

@@ -177,8 +177,7 @@ fn calibration_dates(engine: &Engine) -> String {
         .used_blocks()
         .iter()
         .filter_map(|name| engine.weighing(name))
-        .flat_map(|comparison| comparison.weighings)
-        .map(|weighing| weighing.time)
+        .flat_map(|comparison| comparison.weighings.iter().map(|weighing| weighing.time).collect::<Vec<_>>())
         .collect();
     let (first, last) =
         (times.iter().copied().fold(f64::INFINITY, f64::min), times.iter().copied().fold(f64::NEG_INFINITY, f64::max));
