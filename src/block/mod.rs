@@ -32,6 +32,7 @@ pub mod laboratory;
 pub mod measurement_model;
 pub mod particulars;
 pub mod raw_data;
+pub mod realization;
 pub mod series_in_time;
 pub mod weighing;
 pub mod weight;
@@ -81,6 +82,7 @@ pub static KINDS: &[&BlockKind] = &[
     &measurement_model::KIND,
     &particulars::PERSON,
     &raw_data::KIND,
+    &realization::KIND,
     &particulars::RULE,
     &series_in_time::KIND,
 ];

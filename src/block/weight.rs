@@ -55,6 +55,9 @@ macro_rules! weight_fields {
             optional("density", Shape::Mapping(DENSITY_FIELDS), "the density; or give the volume"),
             optional("expansion", Shape::Value(Kind::CubicExpansion), "the cubic expansion coefficient"),
             optional("mass_centre_height", Shape::Value(Kind::Height), "height of the mass centre above the base"),
+            optional("surface_area", Shape::AnyValue, "the area of the surface"),
+            optional("magnetic_susceptibility", Shape::AnyValue, "the volume magnetic susceptibility"),
+            optional("magnetic_polarisation", Shape::AnyValue, "the permanent magnetic polarisation"),
             optional("calibrations", Shape::Mappings(CALIBRATION_FIELDS), "dated calibrations"),
             optional("drift_since_calibration", Shape::Value(Kind::MassDifference), "change since the calibration"),
             $($extra),*

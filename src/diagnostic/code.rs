@@ -36,6 +36,7 @@ codes! {
     CellUnreadable "cell_unreadable" Fault "A cell of a raw data file is empty, no number, or not finite.";
     CertificateExpired "certificate_expired" Fault "A certificate was past its due date on the day of use.";
     CertificateMissing "certificate_missing" Fault "No calibration was valid on the day of use.";
+    CheckOverdue "check_overdue" Warning "A check between realizations had run out when the campaign began.";
     CircularReference "circular_reference" Fault "Values refer to each other in a circle.";
     ColumnUnknown "column_unknown" Fault "A raw data file has no column with this head, or has it twice.";
     ConditionsOutOfSpan "conditions_out_of_span" Fault "Conditions are asked for at a time outside the logged span.";
@@ -55,6 +56,7 @@ codes! {
     FormatUnsupported "format_unsupported" Fault "The laboratory folder asks for another record format.";
     KindMismatch "kind_mismatch" Fault "Two kinds of quantity that must not be mixed meet.";
     KindUnknown "kind_unknown" Fault "A measurement block is of a kind nobody knows.";
+    MassInPrimary "mass_in_primary" Fault "A mass has weight in the result of a primary method and is not declared auxiliary.";
     NameInvalid "name_invalid" Fault "A name is not a letter followed by letters, digits and underscores.";
     NotationUnreadable "notation_unreadable" Fault "A value is written in no known notation.";
     OutOfRange "out_of_range" Fault "A reading lies outside the range of its instrument.";
@@ -69,6 +71,7 @@ codes! {
     ShapeMismatch "shape_mismatch" Fault "A field holds a list, a mapping or text where another is expected.";
     SilentComment "silent_comment" Fault "A # after a value would start a comment nobody sees.";
     StateMismatch "state_mismatch" Fault "A value in vacuum meets a value in air without a stated link.";
+    SubmittedValueChanged "submitted_value_changed" Fault "A result no longer prints the value that was handed in.";
     TemplateFaulty "template_faulty" Fault "A template or an expression in double braces cannot be evaluated.";
     TimeUnreadable "time_unreadable" Fault "A date or time is unreadable, lacks its zone, or does not follow.";
     TypesettingFailed "typesetting_failed" Fault "The typesetter could not make the page.";

@@ -50,6 +50,6 @@ pub use sensitivity::{Sensitivities, Source, sensitivities};
 pub use trail::{TrailStep, TrailSteps, trail};
 pub use uncertainty::{
     Coverage, DegreesOfFreedomRule, Settings, correlation, covariance, coverage, degrees_of_freedom,
-    standard_uncertainty,
+    standard_uncertainty, unshared_variances,
 };
 pub use value::Value;

@@ -60,6 +60,20 @@ pub fn correlation(graph: &Graph, a: &Sensitivities, b: &Sensitivities) -> f64 {
     if scale == 0.0 { 0.0 } else { (covariance(graph, a, b) / scale).clamp(-1.0, 1.0) }
 }
 
+/// The variance of each measurand from what it shares with none of the others, in the square of its coherent SI unit.
+pub fn unshared_variances(graph: &Graph, of: &[Sensitivities]) -> Vec<f64> {
+    let uses = |measurand: &Sensitivities, source: &Source| match source {
+        Source::Input(number) => measurand.inputs.contains_key(number),
+        Source::Estimator(number) => measurand.estimators.contains_key(number),
+    };
+    let users = |source: &Source| of.iter().filter(|measurand| uses(measurand, source)).count();
+    let own = |measurand: &Sensitivities| {
+        let terms = variance_terms(graph, measurand, measurand);
+        numeric::sum::sum(terms.iter().filter(|(source, _)| users(source) == 1).map(|(_, term)| *term)).max(0.0)
+    };
+    of.iter().map(own).collect()
+}
+
 /// Degrees of freedom of one source.
 pub(super) fn source_degrees_of_freedom(graph: &Graph, source: Source) -> f64 {
     match source {

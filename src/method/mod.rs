@@ -7,6 +7,7 @@ pub mod allan_deviation;
 pub mod analysis_of_variance;
 pub mod autocorrelation;
 pub mod averaging_cycle;
+pub mod campaign_mean;
 pub mod combination;
 pub mod comparator_sensitivity;
 pub mod consistency;
@@ -76,6 +77,7 @@ pub static METHODS: &[&Method] = &[
     &analysis_of_variance::METHOD,
     &autocorrelation::METHOD,
     &averaging_cycle::METHOD,
+    &campaign_mean::METHOD,
     &combination::METHOD,
     &comparator_sensitivity::METHOD,
     &consistency::METHOD,

@@ -90,6 +90,16 @@ static FUNCTIONS: &[Function] = &[
     Function { name: "chart", usage: "chart(W1)", answer: chart },
     Function { name: "conditions", usage: "conditions(A1)", answer: conditions },
     Function {
+        name: "contents",
+        usage: "contents(C1)",
+        answer: |engine, asked| campaign_part(engine, asked, parts::contents::contents_table),
+    },
+    Function {
+        name: "determinations",
+        usage: "determinations(C1)",
+        answer: |engine, asked| campaign_part(engine, asked, parts::campaign::determinations_table),
+    },
+    Function {
         name: "deviation",
         usage: "deviation(W1.mass, \"mg\")",
         answer: |engine, asked| deviation(engine, asked, false),
@@ -120,6 +130,7 @@ static FUNCTIONS: &[Function] = &[
         answer: |engine, asked| inline(&asked.figure(engine)?.expanded_uncertainty()),
     },
     Function { name: "readings", usage: "readings(W1)", answer: readings },
+    Function { name: "relative_budget", usage: "relative_budget(C1.mass)", answer: relative_budget },
     Function {
         name: "results",
         usage: "results()",
@@ -436,8 +447,22 @@ fn conditions(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
 }
 
 fn chart(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
-    let name = asked.block_of(engine, &["comparison", "ambient", "combined-result"])?;
+    let name = asked.block_of(engine, &["comparison", "ambient", "combined-result", "realization"])?;
     block(parts::charts::chart_of(engine, &name).ok_or_else(|| uncomputed(&name))?)
+}
+
+fn campaign_part(
+    engine: &Engine,
+    asked: &Asked<'_>,
+    part: fn(&Engine, &str) -> Option<Markup>,
+) -> Result<Inserted, Problem> {
+    let name = asked.block_of(engine, &["realization"])?;
+    block(part(engine, &name).ok_or_else(|| uncomputed(&name))?)
+}
+
+fn relative_budget(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
+    let (id, name) = (asked.quantity(engine)?, asked.path()?.split('.').next().unwrap_or_default());
+    block(parts::campaign::relative_budget(engine, name, id).ok_or_else(|| uncomputed(name))?)
 }
 
 fn statement(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
@@ -485,6 +510,7 @@ fn nominal_of(engine: &Engine, name: &str) -> Option<(String, f64)> {
             crate::block::given::Given::Reference(_) => None,
         },
         "comparison" => nominal_of(engine, &fields.texts("b").first()?.text),
+        "realization" => nominal_of(engine, &fields.text("artefact")?.text),
         "combined-result" => match fields.text("item") {
             Some(item) => nominal_of(engine, &item.text),
             None => nominal_of(engine, fields.texts("results").first()?.text.split('.').next()?),

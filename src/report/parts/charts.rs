@@ -20,6 +20,9 @@ pub fn chart_of(engine: &Engine, name: &str) -> Option<Markup> {
     if engine.conditions(name).is_some() {
         return conditions(engine, name);
     }
+    if let Some(chart) = super::campaign::determinations_chart(engine, name) {
+        return Some(chart);
+    }
     combined(engine, name).map(|chart| figure(&chart, WIDTH_MM, 58.0))
 }
 

@@ -2,8 +2,10 @@
 
 pub mod annex;
 pub mod budget;
+pub mod campaign;
 pub mod charts;
 pub mod conditions;
+pub mod contents;
 pub mod distribution;
 pub mod excluded;
 pub mod readings;
