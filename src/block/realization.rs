@@ -11,7 +11,7 @@ use crate::intake::Place;
 use crate::method::campaign_mean::{self, Between, CampaignMean};
 use crate::method::statistic::{Statistic, brief};
 use crate::method::{consistency, unit};
-use crate::quantity::{Dimension, Kind};
+use crate::quantity::{Dimension, Kind, print_standard};
 use crate::record::Text;
 use std::sync::Arc;
 
@@ -616,9 +616,8 @@ impl<'e> Work<'e> {
             standard_uncertainty(&graph, &sensitivities(&graph, mass.id))
         };
         let handed_in = value.standard_uncertainty().unwrap_or(0.0);
-        // Half a unit of the last digit of an uncertainty stated with two digits.
-        let digit = crate::numeric::elementary::powi(10.0, libm::floor(libm::log10(u)) as i32 - 1);
-        if (mass.number() - value.value).abs() > 0.51 * digit || (u - handed_in).abs() > 0.51 * digit {
+        let printed = |value: f64, u: f64| print_standard(value, u, &unit("kg")).ok();
+        if printed(mass.number(), u) != printed(value.value, handed_in) {
             let message = format!(
                 "The result departs by {} µg, and its uncertainty by {} µg, from the value handed in on {}.",
                 brief((mass.number() - value.value) * 1e9),
