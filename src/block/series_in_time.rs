@@ -1,12 +1,14 @@
 //! Readings at equal intervals of time: their mean, and how far they depend on each other.
 
-use super::columns::{COLUMN_FIELDS, read_column};
+use super::columns::{COLUMN_FIELDS, Column, read_column};
 use super::engine::{Block, Engine};
 use super::field::{Shape, needed, optional};
-use super::{BlockKind, Output, no_check};
-use crate::diagnostic::{Code, Problem};
+use super::fields::Fields;
+use super::given::Given;
+use super::{BlockKind, Output};
+use crate::diagnostic::{Code, Complaints, Problem};
 use crate::graph::Decision;
-use crate::method::allan_deviation;
+use crate::method::allan_deviation::{self, AllanPoint, CONFIDENCE, allan_points};
 use crate::method::autocorrelation::{METHOD, MeanRule, SeriesMean, at_distance, effective_number, is_correlated};
 use crate::method::statistic::{Statistic, brief};
 use crate::quantity::{Dimension, Kind, Unit};
@@ -31,76 +33,119 @@ pub static KIND: BlockKind = BlockKind {
         Output { path: "autocorrelation", meaning: "autocorrelation of neighbours", unit: "1" },
         Output { path: "effective_number", meaning: "number of independent readings the series is worth", unit: "1" },
         Output {
-            path: "allan_1, allan_2",
-            meaning: "overlapping Allan deviation over one and over two readings",
+            path: "allan_1, allan_2, allan_4, …",
+            meaning: "overlapping Allan deviation over so many readings, up to half of them",
+            unit: "",
+        },
+        Output {
+            path: "allan_1.low, allan_1.high, …",
+            meaning: "95 % confidence limits of the Allan deviation, for independent readings",
             unit: "",
         },
     ],
-    check: no_check,
+    check,
     build: |engine, block| {
         let _ = build(shorten(engine), block);
     },
 };
 
+/// What a series was found to be beyond its quantities, for the report.
+pub struct TimedSeries {
+    pub label: String,
+    /// The unit of differences of its readings.
+    pub unit: Unit,
+    /// The time between readings, in seconds.
+    pub interval: f64,
+    pub count: usize,
+    pub allan: Vec<AllanPoint>,
+}
+
+fn check(fields: Fields<'_>, complaints: &mut Complaints) {
+    if let Some(Given::Stated { value, place }) = fields.given("interval", Kind::Duration)
+        && value.value <= 0.0
+    {
+        let problem = Problem::new(Code::OutOfRange, format!("The time between readings is {}.", value.text));
+        complaints.add_at(problem.hint("Write the time from one reading to the next, such as `interval: 10 s`."), place);
+    }
+}
+
 fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
     let (fields, name) = (block.fields(), block.name());
     let label = fields.text("label").map_or_else(|| format!("readings of {name}"), |text| text.text);
     let column = read_column(engine, fields.mapping("readings")?, &format!("{name}.readings"), "x", &label)?;
-    let rows = column.rows();
+    let interval = match fields.given("interval", Kind::Duration)? {
+        Given::Stated { value, .. } => value.value,
+        Given::Reference(reference) => engine.result(&reference)?.number(),
+    };
     let rule = match fields.words("uncertainty").as_str() {
         "effective number" => MeanRule::EffectiveNumber,
         "least Allan deviation" => MeanRule::AllanMinimum,
         _ => MeanRule::Independent,
     };
-    if rule == MeanRule::Independent && rows.len() > 2 && is_correlated(&rows) {
-        let message = format!(
-            "The readings of {name} depend on their neighbours (autocorrelation {}), so s/√n is no standard uncertainty of their mean.",
-            brief(at_distance(&rows, 1))
-        );
-        let problem = Problem::new(Code::ReadingsCorrelated, message);
-        engine.complain(
-            problem.hint("Write `uncertainty: effective number`, or `least Allan deviation`."),
-            fields.place_of("uncertainty"),
-        );
-    }
-    let decisions =
-        vec![Decision { what: "autocorrelation of neighbours".into(), decided: brief(at_distance(&rows, 1)) }];
-    let unit = engine.graph().node(column.id).name.as_ref().map_or_else(Unit::one, |name| name.unit.clone());
-    let (place, output) = (block.raw.name.place, (column.dimension(), Kind::Plain));
+    warn_correlated(engine, fields, name, rule, &column.rows);
+    let neighbours = brief(at_distance(&column.rows, 1));
+    let decisions = vec![Decision { what: "autocorrelation of neighbours".into(), decided: neighbours }];
     let made = engine.builder.estimator(
         Arc::new(SeriesMean { rule, decisions }),
-        &[column],
-        &[output],
+        &[column.quantity],
+        &[(column.quantity.dimension(), Kind::Plain)],
         &format!("{name}.scatter"),
         &format!("scatter of {label}"),
     );
-    let mean = *engine.keep(made, place)?.first()?;
-    let described = Statistic::new(4, |columns| {
-        let rows = columns.first().copied().unwrap_or_default();
-        vec![
-            at_distance(rows, 1),
-            effective_number(rows).0,
-            allan_deviation::overlapping(rows, 1),
-            allan_deviation::overlapping(rows, 2),
-        ]
-    });
-    let number = (Dimension::ONE, Kind::Plain);
-    let made = engine.builder.estimator(
-        Arc::new(described),
-        &[column],
-        &[number, number, output, output],
-        &format!("{name}.description"),
-        "description",
-    );
-    let described = engine.keep(made, place)?;
+    let mean = *engine.keep(made, block.raw.name.place)?.first()?;
     let _scope = engine.builder.scope(name, Some(&METHOD.info));
-    mean.result("mean", "x", &format!("mean of {label}"), &unit);
-    described[0].result("autocorrelation", "r_1", &format!("autocorrelation of neighbours in {label}"), &Unit::one());
-    described[1].result("effective_number", "n_eff", &format!("effective number of {label}"), &Unit::one());
-    let _allan = engine.builder.scope("", Some(&allan_deviation::METHOD.info));
-    described[2].result("allan_1", "σ_y(1)", &format!("Allan deviation of {label}, one reading"), &unit);
-    described[3].result("allan_2", "σ_y(2)", &format!("Allan deviation of {label}, two readings"), &unit);
+    mean.result("mean", "x", &format!("mean of {label}"), &column.unit);
+    describe(engine, name, &label, &column);
+    let (unit, allan) = (column.difference_unit(), allan_points(&column.rows));
+    engine.store(name, TimedSeries { label, unit, interval, count: column.rows.len(), allan });
     Some(())
+}
+
+fn warn_correlated(engine: &Engine, fields: Fields<'_>, name: &str, rule: MeanRule, rows: &[f64]) {
+    if rule != MeanRule::Independent || rows.len() < 3 || !is_correlated(rows) {
+        return;
+    }
+    let message = format!(
+        "The readings of {name} depend on their neighbours (autocorrelation {}), so s/√n is no standard uncertainty of their mean.",
+        brief(at_distance(rows, 1))
+    );
+    let problem = Problem::new(Code::ReadingsCorrelated, message);
+    engine.complain(
+        problem.hint("Write `uncertainty: effective number`, or `least Allan deviation`."),
+        fields.place_of("uncertainty"),
+    );
+}
+
+/// Autocorrelation, effective number, and the Allan deviation with its limits.
+fn describe(engine: &Engine<'_>, name: &str, label: &str, column: &Column<'_>) {
+    let unit = column.difference_unit();
+    let one = Unit::one();
+    let mut named = vec![
+        ("autocorrelation".to_string(), "r_1".to_string(), format!("autocorrelation of neighbours in {label}"), &one),
+        ("effective_number".into(), "n_eff".into(), format!("effective number of {label}"), &one),
+    ];
+    let lengths: Vec<usize> = allan_points(&column.rows).iter().map(|point| point.length).collect();
+    for m in &lengths {
+        let over = format!("Allan deviation of {label} over {m} reading{}", if *m == 1 { "" } else { "s" });
+        let limit = |which: &str| format!("{which} {} % limit of the {over}", 100.0 * CONFIDENCE);
+        named.push((format!("allan_{m}"), format!("σ({m})"), over.clone(), &unit));
+        named.push((format!("allan_{m}.low"), format!("σ({m})_low"), limit("lower"), &unit));
+        named.push((format!("allan_{m}.high"), format!("σ({m})_high"), limit("upper"), &unit));
+    }
+    let outputs: Vec<(Dimension, Kind)> = named.iter().map(|(.., unit)| (unit.dimension(), Kind::Plain)).collect();
+    let rule = Statistic::new(outputs.len(), |columns| {
+        let rows = columns.first().copied().unwrap_or_default();
+        let points = allan_points(rows);
+        let of_points = points.iter().flat_map(|point| [point.deviation, point.low, point.high]);
+        [at_distance(rows, 1), effective_number(rows).0].into_iter().chain(of_points).collect()
+    });
+    let path = format!("{name}.description");
+    let made = engine.builder.estimator(Arc::new(rule), &[column.quantity], &outputs, &path, "description");
+    for (index, (quantity, (path, symbol, words, unit))) in made.unwrap_or_default().iter().zip(&named).enumerate() {
+        let method = if index < 2 { &METHOD.info } else { &allan_deviation::METHOD.info };
+        let _scope = engine.builder.scope("", Some(method));
+        quantity.result(path, symbol, words, unit);
+    }
 }
 
 fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {

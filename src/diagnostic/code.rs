@@ -48,6 +48,7 @@ codes! {
     DuplicateKey "duplicate_key" Fault "A field stands twice in one block.";
     DuplicateName "duplicate_name" Fault "Two blocks carry the same name.";
     ExclusionWithoutReason "exclusion_without_reason" Fault "An excluded cycle or run lacks a rule or a reason.";
+    Extrapolated "extrapolated" Warning "A fit is asked for outside the range of its points.";
     FewReadings "few_readings" Warning "A Type A evaluation rests on so few readings that its variance is unknown.";
     FieldMissing "field_missing" Fault "A block lacks a field it needs.";
     FieldUnknown "field_unknown" Fault "A block has a field its kind does not know.";

@@ -165,7 +165,8 @@ impl Table {
             .hint("Give each group its readings, two or more in some of them."))
     }
 
-    fn is_nested(&self) -> bool {
+    /// Whether the groups are groups of groups.
+    pub fn is_nested(&self) -> bool {
         self.inner.degrees_of_freedom > 0.0
     }
 

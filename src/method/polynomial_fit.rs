@@ -9,7 +9,7 @@
 //!             lack of fit: F = [SS_lack/(m − p)]/[SS_pure/(n − m)] over m different abscissae
 //! # Valid for abscissae whose uncertainty is far below that of the ordinates; it is propagated to first order.
 
-use super::statistic::{brief, probability};
+use super::statistic::{brief, probability, uncertainty_of_deviation};
 use super::{Method, WorkedExample, scaled};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
@@ -137,6 +137,21 @@ impl PolynomialFit {
         fit(&columns, y, self.weighting.weights().0.as_deref())
     }
 
+    /// The numbers that say how well the polynomial fits.
+    pub fn quality(&self, found: &Fit, x: &[f64], y: &[f64]) -> Quality {
+        let freedom = found.degrees_of_freedom;
+        let squares = sum(found.residuals.iter().map(|r| r * r));
+        let deviation = if freedom > 0.0 { (squares / freedom).sqrt() } else { f64::NAN };
+        let alike = self.weighting == Weighting::Equal && freedom > 0.0;
+        Quality {
+            deviation,
+            deviation_uncertainty: if alike { uncertainty_of_deviation(deviation, freedom) } else { 0.0 },
+            degrees_of_freedom: freedom,
+            chi_square: self.chi_square(found),
+            lack_of_fit: self.lack_of_fit(found, x, y),
+        }
+    }
+
     /// Chi-square of the residuals with its degrees of freedom and probability, where the uncertainties are known.
     pub fn chi_square(&self, found: &Fit) -> Option<Tested> {
         let (_, unit) = self.weighting.weights();
@@ -167,6 +182,26 @@ impl PolynomialFit {
         }
         let statistic = ((found.residual_sum_of_squares - pure).max(0.0) / lack) / (pure / replicates);
         Some(Tested { statistic, degrees: (lack, replicates), probability: f_upper(statistic, lack, replicates) })
+    }
+}
+
+/// How well a polynomial fits its points.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Quality {
+    /// √(Σ r_i²/(n − p)), in the unit of the ordinates; not a number without degrees of freedom.
+    pub deviation: f64,
+    /// Its own standard uncertainty where all points count alike, else zero.
+    pub deviation_uncertainty: f64,
+    pub degrees_of_freedom: f64,
+    pub chi_square: Option<Tested>,
+    pub lack_of_fit: Option<Tested>,
+}
+
+impl Quality {
+    /// Standard deviation of the residuals, chi-square, F of the lack of fit; not a number where there is none.
+    pub fn numbers(&self) -> [f64; 3] {
+        let statistic = |tested: Option<Tested>| tested.map_or(f64::NAN, |tested| tested.statistic);
+        [self.deviation, statistic(self.chi_square), statistic(self.lack_of_fit)]
     }
 }
 
