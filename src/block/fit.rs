@@ -239,7 +239,7 @@ fn same_dimension(
     if unit.dimension() == column.quantity.dimension() {
         return Some(());
     }
-    let message = format!("{field} is given in {}, but {owner} are in {}.", unit.text_or_one(), column.unit.text_or_one());
+    let message = format!("The field {field} is given in {}, but {owner} are in {}.", unit.text_or_one(), column.unit.text_or_one());
     engine.complain(
         Problem::new(Code::DimensionMismatch, message).hint("Correct the value and its unit, or the unit of the column."),
         place,
@@ -252,7 +252,7 @@ fn is_difference(engine: &Engine, unit: &Unit, field: &str, place: Place) -> Opt
     if !unit.is_celsius() {
         return Some(());
     }
-    let message = format!("{field} is given in °C, but an uncertainty is a difference of temperatures.");
+    let message = format!("The field {field} is given in °C, but an uncertainty is a difference of temperatures.");
     engine.complain(Problem::new(Code::KindMismatch, message).hint("Write it in K."), place);
     None
 }
@@ -385,7 +385,10 @@ fn warn_outside(engine: &Engine, name: &str, x: &Column<'_>, at: f64, place: Pla
     if (low..=high).contains(&at) {
         return;
     }
-    let shown = |value: f64| x.unit.decimal_from_si(value).map_or_else(|| value.to_string(), |text| text.plain_text());
+    let shown = |value: f64| {
+        let text = x.unit.decimal_from_si(value).map_or_else(|| value.to_string(), |decimal| decimal.plain_text());
+        if text.contains('.') { text.trim_end_matches('0').trim_end_matches('.').to_string() } else { text }
+    };
     let message = format!(
         "{name} is asked for at {}, but its points reach only from {} to {} {}.",
         shown(at),
