@@ -114,7 +114,11 @@ fn what_a_fit_refuses() {
     };
     let four = ("[20.1, 21.2, 22.3, 23.4]", "[1.1, 1.2, 1.4, 1.5]");
     refused(&line(four.0, "[1.1, 1.2, 1.4]", "degree: 1"), Code::DesignIncomplete, "4 abscissae, but 3 ordinates");
-    refused(&line("[20.1, 21.2]", "[1.1, 1.2]", "degree: 1"), Code::DesignIncomplete, "needs 3 points or more, found 2");
+    refused(
+        &line("[20.1, 21.2]", "[1.1, 1.2]", "degree: 1"),
+        Code::DesignIncomplete,
+        "needs 3 points or more, found 2",
+    );
     refused(&line(four.0, four.1, "degree: 1.5"), Code::OutOfRange, "1.5");
     refused(&line(four.0, four.1, "degree: 1\nabout: 20 hPa"), Code::DimensionMismatch, "about is given in hPa");
     refused(&line(four.0, four.1, "degree: 1\nu: 0.1 K\nu_is: absolute"), Code::DimensionMismatch, "u is given in K");
@@ -143,7 +147,9 @@ fn what_a_fit_refuses() {
 fn an_uncertainty_in_degrees_celsius_is_refused() {
     let block = "```yaml fit F\nx: {values: [1, 2, 3], unit: 1}\ny: {values: [20.1, 20.3, 20.4], unit: °C}\nu: 0.1 °C\nu_is: absolute\ndegree: 1\n```\n";
     refused(block, Code::KindMismatch, "difference of temperatures");
-    reduce(&block.replace("0.1 °C", "0.1 K"), |engine| near(value_and_u(engine, "F.c0").1, 0.1 * (7.0f64 / 3.0).sqrt(), 1e-9));
+    reduce(&block.replace("0.1 °C", "0.1 K"), |engine| {
+        near(value_and_u(engine, "F.c0").1, 0.1 * (7.0f64 / 3.0).sqrt(), 1e-9)
+    });
 }
 
 /// The degree by F tests: a parabola with a small scatter.
@@ -164,7 +170,10 @@ fn the_degree_is_chosen_by_the_stated_rule() {
         assert_eq!(graph.node(graph.find("F.c2").expect("c2")).name.as_ref().expect("named").unit.text(), "m s⁻²");
         let said: Vec<String> =
             graph.estimators[0].estimate.decisions.iter().map(|one| format!("{}: {}", one.what, one.decided)).collect();
-        assert!(said[0].starts_with("degree 2 against 1: F(1, 9) = ") && said[0].ends_with("significant, taken"), "{said:?}");
+        assert!(
+            said[0].starts_with("degree 2 against 1: F(1, 9) = ") && said[0].ends_with("significant, taken"),
+            "{said:?}"
+        );
         assert!(said[2].contains("by F tests at the level 0.99, degree 4 at most"), "{said:?}");
     });
 }
@@ -179,7 +188,9 @@ fn what_an_analysis_of_variance_refuses() {
     refused(&block(&format!("{groups}significance: 5")), Code::OutOfRange, "between 0 and 1");
     refused(&block("significance: 0.05"), Code::FieldMissing, "one of groups, days and summaries");
     refused(
-        &block("summaries:\n  - {mean: 1.2, count: 2.5, standard_deviation: 0.1}\n  - {mean: 1.2, count: 2, standard_deviation: 0.1}\nsignificance: 0.05"),
+        &block(
+            "summaries:\n  - {mean: 1.2, count: 2.5, standard_deviation: 0.1}\n  - {mean: 1.2, count: 2, standard_deviation: 0.1}\nsignificance: 0.05",
+        ),
         Code::OutOfRange,
         "2.5 readings",
     );

@@ -197,7 +197,11 @@ fn describe(
     let (own, number) = ((unit.dimension(), Kind::Plain), (Dimension::ONE, Kind::Plain));
     let inner = if table.is_nested() { "days" } else { "groups" };
     let mut named = vec![
-        ("within", "s_w", format!("standard deviation within {} of {label}", if table.is_nested() { "series" } else { inner })),
+        (
+            "within",
+            "s_w",
+            format!("standard deviation within {} of {label}", if table.is_nested() { "series" } else { inner }),
+        ),
         ("between", "s_b", format!("standard deviation between {inner} of {label}")),
         ("f_between", "F", format!("F between {inner} of {label}")),
     ];

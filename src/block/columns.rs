@@ -99,7 +99,6 @@ fn from_list<'e>(
     }
     let places = items.iter().map(|item| item.place).collect();
     let origin = Origin::ReadingList(places);
-    let draft =
-        InputDraft::new(path, symbol, &label, Kind::Plain, unit.clone(), Value::column(rows.clone()), origin);
+    let draft = InputDraft::new(path, symbol, &label, Kind::Plain, unit.clone(), Value::column(rows.clone()), origin);
     Some(Column { quantity: engine.builder.input(draft), unit, label, rows })
 }

@@ -96,7 +96,8 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
         );
     }
     let whole = |number: f64| number.fract() == 0.0 && (1.0..=12.0).contains(&number);
-    let largest = fields.mapping("search").and_then(|search| Some((search.number("largest")?, search.place_of("largest"))));
+    let largest =
+        fields.mapping("search").and_then(|search| Some((search.number("largest")?, search.place_of("largest"))));
     let degree = fields.number("degree").map(|degree| (degree, fields.place_of("degree"))).or(largest);
     if let Some((degree, place)) = degree.filter(|(degree, _)| !whole(*degree)) {
         let problem =
@@ -206,7 +207,10 @@ fn read_points<'e>(engine: &'e Engine<'e>, fields: Fields<'_>, name: &str) -> Op
             y.difference_unit().text()
         );
         let problem = Problem::new(Code::OutOfRange, message);
-        engine.complain(problem.hint("State what is known of the ordinate, or leave the point out."), fields.place_of("u"));
+        engine.complain(
+            problem.hint("State what is known of the ordinate, or leave the point out."),
+            fields.place_of("u"),
+        );
         return None;
     }
     Some(Points { x, y, uncertainties })
@@ -222,8 +226,7 @@ fn same_length(
     if first.len() == second.len() {
         return Some(());
     }
-    let message =
-        format!("{name} has {} {first_words}, but {} {second_words}.", first.len(), second.len());
+    let message = format!("{name} has {} {first_words}, but {} {second_words}.", first.len(), second.len());
     engine.complain(Problem::new(Code::DesignIncomplete, message).hint("Each point needs both."), place);
     None
 }
@@ -239,9 +242,14 @@ fn same_dimension(
     if unit.dimension() == column.quantity.dimension() {
         return Some(());
     }
-    let message = format!("The field {field} is given in {}, but {owner} are in {}.", unit.text_or_one(), column.unit.text_or_one());
+    let message = format!(
+        "The field {field} is given in {}, but {owner} are in {}.",
+        unit.text_or_one(),
+        column.unit.text_or_one()
+    );
     engine.complain(
-        Problem::new(Code::DimensionMismatch, message).hint("Correct the value and its unit, or the unit of the column."),
+        Problem::new(Code::DimensionMismatch, message)
+            .hint("Correct the value and its unit, or the unit of the column."),
         place,
     );
     None
@@ -258,13 +266,7 @@ fn is_difference(engine: &Engine, unit: &Unit, field: &str, place: Place) -> Opt
 }
 
 /// A number of the dimension of a column, in coherent SI units.
-fn number_like(
-    engine: &Engine<'_>,
-    fields: Fields<'_>,
-    field: &str,
-    column: &Column<'_>,
-    owner: &str,
-) -> Option<f64> {
+fn number_like(engine: &Engine<'_>, fields: Fields<'_>, field: &str, column: &Column<'_>, owner: &str) -> Option<f64> {
     let place = fields.place_of(field);
     match fields.given(field, Kind::Plain)? {
         Given::Stated { value, .. } => {

@@ -65,7 +65,8 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
         && value.value <= 0.0
     {
         let problem = Problem::new(Code::OutOfRange, format!("The time between readings is {}.", value.text));
-        complaints.add_at(problem.hint("Write the time from one reading to the next, such as `interval: 10 s`."), place);
+        complaints
+            .add_at(problem.hint("Write the time from one reading to the next, such as `interval: 10 s`."), place);
     }
 }
 
