@@ -2,24 +2,32 @@
 //!
 //! A method is ordinary arithmetic on graph handles; the same nodes give numbers, sensitivities and trials.
 
+pub mod abbe_offset;
 pub mod air_density;
 pub mod allan_deviation;
 pub mod analysis_of_variance;
 pub mod autocorrelation;
 pub mod averaging_cycle;
 pub mod campaign_mean;
+pub mod coil_current;
 pub mod combination;
 pub mod comparator_sensitivity;
+pub mod compensated_voltage;
 pub mod consistency;
 pub mod conventional_mass;
 pub mod instrument_correction;
+pub mod kibble_mass;
+pub mod laser_alignment;
 pub mod mass_on_day;
 pub mod measurement_model;
+pub mod parasitic_motion;
 pub mod polynomial_fit;
 pub mod profile_fit;
+pub mod residual_gas_buoyancy;
 pub mod statistic;
 pub mod straight_line;
 pub mod substitution;
+pub mod tare_fit;
 pub mod type_a_mean;
 pub mod volume;
 pub mod weighing_cycle;
@@ -72,23 +80,31 @@ impl WorkedExample {
 
 /// Every method, in order of name.
 pub static METHODS: &[&Method] = &[
+    &abbe_offset::METHOD,
     &air_density::METHOD,
     &allan_deviation::METHOD,
     &analysis_of_variance::METHOD,
     &autocorrelation::METHOD,
     &averaging_cycle::METHOD,
     &campaign_mean::METHOD,
+    &coil_current::METHOD,
     &combination::METHOD,
     &comparator_sensitivity::METHOD,
+    &compensated_voltage::METHOD,
     &consistency::METHOD,
     &conventional_mass::METHOD,
     &instrument_correction::METHOD,
+    &kibble_mass::METHOD,
+    &laser_alignment::METHOD,
     &mass_on_day::METHOD,
     &measurement_model::METHOD,
+    &parasitic_motion::METHOD,
     &polynomial_fit::METHOD,
     &profile_fit::METHOD,
+    &residual_gas_buoyancy::METHOD,
     &straight_line::METHOD,
     &substitution::METHOD,
+    &tare_fit::METHOD,
     &type_a_mean::METHOD,
     &volume::METHOD,
     &weighing_cycle::METHOD,
