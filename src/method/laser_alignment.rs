@@ -47,9 +47,13 @@ pub static METHOD: Method = Method {
 pub fn lengthening<'g>(theta_x: Quantity<'g>, theta_y: Quantity<'g>) -> Quantity<'g> {
     for theta in [theta_x, theta_y] {
         if theta.number().abs() > LARGEST_TILT {
-            let message =
-                format!("The beam is tilted by {:.3e} rad, more than the 3 mrad that the formula allows.", theta.number());
-            theta.builder().problem(Problem::new(Code::OutOfValidity, message).hint("Align the beam, or check the unit."));
+            let message = format!(
+                "The beam is tilted by {:.3e} rad, more than the 3 mrad that the formula allows.",
+                theta.number()
+            );
+            theta
+                .builder()
+                .problem(Problem::new(Code::OutOfValidity, message).hint("Align the beam, or check the unit."));
         }
     }
     1.0 + (theta_x.squared() + theta_y.squared()) * 0.5

@@ -50,7 +50,9 @@ pub static METHOD: Method = Method {
             given: "off 0.5001, on −0.4998, off 0.5003, on −0.4999, off 0.5002, on −0.4996, off 0.5005, order 1",
             quantity: "u(M)/kg",
             printed: "8.858e-5",
-            found: || example(&[0.5001, -0.4998, 0.5003, -0.4999, 0.5002, -0.4996, 0.5005], 1).own_covariance[0][0].sqrt(),
+            found: || {
+                example(&[0.5001, -0.4998, 0.5003, -0.4999, 0.5002, -0.4996, 0.5005], 1).own_covariance[0][0].sqrt()
+            },
         },
     ],
 };
