@@ -7,6 +7,8 @@ use libripens::block::realization::Campaign;
 use libripens::diagnostic::Code;
 use libripens::graph::{sensitivities, standard_uncertainty};
 use libripens::intake::MemoryIntake;
+use libripens::report::make_report;
+use libripens::report::parts::contents::{Met, rows};
 
 const LABORATORY: &str = "---\nformat: 1\nname: Test laboratory\naddress: Nowhere\ncoverage_probability: 95.45 %\ndecimal_marker: point\ndegrees_of_freedom: truncated\n---\n";
 
@@ -141,4 +143,62 @@ fn a_value_handed_in_is_frozen() {
     assert_eq!(codes("submitted: {date: 2041-05-20, mass: 1 kg + 8.0(9.0) µg}\n"), []);
     assert_eq!(codes("submitted: {date: 2041-05-20, mass: 1 kg + 8.3(9.0) µg}\n"), [Code::SubmittedValueChanged]);
     assert_eq!(codes("submitted: {date: 2041-05-20, mass: 1 kg + 8.0(8.0) µg}\n"), [Code::SubmittedValueChanged]);
+}
+
+const REPORT: &str = "---
+record: REP
+date: 2041-05-20
+report:
+  title: Realization of the kilogram
+  place: room 2
+  method: {id: NP-20, revision: \"1\"}
+  deviations: none
+  results: [C1.mass]
+  performed_by: duty metrologist
+---
+
+# Determinations
+
+{{ determinations(C1) }}
+
+{{ chart(C1) }}
+
+# Budget
+
+{{ relative_budget(C1.mass) }}
+
+The mass is {{ deviation(C1.mass, \"µg\") }}.
+
+# Contents
+
+{{ contents(C1) }}
+
+# Protocol
+
+{{ protocol(C1) }}
+";
+
+/// The parts of a realization report are typeset; a row of contents is stated, left out with its reason, or missing.
+#[test]
+fn the_parts_of_the_report_are_typeset_and_rows_checked() {
+    let more = "excluded:\n  - {result: D4.value, rule: R1, reason: door open}\nrejection_rule: R1\nhandling: Lift with a lined fork.\nleft_out:\n  - {row: R19, reason: no offset was used}\n";
+    let intake = campaign(&SIX, more);
+    let mut files = intake.files.clone();
+    files.insert("report.md".into(), REPORT.as_bytes().to_vec());
+    let intake = MemoryIntake::with(files);
+    let engine = Engine::read(&intake, None).expect("readable");
+    let report = make_report(&engine, "report.md");
+    assert!(!engine.complaints().has_faults(), "{:#?}", engine.complaints());
+    let report = report.expect("a report");
+    if let Some(path) = std::env::var_os("LIBRIPENS_SHOW") {
+        std::fs::write(path, &report.pdf).expect("a file to write");
+    }
+    let rows = rows(&engine, "C1").expect("rows");
+    assert_eq!(rows.len(), 20);
+    let met = |number: &str| &rows.iter().find(|row| row.number == number).expect("the row").met;
+    assert!(matches!(met("R6"), Met::Stated(words) if words.contains("5 used, 1 not used")));
+    assert!(matches!(met("R7"), Met::Stated(words) if words.contains("2041-01-01")));
+    assert!(matches!(met("R19"), Met::LeftOut(reason) if reason == "no offset was used"));
+    assert!(matches!(met("R14"), Met::Missing(_)) && matches!(met("R2"), Met::Missing(_)));
+    assert!(matches!(met("R16"), Met::Stated(words) if words.contains("consistent")));
 }

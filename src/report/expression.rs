@@ -129,6 +129,7 @@ static FUNCTIONS: &[Function] = &[
         usage: "expanded_uncertainty(W1.mass)",
         answer: |engine, asked| inline(&asked.figure(engine)?.expanded_uncertainty()),
     },
+    Function { name: "protocol", usage: "protocol(C1)", answer: protocol },
     Function { name: "readings", usage: "readings(W1)", answer: readings },
     Function { name: "relative_budget", usage: "relative_budget(C1.mass)", answer: relative_budget },
     Function {
@@ -458,6 +459,17 @@ fn campaign_part(
 ) -> Result<Inserted, Problem> {
     let name = asked.block_of(engine, &["realization"])?;
     block(part(engine, &name).ok_or_else(|| uncomputed(&name))?)
+}
+
+/// The table of a comparison's protocol, for one campaign or several.
+fn protocol(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
+    let first = asked.path()?;
+    let mut names = Vec::new();
+    for argument in asked.arguments {
+        let one = Asked { arguments: std::slice::from_ref(argument), results: asked.results };
+        names.push(one.block_of(engine, &["realization"])?);
+    }
+    block(parts::protocol::protocol_table(engine, &names).ok_or_else(|| uncomputed(first))?)
 }
 
 fn relative_budget(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {

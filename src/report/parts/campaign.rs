@@ -43,7 +43,7 @@ pub fn determinations_table(engine: &Engine, name: &str) -> Option<Markup> {
         "Status".into(),
     ];
     let caption = format!(
-        "Determinations: departure Δm from {}, standard uncertainty u_own from what a determination shares with no other, whole standard uncertainty u, weight w",
+        "Determinations: departure Δm from {}, own standard uncertainty (from what a determination shares with no other), whole standard uncertainty, weight",
         crate::report::prose_text::dress(&nominal_text, style)
     );
     let mut table = Table::new(caption, header);
@@ -109,8 +109,11 @@ pub fn determinations_chart(engine: &Engine, name: &str) -> Option<Markup> {
             .map(|run| (run.at.start, (run.value - nominal) * MICROGRAMS, Some(run.own_uncertainty * MICROGRAMS)))
             .collect()
     };
-    let mut series =
-        vec![Series { name: "determinations, with u_own".into(), points: points(false), style: Style::Points }];
+    let mut series = vec![Series {
+        name: "determinations, with own standard uncertainty".into(),
+        points: points(false),
+        style: Style::Points,
+    }];
     let left_out = points(true);
     if !left_out.is_empty() {
         series.push(Series { name: "not used".into(), points: left_out, style: Style::Points });
@@ -156,10 +159,14 @@ pub fn relative_budget(engine: &Engine, name: &str, result: NodeId) -> Option<Ma
         head("x_i", ""),
         "Type".into(),
         head("ν_i", ""),
-        head("u_i(m)", "µg"),
         Cell::Markup({
-            let mut made = symbol("u_i(m)");
-            made.push_text("/").push(&symbol("m")).push_text(" × 10⁹");
+            let mut made = symbol("u_i");
+            made.push_text("(").push(&symbol("m")).push_text(")/µg");
+            made
+        }),
+        Cell::Markup({
+            let mut made = symbol("u_i");
+            made.push_text("(").push(&symbol("m")).push_text(")/").push(&symbol("m")).push_text(" × 10⁹");
             made
         }),
         "Share/%".into(),

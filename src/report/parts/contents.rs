@@ -79,13 +79,13 @@ static RULES: &[Rule] = &[
         number: "R4",
         content: "measurand: in vacuum or air, at which temperature, pressure, time after pumping down",
         mend: "write temperature, pressure and after under measurand",
-        look: |_, fields, _| {
+        look: |engine, fields, _| {
             let measurand = fields.mapping("measurand")?;
             Some(format!(
                 "mass in {} at {}, {}; {}",
                 measurand.words("state"),
-                words(measurand, "temperature")?,
-                words(measurand, "pressure")?,
+                value(engine, measurand, "temperature")?,
+                value(engine, measurand, "pressure")?,
                 words(measurand, "after")?
             ))
         },
@@ -143,11 +143,11 @@ static RULES: &[Rule] = &[
         number: "R11",
         content: "covariances: between determinations, and with the previous result",
         mend: "write `earlier_result:` with its correlation",
-        look: |_, fields, _| {
+        look: |engine, fields, _| {
             let earlier = fields.mapping("earlier_result")?;
             Some(format!(
                 "through shared quantities; correlation {} with the result of {}",
-                earlier.words("correlation"),
+                value(engine, earlier, "correlation")?,
                 earlier.words("date")
             ))
         },
@@ -173,14 +173,14 @@ static RULES: &[Rule] = &[
         number: "R14",
         content: "drift of the primary standard since the realization, with u",
         mend: "write `drift:` with the day of use",
-        look: |_, fields, _| {
+        look: |engine, fields, _| {
             let drift = fields.mapping("drift")?;
-            Some(format!("{} until {}", drift.words("change"), drift.words("to")))
+            Some(format!("{} until {}", value(engine, drift, "change")?, drift.words("to")))
         },
     },
     Rule {
         number: "R15",
-        content: "result: value, u, ν_eff, U with k; relative value; departure from nominal",
+        content: "result: value, u, degrees of freedom, U with k; relative value; departure from nominal",
         mend: "see the other complaints",
         look: |engine, fields, _| relative_uncertainty(engine, fields).map(|_| "results".into()),
     },
@@ -199,9 +199,11 @@ static RULES: &[Rule] = &[
         number: "R17",
         content: "unit basis used for dissemination and its link",
         mend: "write `dissemination:` with basis and shift",
-        look: |_, fields, _| {
+        look: |engine, fields, _| {
             let dissemination = fields.mapping("dissemination")?;
-            Some(format!("{}, shift {}", dissemination.words("basis"), dissemination.words("shift")))
+            let basis = dissemination.words("basis");
+            let basis = engine.laboratory.basis_label(&basis);
+            Some(format!("{basis}, shift {}", value(engine, dissemination, "shift")?))
         },
     },
     Rule {
@@ -242,6 +244,11 @@ fn words(fields: Fields<'_>, name: &str) -> Option<String> {
     Some(fields.words(name)).filter(|words| !words.trim().is_empty())
 }
 
+/// A value as typed, in the style of the report.
+fn value(engine: &Engine, fields: Fields<'_>, name: &str) -> Option<String> {
+    Some(crate::report::prose_text::dress(&words(fields, name)?, engine.laboratory.style))
+}
+
 fn relative_uncertainty(engine: &Engine, fields: Fields<'_>) -> Option<f64> {
     let block = engine.blocks().values().find(|block| std::ptr::eq(block.fields().node, fields.node))?;
     let graph = engine.graph();
@@ -275,9 +282,9 @@ pub fn contents_table(engine: &Engine, name: &str) -> Option<Markup> {
     table.align = vec!["left", "left", "left"];
     for row in rows(engine, name)? {
         let stated = match row.met {
-            Met::Stated(words) => crate::report::prose_text::dress(&words, engine.laboratory.style),
+            Met::Stated(words) => words,
             Met::LeftOut(reason) => format!("left out: {reason}"),
-            Met::Missing(mend) => format!("missing: {mend}"),
+            Met::Missing(mend) => format!("missing: {}", mend.replace('`', "")),
         };
         table.rows.push(vec![row.number.into(), row.content.into(), stated.into()]);
     }

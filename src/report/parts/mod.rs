@@ -8,6 +8,7 @@ pub mod conditions;
 pub mod contents;
 pub mod distribution;
 pub mod excluded;
+pub mod protocol;
 pub mod readings;
 pub mod results;
 pub mod shares;
