@@ -11,6 +11,7 @@
 //! | `laboratory`       | what `laboratory.md` settles                                 |
 //! | `calibration`      | the calibration valid on the day of use                      |
 //! | `weight`           | what standards and items have in common                      |
+//! | `combining`        | what a combination of results decides                        |
 //! | the kinds          | `ambient`, `combined_result`, `comparator`, `comparison`, …  |
 
 pub mod ambient;
@@ -18,6 +19,7 @@ pub mod analysis_of_variance;
 pub mod calibration;
 pub mod columns;
 pub mod combined_result;
+pub mod combining;
 pub mod comparator;
 pub mod comparison;
 pub mod correlation;

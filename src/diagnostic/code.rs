@@ -67,6 +67,7 @@ codes! {
     ProseUnreadable "prose_unreadable" Fault "Prose uses something a report cannot typeset.";
     ReadingsCorrelated "readings_correlated" Warning "The uncertainty of a mean is claimed for independent readings, but they depend on their neighbours.";
     RecordUnreadable "record_unreadable" Fault "A record is no readable text, or its front matter is damaged.";
+    ResultsInconsistent "results_inconsistent" Warning "Results combined disagree by more than their uncertainties let expect.";
     RuleDated "rule_dated" Fault "A rule is dated after the data it judges.";
     SameValueTwice "same_value_twice" Warning "The same value and uncertainty stand in two blocks: one input or two?";
     ShapeMismatch "shape_mismatch" Fault "A field holds a list, a mapping or text where another is expected.";

@@ -10,6 +10,7 @@
 //! | `evaluate`      | the graph with some inputs displaced                                     |
 //! | `sensitivity`   | one reverse sweep per measurand                                          |
 //! | `uncertainty`   | standard uncertainty, covariance, effective degrees of freedom, coverage |
+//! | `joint`         | uncertainties, covariance and correlation of any set of results          |
 //! | `adaptive`      | trials until the results are stable                                       |
 //! | `tape`          | scalars as operations on rows of trials                                   |
 //! | `budget`        | the uncertainty budget                                                   |
@@ -26,6 +27,7 @@ mod estimator;
 mod evaluate;
 mod handle;
 mod interval;
+mod joint;
 mod monte_carlo;
 mod node;
 mod sensitivity;
@@ -41,6 +43,7 @@ pub use estimator::{Decision, Estimate, Estimator, EstimatorId, EstimatorNode};
 pub use evaluate::evaluate_displaced;
 pub use handle::Quantity;
 pub use interval::{Distributed, Histogram, Validation, distributed, histogram, numerical_tolerance};
+pub use joint::{Joint, joint};
 pub use monte_carlo::{Sampler, Trials, linearity_departure, propagate_distributions};
 pub use node::{
     Basis, CorrelatedInputs, Distribution, Evaluation, Graph, Input, MethodInfo, Name, Node, NodeId, Op, Origin,

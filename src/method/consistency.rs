@@ -15,7 +15,7 @@ use super::{Method, WorkedExample};
 use crate::diagnostic::Problem;
 use crate::graph::MethodInfo;
 use crate::numeric::distribution::chi_square_upper;
-use crate::numeric::linear::{Matrix, solve_symmetric};
+use crate::numeric::linear::{Matrix, cholesky, solve_symmetric};
 use crate::numeric::root::bisect;
 use crate::numeric::sum::{dot, sum};
 
@@ -115,6 +115,12 @@ pub fn generalised_weights(covariance: &[Vec<f64>]) -> Result<Vec<f64>, Problem>
     let solved = solve_symmetric(covariance, &vec![1.0; covariance.len()])?;
     let total = sum(solved.iter().copied());
     Ok(solved.iter().map(|weight| weight / total).collect())
+}
+
+/// The first result that those before it determine wholly, to within rounding; none when the covariance has an inverse.
+pub fn first_determined(covariance: &[Vec<f64>]) -> Option<usize> {
+    let leading = |size: usize| -> Matrix { covariance[..size].iter().map(|row| row[..size].to_vec()).collect() };
+    (0..covariance.len()).find(|index| cholesky(&leading(index + 1)).is_err())
 }
 
 /// Chi-square, its probability and the Birge ratio.
@@ -280,6 +286,8 @@ mod tests {
 
     #[test]
     fn results_that_are_one_are_refused() {
-        assert!(consistency(&[1.0, 1.0], &[vec![1.0, 1.0], vec![1.0, 1.0]]).is_err());
+        let twins = [vec![1.0, 1.0], vec![1.0, 1.0]];
+        assert!(consistency(&[1.0, 1.0], &twins).is_err());
+        assert_eq!((first_determined(&twins), first_determined(&diagonal(&SIX_U))), (Some(1), None));
     }
 }
