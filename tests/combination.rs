@@ -25,14 +25,18 @@ const SIX: Runs<'_> =
 impl Runs<'_> {
     fn record(&self, combination: &str) -> String {
         let model = |name: &str, inputs: String, equation: &str| {
-            format!("```yaml measurement-model {name}\nmeasurand: mass of the weight\nunit: µg\ninputs:\n{inputs}equation: {equation}\n```\n\n")
+            format!(
+                "```yaml measurement-model {name}\nmeasurand: mass of the weight\nunit: µg\ninputs:\n{inputs}equation: {equation}\n```\n\n"
+            )
         };
         // An uncertainty of zero is not stated.
         let input = |name: &str, value: f64, u: f64| match u {
             0.0 => format!("  {name}: {value} µg\n"),
             u => format!("  {name}: {{value: {value} µg, u: {u} µg}}\n"),
         };
-        let mut record = String::from("---\nrecord: T-1\ndate: 2041-03-12\n---\n\n```yaml rule EARLY\ntext: A run with an open door is left out.\ndate: 2041-01-10\n```\n\n```yaml rule LATE\ntext: A run far off is left out.\ndate: 2041-04-10\n```\n\n");
+        let mut record = String::from(
+            "---\nrecord: T-1\ndate: 2041-03-12\n---\n\n```yaml rule EARLY\ntext: A run with an open door is left out.\ndate: 2041-01-10\n```\n\n```yaml rule LATE\ntext: A run far off is left out.\ndate: 2041-04-10\n```\n\n",
+        );
         record += &model("B", input("b", 0.0, self.common), "b");
         for (index, (value, u)) in self.values.iter().zip(self.own).enumerate() {
             let inputs = input("x", *value, *u) + "  b: from B.value\n";
@@ -134,7 +138,9 @@ fn between_components_enter_as_type_a_with_n_minus_one() {
 #[test]
 fn agreeing_results_get_no_component_and_no_smaller_uncertainty() {
     let plain = THREE.reduce("weights: inverse_variance", |engine| uncertainty(engine, "C.value"));
-    for added in ["between: paule_mandel", "between: dersimonian_laird", "expansion: birge_ratio", "expansion: residuals"] {
+    for added in
+        ["between: paule_mandel", "between: dersimonian_laird", "expansion: birge_ratio", "expansion: residuals"]
+    {
         THREE.reduce(&format!("weights: inverse_variance\n{added}"), |engine| {
             assert_eq!(uncertainty(engine, "C.value"), plain, "{added}");
             assert!(number(engine, "C.birge_ratio") < 1.0);
@@ -215,7 +221,12 @@ fn what_cannot_be_combined_is_said_at_its_place() {
     for combination in ["weights: covariance", "weights: equal\nbetween: paule_mandel"] {
         check(&twins, combination, Code::CorrelationImpossible, "X2.value");
     }
-    check(&THREE, "weights: equal\nbetween: paule_mandel\nexpansion: birge_ratio", Code::DesignIncomplete, "birge_ratio");
+    check(
+        &THREE,
+        "weights: equal\nbetween: paule_mandel\nexpansion: birge_ratio",
+        Code::DesignIncomplete,
+        "birge_ratio",
+    );
     // Equal weights alone need no inverse; the test is then left out.
     twins.reduce("weights: equal", |engine| {
         assert!(codes(engine).is_empty() && engine.graph().find("C.chi_square").is_none());

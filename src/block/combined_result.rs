@@ -52,17 +52,9 @@ pub static KIND: BlockKind = BlockKind {
         Output { path: "value", meaning: "combined value of any other kind", unit: "" },
         Output { path: "chi_square", meaning: "chi-square of the results with their covariance", unit: "1" },
         Output { path: "reduced_chi_square", meaning: "chi-square over its degrees of freedom, n − 1", unit: "1" },
-        Output {
-            path: "chi_square_probability",
-            meaning: "probability of a larger chi-square by chance",
-            unit: "1",
-        },
+        Output { path: "chi_square_probability", meaning: "probability of a larger chi-square by chance", unit: "1" },
         Output { path: "birge_ratio", meaning: "square root of the reduced chi-square", unit: "1" },
-        Output {
-            path: "between",
-            meaning: "standard deviation between the results, where it was asked for",
-            unit: "",
-        },
+        Output { path: "between", meaning: "standard deviation between the results, where it was asked for", unit: "" },
         Output {
             path: "expansion_factor",
             meaning: "what the uncertainty was multiplied by, where it was asked for",
@@ -171,11 +163,11 @@ impl<'e> Work<'e> {
         let paths = self.fields.texts("results");
         let results: Vec<Quantity<'e>> =
             paths.iter().map(|path| self.engine.result(path)).collect::<Vec<_>>().into_iter().collect::<Option<_>>()?;
-        let entries: Vec<Entry> =
-            paths.into_iter().zip(results).map(|(path, result)| Entry { path, result }).collect();
+        let entries: Vec<Entry> = paths.into_iter().zip(results).map(|(path, result)| Entry { path, result }).collect();
         let Some(first) = entries.first() else {
             let problem = Problem::new(Code::DesignIncomplete, "There is no result to combine.");
-            self.engine.complain(problem.hint("List them: `results: [W1.mass, W2.mass]`."), self.fields.place_of("results"));
+            self.engine
+                .complain(problem.hint("List them: `results: [W1.mass, W2.mass]`."), self.fields.place_of("results"));
             return None;
         };
         let differs = |entry: &&Entry| {
@@ -192,11 +184,13 @@ impl<'e> Work<'e> {
             self.engine.complain(Problem::new(Code::KindMismatch, message), other.path.place);
             return None;
         }
-        let twice = |(index, entry): &(usize, &Entry)| entries[..*index].iter().any(|one| one.path.text == entry.path.text);
+        let twice =
+            |(index, entry): &(usize, &Entry)| entries[..*index].iter().any(|one| one.path.text == entry.path.text);
         if let Some((_, again)) = entries.iter().enumerate().find(twice) {
             let message = format!("{} stands twice among the results.", again.path.text);
             self.engine.complain(
-                Problem::new(Code::DesignIncomplete, message).hint("List each result once; weights are chosen by `weights:`."),
+                Problem::new(Code::DesignIncomplete, message)
+                    .hint("List each result once; weights are chosen by `weights:`."),
                 again.path.place,
             );
             return None;
@@ -272,7 +266,8 @@ impl<'e> Work<'e> {
         if let Some((entry, _)) = entries.iter().zip(u).find(|(_, u)| **u <= 0.0) {
             let message = format!("{} has no uncertainty, so it cannot be weighted or tested by it.", entry.path.text);
             self.engine.complain(
-                Problem::new(Code::UncertaintyMissing, message).hint("Write `weights: equal` alone, or state its uncertainty."),
+                Problem::new(Code::UncertaintyMissing, message)
+                    .hint("Write `weights: equal` alone, or state its uncertainty."),
                 entry.path.place,
             );
             return None;

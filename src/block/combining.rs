@@ -90,13 +90,7 @@ pub fn left_out(engine: &Engine, block: &Block, results: &[&Text]) -> Option<Vec
 }
 
 /// What a combination decided, in words.
-pub fn decisions(
-    names: &[&str],
-    found: &Combination,
-    choices: Choices,
-    shown: &Unit,
-    style: Style,
-) -> Vec<Decision> {
+pub fn decisions(names: &[&str], found: &Combination, choices: Choices, shown: &Unit, style: Style) -> Vec<Decision> {
     let mut made = vec![weighting(names, found, choices)];
     made.extend(negative_weights(names, found));
     made.push(test(found));
@@ -162,7 +156,9 @@ fn test(found: &Combination) -> Decision {
     };
     let verdict = match test.probability {
         p if p < DISAGREEMENT => "the results disagree by more than their uncertainties let expect",
-        p if p > TOO_CLOSE => "the results agree better than their uncertainties let expect: these may be overstated, or shared",
+        p if p > TOO_CLOSE => {
+            "the results agree better than their uncertainties let expect: these may be overstated, or shared"
+        }
         _ => "the results agree within their uncertainties",
     };
     let decided = format!(

@@ -34,20 +34,27 @@ pub static METHOD: Method = Method {
     },
     examples: &[
         WorkedExample {
-        source: "three 2017 values of h (10⁻³⁴ J s) with uncertainties 60, 165 and 89 in the last digits; weighted mean of a public meta-analysis test file",
-        given: "6.626070133(60), 6.62607005883(16.5e-8), 6.626069934(89)",
-        quantity: "weighted mean",
-        printed: "6.6260700698189",
-        found: || {
-            let builder = Builder::default();
-            let list = [6.626_070_133, 6.626_070_058_83, 6.626_069_934].map(|x| exact(&builder, x, "1"));
-            weighted(&list, &inverse_variance_weights(&[6.0e-8, 16.5e-8, 8.9e-8])).map_or(f64::NAN, Quantity::number)
+            source: "three 2017 values of h (10⁻³⁴ J s) with uncertainties 60, 165 and 89 in the last digits; weighted mean of a public meta-analysis test file",
+            given: "6.626070133(60), 6.62607005883(16.5e-8), 6.626069934(89)",
+            quantity: "weighted mean",
+            printed: "6.6260700698189",
+            found: || {
+                let builder = Builder::default();
+                let list = [6.626_070_133, 6.626_070_058_83, 6.626_069_934].map(|x| exact(&builder, x, "1"));
+                weighted(&list, &inverse_variance_weights(&[6.0e-8, 16.5e-8, 8.9e-8]))
+                    .map_or(f64::NAN, Quantity::number)
+            },
         },
-    },
-        shared("mean", "17.80", || runs_of_one_balance(|combination, x, _| sum(combination.weights.iter().zip(x).map(|(w, x)| w * x)))),
-        shared("u", "13.55", || runs_of_one_balance(|combination, _, v| bilinear(&combination.weights, v, &combination.weights).sqrt())),
+        shared("mean", "17.80", || {
+            runs_of_one_balance(|combination, x, _| sum(combination.weights.iter().zip(x).map(|(w, x)| w * x)))
+        }),
+        shared("u", "13.55", || {
+            runs_of_one_balance(|combination, _, v| bilinear(&combination.weights, v, &combination.weights).sqrt())
+        }),
         shared("weight of the third", "0.435", || runs_of_one_balance(|combination, _, _| combination.weights[2])),
-        shared("chi-square", "0.374", || runs_of_one_balance(|combination, _, _| combination.consistency.as_ref().map_or(f64::NAN, |c| c.chi_square))),
+        shared("chi-square", "0.374", || {
+            runs_of_one_balance(|combination, _, _| combination.consistency.as_ref().map_or(f64::NAN, |c| c.chi_square))
+        }),
     ],
 };
 
@@ -149,9 +156,10 @@ pub fn combine(results: &[f64], covariance: &[Vec<f64>], choices: Choices) -> Re
     };
     let expansion_factor = match (choices.expansion, &consistency) {
         (Expansion::BirgeRatio, Some(found)) => found.birge_ratio.max(1.0),
-        (Expansion::Residuals, Some(found)) => {
-            expansion_factor(&found.residuals, &(0..results.len()).map(|i| deviation(covariance, i)).collect::<Vec<_>>())
-        }
+        (Expansion::Residuals, Some(found)) => expansion_factor(
+            &found.residuals,
+            &(0..results.len()).map(|i| deviation(covariance, i)).collect::<Vec<_>>(),
+        ),
         _ => 1.0,
     };
     let propagated = bilinear(&weights, covariance, &weights);
@@ -242,7 +250,8 @@ mod tests {
     #[test]
     fn disagreement_enlarges_the_uncertainty() {
         let (x, v) = ([1.234, 1.25, 1.219, 1.241], diagonal(&[0.003, 0.005, 0.004, 0.006]));
-        let choices = Choices { expansion: Expansion::BirgeRatio, weights: Weights::InverseVariance, ..Choices::default() };
+        let choices =
+            Choices { expansion: Expansion::BirgeRatio, weights: Weights::InverseVariance, ..Choices::default() };
         let found = combine(&x, &v, choices).expect("combined");
         let u = (bilinear(&found.weights, &v, &found.weights) + found.added_variance).sqrt();
         assert!((u / 0.00594794610499 - 1.0).abs() < 1e-8, "{u}");
@@ -253,7 +262,9 @@ mod tests {
     fn weights_of_the_whole_covariance() {
         let (x, alone) = ([12.0, 25.0, 18.0], diagonal(&[14.0, 16.0, 12.0]));
         let shared: Matrix = alone.iter().map(|row| row.iter().map(|cell| cell + 121.0).collect()).collect();
-        let weights = |v: &[Vec<f64>], weights| combine(&x, v, Choices { weights, ..Choices::default() }).expect("combined").weights;
+        let weights = |v: &[Vec<f64>], weights| {
+            combine(&x, v, Choices { weights, ..Choices::default() }).expect("combined").weights
+        };
         let by_variance = weights(&alone, Weights::InverseVariance);
         for found in [weights(&alone, Weights::Covariance), weights(&shared, Weights::Covariance)] {
             assert!(found.iter().zip(&by_variance).all(|(a, b)| (a - b).abs() < 1e-12), "{found:?}");
@@ -264,7 +275,8 @@ mod tests {
 
     #[test]
     fn one_result_and_determined_results() {
-        let one = combine(&[3.0], &[vec![4.0]], Choices { between: Between::PauleMandel, ..Choices::default() }).expect("one");
+        let one = combine(&[3.0], &[vec![4.0]], Choices { between: Between::PauleMandel, ..Choices::default() })
+            .expect("one");
         assert_eq!((one.weights, one.consistency, one.added_variance), (vec![1.0], None, 0.0));
         let twins = vec![vec![1.0, 1.0], vec![1.0, 1.0]];
         assert!(combine(&[1.0, 1.0], &twins, Choices::default()).expect("equal weights").consistency.is_none());
