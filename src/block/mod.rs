@@ -29,6 +29,9 @@ pub mod field;
 pub mod fields;
 pub mod fit;
 pub mod given;
+pub mod gravity_at_mass;
+mod gravity_check;
+pub mod gravity_station;
 pub mod instrument;
 pub mod laboratory;
 pub mod measurement_model;
@@ -78,6 +81,7 @@ pub static KINDS: &[&BlockKind] = &[
     &correlation::KIND,
     &particulars::CUSTOMER,
     &fit::KIND,
+    &gravity_station::KIND,
     &instrument::KIND,
     &weight::ITEM,
     &weight::MASS_STANDARD,

@@ -40,6 +40,7 @@ codes! {
     CircularReference "circular_reference" Fault "Values refer to each other in a circle.";
     ColumnUnknown "column_unknown" Fault "A raw data file has no column with this head, or has it twice.";
     ConditionsOutOfSpan "conditions_out_of_span" Fault "Conditions are asked for at a time outside the logged span.";
+    ConventionMismatch "convention_mismatch" Fault "Values that must follow one convention follow two.";
     CorrelationImpossible "correlation_impossible" Fault "Stated correlations or covariances contradict each other.";
     DecimalComma "decimal_comma" Fault "A number is written with a decimal comma.";
     DesignIncomplete "design_incomplete" Fault "A cycle, series or list has not the number of readings its kind needs.";
@@ -55,6 +56,7 @@ codes! {
     FigureMissing "figure_missing" Fault "A report cites a result that does not exist or could not be computed.";
     FileMissing "file_missing" Fault "A file named in a record cannot be read.";
     FormatUnsupported "format_unsupported" Fault "The laboratory folder asks for another record format.";
+    GradientAssumed "gradient_assumed" Warning "The gradient of gravity was not measured; that of free air stands in.";
     KindMismatch "kind_mismatch" Fault "Two kinds of quantity that must not be mixed meet.";
     KindUnknown "kind_unknown" Fault "A measurement block is of a kind nobody knows.";
     MassInPrimary "mass_in_primary" Fault "A mass has weight in the result of a primary method and is not declared auxiliary.";

@@ -15,6 +15,7 @@ pub mod comparator_sensitivity;
 pub mod compensated_voltage;
 pub mod consistency;
 pub mod conventional_mass;
+pub mod gravity_transfer;
 pub mod instrument_correction;
 pub mod kibble_mass;
 pub mod laser_alignment;
@@ -93,6 +94,7 @@ pub static METHODS: &[&Method] = &[
     &compensated_voltage::METHOD,
     &consistency::METHOD,
     &conventional_mass::METHOD,
+    &gravity_transfer::METHOD,
     &instrument_correction::METHOD,
     &kibble_mass::METHOD,
     &laser_alignment::METHOD,
