@@ -16,10 +16,12 @@
 //! | [`normal`], [`student_t`] | the two distributions behind coverage factors |
 //! | [`distribution`] | the probabilities and quantiles the rest of the project asks for |
 //! | [`sampler`] | from a uniform draw to a draw of each input distribution |
+//! | `chacha` | the key stream behind the random streams |
 //! | `wide` | loops for the processor's widest registers, with the same bits |
 //! | [`stream`] | reproducible random streams, one per input and block of trials |
 
 pub mod beta;
+mod chacha;
 pub mod continued_fraction;
 pub mod distribution;
 pub mod elementary;

@@ -1,6 +1,6 @@
 //! The normal distribution.
 
-use super::elementary::{erfc, exp, ln, sqrt};
+use super::elementary::{erfc, exp, ln, ln_without_branch, sqrt};
 use std::f64::consts::{FRAC_1_SQRT_2, PI};
 
 /// Probability that a standard normal variable is at most `x`.
@@ -20,25 +20,36 @@ pub fn normal_quantile(p: f64) -> f64 {
     if p < 0.5 { -quantile_of_halves(0.5 - p, p) } else { quantile_of_halves(p - 0.5, 1.0 - p) }
 }
 
-/// [`normal_quantile`] of every number: the centre for all at once, the tails one by one after it.
+/// [`normal_quantile`] of every number.
 pub fn quantiles_in_place(numbers: &mut [f64]) {
     super::wide::widest!(fill_quantiles(numbers));
 }
 
+/// Numbers worked on at a time; a power of two.
+const PART: usize = 128;
+
+/// The centre for all numbers at once; then the near tails, gathered side by side; then what is left one by one.
 #[inline(always)]
 fn fill_quantiles(numbers: &mut [f64]) {
-    let mut centres = [0.0; 64];
-    for part in numbers.chunks_mut(64) {
-        let centres = &mut centres[..part.len()];
-        for (centre, p) in centres.iter_mut().zip(part.iter()) {
-            // Below one half the quantile is that of 1 - p with the other sign.
-            let half = if *p < 0.5 { 0.5 - p } else { p - 0.5 };
-            let size = half * quotient(&CENTRE, 0.180625 - half * half);
-            *centre = if *p < 0.5 { -size } else { size };
+    let (mut places, mut tails, mut found) = ([0; PART], [0.0; PART], [0.0; PART]);
+    for part in numbers.chunks_mut(PART) {
+        let mut count = 0;
+        for (place, p) in part.iter().enumerate() {
+            (places[count % PART], tails[count % PART]) = (place, *p);
+            count += usize::from(!((*p - 0.5).abs() <= CENTRAL));
         }
-        for (p, centre) in part.iter_mut().zip(centres.iter()) {
-            let half = if *p < 0.5 { 0.5 - *p } else { *p - 0.5 };
-            *p = if half <= 0.425 { *centre } else { normal_quantile(*p) };
+        for p in part.iter_mut() {
+            *p = centre(*p - 0.5);
+        }
+        // Whole registers of tails; those behind the last one are of no interest.
+        let whole = count.next_multiple_of(8);
+        for (found, p) in found[..whole].iter_mut().zip(&tails[..whole]) {
+            let (root, size) = near(p.min(1.0 - p));
+            let signed = if *p < 0.5 { -size } else { size };
+            *found = if root <= NEAR_END { signed } else { f64::NAN };
+        }
+        for ((place, p), found) in places[..count].iter().zip(&tails).zip(&found) {
+            part[*place] = if found.is_nan() { normal_quantile(*p) } else { *found };
         }
     }
 }
@@ -121,21 +132,43 @@ const FAR: Quotient = [
     ],
 ];
 
+/// Where the centre ends, by distance of the probability from one half.
+const CENTRAL: f64 = 0.425;
+
+/// Where the near tail ends, by r.
+const NEAR_END: f64 = 5.0;
+
 /// The quantile x >= 0 from both its halves: the probability between 0 and x, and that beyond x.
 ///
 /// Both are asked for, since each is exact where the other has lost digits.
 pub(super) fn quantile_of_halves(central: f64, tail: f64) -> f64 {
-    if central <= 0.425 {
-        return central * quotient(&CENTRE, 0.180625 - central * central);
+    if central <= CENTRAL {
+        return centre(central);
     }
     if tail == 0.0 {
         return f64::INFINITY;
     }
-    let root = sqrt(-ln(tail));
-    if root <= 5.0 { quotient(&NEAR, root - 1.6) } else { quotient(&FAR, root - 5.0) }
+    match near(tail) {
+        (root, size) if root <= NEAR_END => size,
+        _ => quotient(&FAR, sqrt(-ln(tail)) - NEAR_END),
+    }
+}
+
+/// The quantile in the centre, from the probability between 0 and it.
+#[inline(always)]
+fn centre(central: f64) -> f64 {
+    central * quotient(&CENTRE, 0.180625 - central * central)
+}
+
+/// r of a tail that is no subnormal number, and the quantile as long as that is near.
+#[inline(always)]
+fn near(tail: f64) -> (f64, f64) {
+    let root = sqrt(-ln_without_branch(tail));
+    (root, quotient(&NEAR, root - 1.6))
 }
 
 /// Value of a quotient of polynomials.
+#[inline(always)]
 fn quotient([numerator, denominator]: &Quotient, r: f64) -> f64 {
     let polynomial = |coefficients: &[f64; 8]| coefficients.iter().fold(0.0, |sum, coefficient| sum * r + coefficient);
     polynomial(numerator) / polynomial(denominator)
@@ -171,6 +204,21 @@ mod tests {
             let x = normal_quantile(p);
             // dp/p = x² dx/x, so the tail magnifies the last digit of x.
             prop_assert!((normal_cdf(x) / p - 1.0).abs() < 1e-15 * (4.0 + x * x));
+        }
+
+        #[test]
+        fn many_quantiles_are_those_of_single_numbers(exponents in proptest::collection::vec(-330.0f64..0.5, 1..300)) {
+            let numbers: Vec<f64> = exponents
+                .iter()
+                .flat_map(|exponent| [libm::exp10(*exponent), libm::exp10(exponent / 100.0), 1.0 - libm::exp10(exponent / 20.0)])
+                .chain([f64::NAN, 0.0, 1.0, 0.5, -0.25, 2.0])
+                .collect();
+            let mut many = numbers.clone();
+            quantiles_in_place(&mut many);
+            for (p, found) in numbers.iter().zip(&many) {
+                let single = normal_quantile(*p);
+                prop_assert!(found.to_bits() == single.to_bits() || found.is_nan() && single.is_nan(), "{p}: {found}, {single}");
+            }
         }
 
         #[test]

@@ -7,36 +7,60 @@
 //! # Source
 //! ChaCha with 8 rounds: D. J. Bernstein, ChaCha, a variant of Salsa20 (2008). SHA-256: FIPS 180-4.
 
+use super::chacha::{BATCH, Origin, uniform_draws};
 use super::normal::normal_quantile;
-use rand_chacha::ChaCha8Rng;
-use rand_chacha::rand_core::{RngCore, SeedableRng};
 use sha2::{Digest, Sha256};
 
 /// The constant in every key; reports list it among their assumptions.
 pub const SEED: &str = "libripens Monte Carlo 1";
 
+/// What selects the streams of one input, one for each block of trials.
+#[derive(Debug, Clone, Copy)]
+pub struct Key([u32; 8]);
+
+impl Key {
+    /// The key of the input with this path name.
+    pub fn new(path: &str) -> Self {
+        // The zero byte ends the constant, so that no path can lengthen it.
+        let hash: [u8; 32] = Sha256::new().chain_update(SEED).chain_update([0]).chain_update(path).finalize().into();
+        let word = |index: usize| std::array::from_fn(|byte| hash[4 * index + byte]);
+        Self(std::array::from_fn(|index| u32::from_le_bytes(word(index))))
+    }
+
+    /// The stream of the input in this block of trials.
+    pub fn stream(&self, block: u64) -> Stream {
+        let origin = Origin { key: self.0, stream: block };
+        Stream { origin, next: 0, waiting: [0.0; BATCH], taken: BATCH }
+    }
+}
+
 /// The draws of one input in one block of trials.
 #[derive(Debug, Clone)]
 pub struct Stream {
-    generator: ChaCha8Rng,
+    origin: Origin,
+    /// The next batch of draws.
+    next: u64,
+    /// Draws made and not yet given out, from number `taken` on.
+    waiting: [f64; BATCH],
+    taken: usize,
 }
 
 impl Stream {
     /// The stream of the input with this path name, in this block of trials.
     pub fn new(path: &str, block: u64) -> Self {
-        // The zero byte ends the constant, so that no path can lengthen it.
-        let key = Sha256::new().chain_update(SEED).chain_update([0]).chain_update(path).finalize();
-        let mut generator = ChaCha8Rng::from_seed(key.into());
-        generator.set_stream(block);
-        Self { generator }
+        Key::new(path).stream(block)
     }
 
     /// A draw from the open interval (0, 1): an odd multiple of 2^-53.
     ///
     /// Neither end can occur, u and 1 - u are equally likely, and both are exact.
     pub fn uniform(&mut self) -> f64 {
-        const STEP: f64 = 1.0 / (1u64 << 52) as f64;
-        ((self.generator.next_u64() >> 12) as f64 + 0.5) * STEP
+        if self.taken == BATCH {
+            uniform_draws(&self.origin, self.next, &mut self.waiting);
+            (self.next, self.taken) = (self.next + 1, 0);
+        }
+        self.taken += 1;
+        self.waiting[self.taken - 1]
     }
 
     /// A draw from the standard normal distribution, by its quantile.
@@ -46,35 +70,21 @@ impl Stream {
 
     /// Fills the slice with uniform draws from (0, 1).
     pub fn fill_uniform(&mut self, draws: &mut [f64]) {
-        let mut bytes = [0u8; 8 * WORDS];
-        for part in draws.chunks_mut(WORDS) {
-            let bytes = &mut bytes[..8 * part.len()];
-            self.generator.fill_bytes(bytes);
-            uniform_of_words(bytes, part);
+        let ready = (BATCH - self.taken).min(draws.len());
+        let (first, others) = draws.split_at_mut(ready);
+        first.fill_with(|| self.uniform());
+        let (batches, last) = others.as_chunks_mut::<BATCH>();
+        for batch in batches {
+            uniform_draws(&self.origin, self.next, batch);
+            self.next += 1;
         }
+        last.fill_with(|| self.uniform());
     }
 
     /// Fills the slice with standard normal draws.
     pub fn fill_normal(&mut self, draws: &mut [f64]) {
         self.fill_uniform(draws);
         super::normal::quantiles_in_place(draws);
-    }
-
-    /// Fills the slice with draws of the distribution whose quantile is given.
-    pub fn fill(&mut self, draws: &mut [f64], quantile: impl Fn(f64) -> f64) {
-        draws.iter_mut().for_each(|draw| *draw = quantile(self.uniform()));
-    }
-}
-
-/// Words drawn at a time.
-const WORDS: usize = 64;
-
-/// As [`Stream::uniform`], of eight bytes each.
-fn uniform_of_words(bytes: &[u8], draws: &mut [f64]) {
-    const STEP: f64 = 1.0 / (1u64 << 52) as f64;
-    for (word, draw) in bytes.chunks_exact(8).zip(draws) {
-        let word = u64::from_le_bytes([word[0], word[1], word[2], word[3], word[4], word[5], word[6], word[7]]);
-        *draw = ((word >> 12) as f64 + 0.5) * STEP;
     }
 }
 
@@ -105,9 +115,12 @@ mod tests {
     #[test]
     fn filling_draws_as_single_draws_do() {
         let (mut one, mut many) = (Stream::new("a", 7), Stream::new("a", 7));
-        let mut draws = [0.0; 5];
-        many.fill_normal(&mut draws);
-        assert_eq!(draws, [(); 5].map(|()| one.normal()));
+        for length in [5, 1, 300, 122, 128, 1000, 3] {
+            let mut draws = vec![0.0; length];
+            many.fill_normal(&mut draws);
+            let single: Vec<f64> = draws.iter().map(|_| one.normal()).collect();
+            assert_eq!(draws, single);
+        }
     }
 
     #[test]
