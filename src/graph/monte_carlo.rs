@@ -16,7 +16,8 @@ use super::tape::{CHUNK, Register, Row, Tape};
 use super::value::Value;
 use crate::diagnostic::Problem;
 use crate::numeric::linear::covariance_factor;
-use crate::numeric::{self, sampler, stream::Stream};
+use crate::numeric::stream::{Key, Stream};
+use crate::numeric::{self, sampler};
 use rayon::prelude::*;
 use std::collections::{BTreeMap, BTreeSet};
 
@@ -102,8 +103,7 @@ pub fn linearity_departure(graph: &Graph, boundary: NodeId) -> Result<f64, Probl
 struct Plan<'g> {
     graph: &'g Graph,
     tape: Tape,
-    /// Inputs drawn, by number, each with its row.
-    draws: Vec<(u32, Register)>,
+    draws: Vec<Draw<'g>>,
     groups: Vec<GroupDraw>,
     noise: Noise,
     noise_rows: Vec<Register>,
@@ -113,7 +113,7 @@ impl<'g> Plan<'g> {
     fn new(graph: &'g Graph, measurands: &[NodeId]) -> Result<Self, Problem> {
         let (needed, responses) = survey(graph, measurands);
         let noise = Noise::new(graph, responses.iter().map(|(id, (_, below))| (*id, &below.inputs)))?;
-        let mut tape = Tape::default();
+        let mut tape = Tape::new(uses(graph, &needed, &responses, measurands));
         let noise_rows: Vec<Register> = noise.nodes.iter().map(|_| tape.reserve()).collect();
         let mut draws = Vec::new();
         for id in &needed {
@@ -128,7 +128,8 @@ impl<'g> Plan<'g> {
             match &graph.node(*id).op {
                 Op::Input(number) if !graph.inputs[*number as usize].distribution.is_exact() => {
                     let register = tape.reserve();
-                    tape.bind(*id, register);
+                    let (centre, scale) = scaling(graph, *number);
+                    tape.bind(*id, centre, scale, register);
                     draws.push((*number, register));
                 }
                 Op::Input(_) | Op::Constant(_) => tape.fix(*id, graph.number(*id)),
@@ -137,7 +138,9 @@ impl<'g> Plan<'g> {
         }
         tape.ask(measurands);
         tape.settle();
-        let (draws, groups) = split_groups(graph, draws)?;
+        let (singles, groups) = split_groups(graph, draws)?;
+        let draws =
+            singles.into_iter().map(|(number, register)| Draw::new(graph, number, tape.row_of(register))).collect();
         Ok(Self { graph, tape, draws, groups, noise, noise_rows })
     }
 
@@ -149,17 +152,13 @@ impl<'g> Plan<'g> {
     /// The measurands in the trials of one block, written where they belong.
     fn block(&self, block: u64, rows: &mut [Row], values: &mut [&mut [f64]]) {
         let length = values.first().map_or(0, |values| values.len());
-        let mut streams: Vec<(Draw<'_>, usize)> = self
-            .draws
-            .iter()
-            .map(|(number, register)| (Draw::new(self.graph, *number, block), self.tape.row_of(*register)))
-            .collect();
+        let mut streams: Vec<Stream> = self.draws.iter().map(|draw| draw.key.stream(block)).collect();
         let mut group_streams: Vec<Stream> = self.groups.iter().map(|group| Stream::new(&group.path, block)).collect();
         let noise = self.noise.draw(self.graph, block, length);
         for start in (0..length).step_by(CHUNK) {
             let count = CHUNK.min(length - start);
-            for (draw, row) in &mut streams {
-                draw.fill(&mut rows[*row][..count]);
+            for (draw, stream) in self.draws.iter().zip(&mut streams) {
+                draw.fill(stream, &mut rows[draw.row][..count]);
             }
             for (group, stream) in self.groups.iter().zip(&mut group_streams) {
                 group.fill(self.graph, stream, rows, count, |register| self.tape.row_of(register));
@@ -227,7 +226,7 @@ impl GroupDraw {
                 let input = &graph.inputs[*number as usize];
                 let drawn: f64 = root.iter().zip(&normals).map(|(cell, normal)| cell * normal).sum();
                 let departure = input.distribution.standard_uncertainty() * scale * drawn;
-                rows[row_of(*register)][trial] = graph.number(input.node) + departure;
+                rows[row_of(*register)][trial] = departure;
             }
         };
         (0..count).for_each(&mut draw);
@@ -236,6 +235,25 @@ impl GroupDraw {
 
 /// Linear responses by node: weights of scalars, and what lies below.
 type Responses = BTreeMap<NodeId, (BTreeMap<NodeId, f64>, Sensitivities)>;
+
+/// How often each scalar is used.
+fn uses(
+    graph: &Graph,
+    needed: &BTreeSet<NodeId>,
+    responses: &Responses,
+    measurands: &[NodeId],
+) -> BTreeMap<NodeId, usize> {
+    let mut uses = BTreeMap::new();
+    let mut count = |id: NodeId| *uses.entry(id).or_insert(0) += 1;
+    measurands.iter().copied().for_each(&mut count);
+    for id in needed {
+        match responses.get(id) {
+            Some((scalars, _)) => scalars.keys().copied().for_each(&mut count),
+            None => graph.node(*id).op.operands().into_iter().for_each(&mut count),
+        }
+    }
+    uses
+}
 
 /// The scalars that the measurands need, in order, and the responses of those taken from columns.
 fn survey(graph: &Graph, measurands: &[NodeId]) -> (BTreeSet<NodeId>, Responses) {
@@ -261,31 +279,42 @@ fn is_boundary(graph: &Graph, id: NodeId) -> bool {
     matches!(graph.node(id).op, Op::Sum(_) | Op::Row(..) | Op::Output(..))
 }
 
-/// The draws of one input in one block.
+/// An input drawn by itself.
 struct Draw<'g> {
     input: &'g Input,
-    centre: f64,
-    stream: Stream,
+    key: Key,
+    row: usize,
+}
+
+/// What a row of draws of this input is multiplied by and added to: those of the plainest distributions are drawn in
+/// standard form, so that the scaling becomes part of the sums they enter.
+fn scaling(graph: &Graph, number: u32) -> (f64, f64) {
+    let input = &graph.inputs[number as usize];
+    let scale = match input.distribution {
+        _ if graph.correlated.iter().any(|group| group.position(number).is_some()) => 1.0,
+        Distribution::Normal { standard_uncertainty } => standard_uncertainty,
+        Distribution::Rectangular { half_width } => half_width,
+        _ => 1.0,
+    };
+    (graph.number(input.node), scale)
 }
 
 impl<'g> Draw<'g> {
-    fn new(graph: &'g Graph, number: u32, block: u64) -> Self {
+    fn new(graph: &'g Graph, number: u32, row: usize) -> Self {
         let input = &graph.inputs[number as usize];
         let path = graph.node(input.node).name.as_ref().map_or("", |name| name.path.as_str());
-        Self { input, centre: graph.number(input.node), stream: Stream::new(path, block) }
+        Self { input, key: Key::new(path), row }
     }
 
-    fn fill(&mut self, row: &mut [f64]) {
+    /// Draws in the form that [`scaling`] expects.
+    fn fill(&self, stream: &mut Stream, row: &mut [f64]) {
         match self.input.distribution {
-            Distribution::Normal { standard_uncertainty } => {
-                self.stream.fill_normal(row);
-                row.iter_mut().for_each(|value| *value = self.centre + standard_uncertainty * *value);
+            Distribution::Normal { .. } => stream.fill_normal(row),
+            Distribution::Rectangular { .. } => {
+                stream.fill_uniform(row);
+                row.iter_mut().for_each(|value| *value = 2.0 * *value - 1.0);
             }
-            Distribution::Rectangular { half_width } => {
-                self.stream.fill_uniform(row);
-                row.iter_mut().for_each(|value| *value = self.centre + half_width * (2.0 * *value - 1.0));
-            }
-            _ => row.iter_mut().for_each(|value| *value = self.centre + departure(self.input, &mut self.stream)),
+            _ => row.iter_mut().for_each(|value| *value = departure(self.input, stream)),
         }
     }
 }

@@ -1,8 +1,8 @@
 //! Scalars of the graph as a tape of operations on rows of trials.
 //!
 //! Only scalars that depend on something uncertain are on the tape; all others are numbers in it. Runs of sums,
-//! differences and products with numbers are gathered into one weighted sum. Rows are short enough to stay in the
-//! processor's cache, loops run without branches, and no fused multiply-add is used, so that the bits are the same
+//! differences and products with numbers are gathered into one weighted sum, up to where a sum has several users. Rows
+//! are short enough to stay in the processor's first cache, loops run without branches, and no fused multiply-add is used, so that the bits are the same
 //! on every machine.
 
 use super::node::*;
@@ -10,7 +10,7 @@ use super::value::apply_scalar;
 use std::collections::BTreeMap;
 
 /// Trials worked on at a time.
-pub(super) const CHUNK: usize = 256;
+pub(super) const CHUNK: usize = 128;
 
 /// A row of the working memory.
 pub(super) type Row = [f64; CHUNK];
@@ -108,6 +108,11 @@ impl Form {
         Form { constant: 0.0, terms: vec![(register, 1.0)] }
     }
 
+    /// constant + weight × row
+    fn scaled(constant: f64, register: Register, weight: f64) -> Form {
+        Form { constant, terms: vec![(register, weight)] }
+    }
+
     fn plus(&self, other: &Form, sign: f64) -> Form {
         let mut terms: BTreeMap<Register, f64> = self.terms.iter().copied().collect();
         for (register, weight) in &other.terms {
@@ -140,11 +145,18 @@ pub(super) struct Tape {
     places: Vec<usize>,
     rows: usize,
     forms: BTreeMap<NodeId, Form>,
+    /// How often each scalar is used.
+    uses: BTreeMap<NodeId, usize>,
     /// Registers of the measurands, or the number of one that nothing uncertain reaches.
     outputs: Vec<Result<Register, f64>>,
 }
 
 impl Tape {
+    /// An empty tape, told how often each scalar will be used.
+    pub fn new(uses: BTreeMap<NodeId, usize>) -> Tape {
+        Tape { uses, ..Tape::default() }
+    }
+
     /// A row that the caller fills: an input's draws, a response's noise.
     pub fn reserve(&mut self) -> Register {
         self.registers += 1;
@@ -201,9 +213,9 @@ impl Tape {
         self.rows = rows;
     }
 
-    /// The scalar `id` is the row `register`.
-    pub fn bind(&mut self, id: NodeId, register: Register) {
-        self.forms.insert(id, Form::row(register));
+    /// The scalar `id` is centre + scale × the row `register`.
+    pub fn bind(&mut self, id: NodeId, centre: f64, scale: f64, register: Register) {
+        self.forms.insert(id, Form::scaled(centre, register, scale));
     }
 
     /// The scalar `id` never changes.
@@ -254,9 +266,11 @@ impl Tape {
         self.forms.get(&id).cloned().unwrap_or_else(|| Form::number(f64::NAN))
     }
 
-    /// Long sums are worked out once, so that several users share them.
+    /// Sums used several times are worked out once for all their users, and so are long ones.
     fn keep(&mut self, id: NodeId, form: Form) {
-        let form = if form.terms.len() > LONGEST_SUM { Form::row(self.work_out(&form)) } else { form };
+        let is_shared = self.uses.get(&id).is_some_and(|uses| *uses > 1);
+        let most = if is_shared { 1 } else { LONGEST_SUM };
+        let form = if form.terms.len() > most { Form::row(self.work_out(&form)) } else { form };
         self.forms.insert(id, form);
     }
 
@@ -332,7 +346,8 @@ impl Tape {
     /// The same loops are compiled for wider registers too and chosen by what the processor has; each operation is
     /// rounded by itself in all of them, so the bits are the same.
     pub fn run(&self, rows: &mut [Row], length: usize) {
-        crate::numeric::wide::widest!(run_steps(&self.steps, rows, length));
+        let steps = self.steps.as_slice();
+        crate::numeric::wide::widest!(run_steps(steps: &[Step], rows: &mut [Row], length: usize));
     }
 
     /// Copies a measurand's trials out of the working memory.
@@ -378,24 +393,40 @@ fn unary(rows: &mut [Row], to: usize, a: usize, length: usize, f: impl Fn(f64) -
     }
 }
 
+/// Three terms a pass, so that most sums need one.
 #[inline(always)]
 fn weighted(rows: &mut [Row], to: usize, constant: f64, terms: &[(Register, f64)]) {
-    let Some((&(first, weight), others)) = terms.split_first() else { return rows[to].fill(constant) };
-    if let ([(second, other)], Ok([to, a, b])) =
-        (others, rows.get_disjoint_mut([to, first, others.first().map_or(to, |(row, _)| *row)]))
-    {
-        let _ = second;
-        for index in 0..CHUNK {
-            to[index] = constant + weight * a[index] + other * b[index];
-        }
-        return;
+    let (first, others) = terms.split_at(terms.len().min(3));
+    add_terms(rows, to, |_| constant, first);
+    for terms in others.chunks(3) {
+        add_terms(rows, to, |sum| sum, terms);
     }
-    unary(rows, to, first, CHUNK, |a| constant + weight * a);
-    for &(row, weight) in others {
-        if let Ok([to, a]) = rows.get_disjoint_mut([to, row]) {
-            for index in 0..CHUNK {
-                to[index] += weight * a[index];
+}
+
+#[inline(always)]
+fn add_terms(rows: &mut [Row], to: usize, start: impl Fn(f64) -> f64, terms: &[(Register, f64)]) {
+    match *terms {
+        [(a, p)] => {
+            if let Ok([to, a]) = rows.get_disjoint_mut([to, a]) {
+                for index in 0..CHUNK {
+                    to[index] = start(to[index]) + p * a[index];
+                }
             }
         }
+        [(a, p), (b, q)] => {
+            if let Ok([to, a, b]) = rows.get_disjoint_mut([to, a, b]) {
+                for index in 0..CHUNK {
+                    to[index] = start(to[index]) + p * a[index] + q * b[index];
+                }
+            }
+        }
+        [(a, p), (b, q), (c, r)] => {
+            if let Ok([to, a, b, c]) = rows.get_disjoint_mut([to, a, b, c]) {
+                for index in 0..CHUNK {
+                    to[index] = start(to[index]) + p * a[index] + q * b[index] + r * c[index];
+                }
+            }
+        }
+        _ => {}
     }
 }

@@ -28,7 +28,7 @@ type Words = [[u32; LANES]; 16];
 
 /// Batch number `batch` of the key stream as uniform draws, one for each word of 64 bits, the low half first.
 pub(super) fn uniform_draws(origin: &Origin, batch: u64, draws: &mut [f64; BATCH]) {
-    super::wide::widest!(fill(origin, batch, draws));
+    super::wide::widest!(fill(origin: &Origin, batch: u64, draws: &mut [f64; BATCH]));
 }
 
 #[inline(always)]

@@ -22,7 +22,7 @@ pub fn normal_quantile(p: f64) -> f64 {
 
 /// [`normal_quantile`] of every number.
 pub fn quantiles_in_place(numbers: &mut [f64]) {
-    super::wide::widest!(fill_quantiles(numbers));
+    super::wide::widest!(fill_quantiles(numbers: &mut [f64]));
 }
 
 /// Numbers worked on at a time; a power of two.

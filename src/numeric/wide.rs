@@ -4,17 +4,28 @@
 //! enabled, and sums keep their written order. So the bits are the same on every machine.
 
 /// Calls a function marked `#[inline(always)]` in the widest form that the processor has.
+///
+/// The arguments are written with their types, because each form is a function of its own: what it calls is compiled
+/// for wider registers only where it becomes part of it, closures and generic functions included.
 macro_rules! widest {
-    ($function:ident($($argument:expr),* $(,)?)) => {{
+    ($function:ident($($argument:ident: $type:ty),* $(,)?)) => {{
         #[cfg(target_arch = "x86_64")]
         {
+            #[target_feature(enable = "avx512f")]
+            fn with_avx512($($argument: $type),*) {
+                $function($($argument),*);
+            }
+            #[target_feature(enable = "avx2")]
+            fn with_avx2($($argument: $type),*) {
+                $function($($argument),*);
+            }
             if std::is_x86_feature_detected!("avx512f") {
                 // SAFETY: the feature was detected just above.
-                return unsafe { crate::numeric::wide::with_avx512(|| $function($($argument),*)) };
+                return unsafe { with_avx512($($argument),*) };
             }
             if std::is_x86_feature_detected!("avx2") {
                 // SAFETY: the feature was detected just above.
-                return unsafe { crate::numeric::wide::with_avx2(|| $function($($argument),*)) };
+                return unsafe { with_avx2($($argument),*) };
             }
         }
         $function($($argument),*)
@@ -22,23 +33,3 @@ macro_rules! widest {
 }
 
 pub(crate) use widest;
-
-/// Runs a closure compiled for 512-bit registers.
-///
-/// # Safety
-/// The processor must have AVX-512F.
-#[cfg(target_arch = "x86_64")]
-#[target_feature(enable = "avx512f")]
-pub(crate) unsafe fn with_avx512<T>(work: impl FnOnce() -> T) -> T {
-    work()
-}
-
-/// Runs a closure compiled for 256-bit registers.
-///
-/// # Safety
-/// The processor must have AVX2.
-#[cfg(target_arch = "x86_64")]
-#[target_feature(enable = "avx2")]
-pub(crate) unsafe fn with_avx2<T>(work: impl FnOnce() -> T) -> T {
-    work()
-}
