@@ -67,8 +67,8 @@ fn blocks(origin: &Origin, batch: u64, words: &mut Words) {
         let counter = low | lane as u32;
         let start = [c0, c1, c2, c3, k0, k1, k2, k3, k4, k5, k6, k7, counter, high, stream_low, stream_high];
         let mixed = double_round(double_round(double_round(double_round(start))));
-        for word in 0..16 {
-            words[word][lane] = mixed[word].wrapping_add(start[word]);
+        for (word, (mixed, start)) in words.iter_mut().zip(mixed.iter().zip(&start)) {
+            word[lane] = mixed.wrapping_add(*start);
         }
     }
 }

@@ -36,7 +36,8 @@ fn fill_quantiles(numbers: &mut [f64]) {
         let mut count = 0;
         for (place, p) in part.iter().enumerate() {
             (places[count % PART], tails[count % PART]) = (place, *p);
-            count += usize::from(!((*p - 0.5).abs() <= CENTRAL));
+            let is_central = (*p - 0.5).abs() <= CENTRAL;
+            count += usize::from(!is_central);
         }
         for p in part.iter_mut() {
             *p = centre(*p - 0.5);
