@@ -9,7 +9,7 @@ use super::{BlockKind, Output};
 use crate::diagnostic::{Code, Complaints, Problem, nearest};
 use crate::graph::{Distribution, Estimate, Estimator, InputDraft, Origin, Quantity, Value};
 use crate::intake::Place;
-use crate::method::{exact, measurement_model::METHOD};
+use crate::method::{constants, measurement_model::METHOD};
 use crate::numeric::sum::{dot, mean};
 use crate::quantity::{Kind, Unit, parse_number};
 use crate::record::{Entry, Node};
@@ -71,15 +71,6 @@ pub static KIND: BlockKind = BlockKind {
         let _ = Model { engine: shorten(engine), block }.build();
     },
 };
-
-/// Exact constants of the SI by name: value, unit, words.
-const CONSTANTS: &[(&str, f64, &str, &str)] = &[
-    ("N_A", 6.022_140_76e23, "mol-1", "Avogadro constant"),
-    ("c", 299_792_458.0, "m/s", "speed of light in vacuum"),
-    ("e", 1.602_176_634e-19, "C", "elementary charge"),
-    ("h", 6.626_070_15e-34, "J s", "Planck constant"),
-    ("k_B", 1.380_649e-23, "J/K", "Boltzmann constant"),
-];
 
 fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     let unit_text = fields.text("unit");
@@ -348,7 +339,7 @@ impl<'e> Model<'e> {
     fn evaluate(&self, text: &str, place: Place, known: &BTreeMap<String, Quantity<'e>>) -> Option<Quantity<'e>> {
         let part = self.engine.keep(parse_equation(text), place)?;
         for (name, range) in names(&part) {
-            let is_constant = CONSTANTS.iter().any(|(constant, ..)| *constant == name) || is_derived(&name);
+            let is_constant = is_constant(&name);
             if !known.contains_key(&name) && !is_constant {
                 let problem = Problem::new(
                     Code::UndefinedReference,
@@ -402,35 +393,17 @@ impl<'e> Model<'e> {
 
     fn constant(&self, name: &str) -> Quantity<'e> {
         let builder = &self.engine.builder;
-        let exactly = |name: &str| {
-            let found = CONSTANTS.iter().find(|(constant, ..)| *constant == name);
-            found.map(|(name, value, unit_text, words)| {
-                let unit = crate::method::unit(unit_text);
-                builder.constant(
-                    &format!("constant.{name}"),
-                    name,
-                    words,
-                    *value,
-                    &unit,
-                    Kind::Plain,
-                    "SI Brochure, 9th edition, 2.2: exact",
-                )
-            })
-        };
-        let of = |name: &str| exactly(name).unwrap_or_else(|| builder.number(f64::NAN));
         match name {
             "π" | "pi" => builder.number(std::f64::consts::PI),
-            "R" => of("N_A") * of("k_B"),
-            "K_J" => 2.0 * of("e") / of("h"),
-            "R_K" => of("h") / of("e").squared(),
-            name => exactly(name).unwrap_or_else(|| exact(builder, f64::NAN, "1")),
+            name => constants::known(builder, name),
         }
     }
 }
 
 /// Constants made of the defining ones, and π.
-fn is_derived(name: &str) -> bool {
-    ["π", "pi", "R", "K_J", "R_K"].contains(&name)
+fn is_constant(name: &str) -> bool {
+    let defining = constants::CONSTANTS.iter().map(|constant| constant.symbol);
+    defining.chain(constants::DERIVED.iter().copied()).chain(["π", "pi"]).any(|constant| constant == name)
 }
 
 fn call<'g>(function: &str, x: Quantity<'g>) -> Quantity<'g> {

@@ -16,6 +16,7 @@
 
 pub mod ambient;
 pub mod analysis_of_variance;
+pub mod apparatus;
 pub mod calibration;
 pub mod columns;
 pub mod combined_result;
@@ -34,11 +35,15 @@ mod gravity_check;
 pub mod gravity_station;
 pub mod instrument;
 pub mod laboratory;
+pub mod laser;
 pub mod measurement_model;
 pub mod particulars;
 pub mod raw_data;
 pub mod realization;
 pub mod series_in_time;
+pub mod time_base;
+pub mod units_of_1990;
+pub mod voltage_standard;
 pub mod weighing;
 pub mod weight;
 
@@ -75,6 +80,7 @@ pub struct BlockKind {
 pub static KINDS: &[&BlockKind] = &[
     &ambient::KIND,
     &analysis_of_variance::KIND,
+    &apparatus::KIND,
     &combined_result::KIND,
     &comparator::KIND,
     &comparison::KIND,
@@ -84,6 +90,7 @@ pub static KINDS: &[&BlockKind] = &[
     &gravity_station::KIND,
     &instrument::KIND,
     &weight::ITEM,
+    &laser::KIND,
     &weight::MASS_STANDARD,
     &measurement_model::KIND,
     &particulars::PERSON,
@@ -91,6 +98,8 @@ pub static KINDS: &[&BlockKind] = &[
     &realization::KIND,
     &particulars::RULE,
     &series_in_time::KIND,
+    &time_base::KIND,
+    &voltage_standard::KIND,
 ];
 
 /// The kind with this name.

@@ -48,6 +48,7 @@ codes! {
     DoubleUncertainty "double_uncertainty" Fault "A reading carries its own uncertainty beside that of its instrument.";
     DuplicateKey "duplicate_key" Fault "A field stands twice in one block.";
     DuplicateName "duplicate_name" Fault "Two blocks carry the same name.";
+    ElectricBasis "electric_basis" Fault "A voltage or resistance is in the electric units of 1990 without a stated conversion.";
     ExclusionWithoutReason "exclusion_without_reason" Fault "An excluded cycle or run lacks a rule or a reason.";
     Extrapolated "extrapolated" Warning "A fit is asked for outside the range of its points.";
     FewReadings "few_readings" Warning "A Type A evaluation rests on so few readings that its variance is unknown.";

@@ -9,7 +9,7 @@
 //!     U_null  reading of the null meter                        V
 //! # Valid for a null meter in its linear range and an array on the step that is written.
 
-use super::{Method, WorkedExample, exact};
+use super::{Method, WorkedExample, constants, exact};
 use crate::graph::{Builder, MethodInfo, Quantity};
 
 /// The registry's line.
@@ -34,8 +34,7 @@ pub static METHOD: Method = Method {
         printed: "1.083383615660",
         found: || {
             let b = Builder::default();
-            let k_j = 2.0 * exact(&b, 1.602_176_634e-19, "C") / exact(&b, 6.626_070_15e-34, "J s");
-            let step = exact(&b, 74.96e9, "Hz") / k_j;
+            let step = exact(&b, 74.96e9, "Hz") / constants::known(&b, "K_J");
             compensated_voltage(b.number(6984.0), step, b.number(1.000_048_2), exact(&b, 829.8759e-6, "V")).number()
         },
     }],

@@ -20,7 +20,7 @@
 //! e cancels, h does not: u(h) = 0 makes this a realization.
 //! # Valid for coil and artefact in one vacuum, and one geometric factor in both phases but for d.
 
-use super::{Method, WorkedExample, exact};
+use super::{Method, WorkedExample, constants, exact};
 use crate::graph::{Builder, MethodInfo, Quantity};
 
 /// The registry's line.
@@ -83,10 +83,9 @@ pub fn mass<'g>(apparent: Quantity<'g>, buoyancy: Quantity<'g>, d_mag: Quantity<
 
 fn ideal_example() -> f64 {
     let b = Builder::default();
-    let (h, e) = (exact(&b, 6.626_070_15e-34, "J s"), exact(&b, 1.602_176_634e-19, "C"));
-    let step = exact(&b, 74.96e9, "Hz") * h / (2.0 * e);
+    let step = exact(&b, 74.96e9, "Hz") / constants::known(&b, "K_J");
     let geometric_factor = 6984.0 * step / exact(&b, 2e-3, "m/s");
-    let resistance = 0.007_748_117 * h / (2.0 * e.squared());
+    let resistance = 0.007_748_117 * constants::known(&b, "R_K") / 2.0;
     let zero = b.number(0.0);
     let y = balance_reading(&Balance {
         effective_current: 11_688.0 * step / resistance,

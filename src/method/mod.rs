@@ -14,9 +14,13 @@ pub mod combination;
 pub mod comparator_sensitivity;
 pub mod compensated_voltage;
 pub mod consistency;
+pub mod constants;
 pub mod conventional_mass;
+pub mod conversion_1990;
 pub mod gravity_transfer;
 pub mod instrument_correction;
+pub mod interferometer_velocity;
+pub mod josephson_voltage;
 pub mod kibble_mass;
 pub mod laser_alignment;
 pub mod mass_on_day;
@@ -94,8 +98,11 @@ pub static METHODS: &[&Method] = &[
     &compensated_voltage::METHOD,
     &consistency::METHOD,
     &conventional_mass::METHOD,
+    &conversion_1990::METHOD,
     &gravity_transfer::METHOD,
     &instrument_correction::METHOD,
+    &interferometer_velocity::METHOD,
+    &josephson_voltage::METHOD,
     &kibble_mass::METHOD,
     &laser_alignment::METHOD,
     &mass_on_day::METHOD,

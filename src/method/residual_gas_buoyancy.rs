@@ -10,7 +10,7 @@
 //!     r  refractivity                              K/Pa
 //! # Valid for p ≤ 1000 Pa, where the departure from the ideal gas stays below 1e-5 of the effect.
 
-use super::{Method, WorkedExample, exact};
+use super::{Method, WorkedExample, constants, exact};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Builder, MethodInfo, Quantity};
 
@@ -62,9 +62,7 @@ pub static METHOD: Method = Method {
 /// Density of the gas. A pressure beyond the validity leaves a problem.
 pub fn density<'g>(p: Quantity<'g>, t: Quantity<'g>, m: Quantity<'g>) -> Quantity<'g> {
     refuse_beyond(p);
-    let b = p.builder();
-    let r = exact(b, 6.022_140_76e23, "/mol") * exact(b, 1.380_649e-23, "J/K");
-    p * m / (r * t)
+    p * m / (constants::known(p.builder(), "R") * t)
 }
 
 /// Refractive index of the gas. A pressure beyond the validity leaves a problem.
