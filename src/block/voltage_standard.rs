@@ -58,7 +58,7 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     check_dimension(fields, "residual", "1", true, complaints);
     if let Some(Given::Stated { value, place }) = fields.given("frequency", Kind::Plain)
         && value.unit.dimension() == unit("Hz").dimension()
-        && !(value.value > 0.0)
+        && value.value <= 0.0
     {
         let problem =
             Problem::new(Code::OutOfRange, format!("The microwave frequency {} is not positive.", value.text));
