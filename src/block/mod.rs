@@ -40,6 +40,7 @@ pub mod measurement_model;
 pub mod particulars;
 pub mod raw_data;
 pub mod realization;
+pub mod resistor;
 pub mod series_in_time;
 pub mod time_base;
 pub mod units_of_1990;
@@ -96,6 +97,7 @@ pub static KINDS: &[&BlockKind] = &[
     &particulars::PERSON,
     &raw_data::KIND,
     &realization::KIND,
+    &resistor::KIND,
     &particulars::RULE,
     &series_in_time::KIND,
     &time_base::KIND,

@@ -33,6 +33,7 @@ macro_rules! codes {
 codes! {
     BareNumber "bare_number" Fault "A number stands without the unit its quantity needs.";
     BasisMismatch "basis_mismatch" Fault "Two masses on different unit bases meet in one sum.";
+    CalibrationsOneSided "calibrations_one_sided" Fault "A resistor was used outside the dates of its calibrations without a stated hold.";
     CellUnreadable "cell_unreadable" Fault "A cell of a raw data file is empty, no number, or not finite.";
     CertificateExpired "certificate_expired" Fault "A certificate was past its due date on the day of use.";
     CertificateMissing "certificate_missing" Fault "No calibration was valid on the day of use.";

@@ -28,7 +28,9 @@ pub mod measurement_model;
 pub mod parasitic_motion;
 pub mod polynomial_fit;
 pub mod profile_fit;
+pub mod quantum_hall_resistance;
 pub mod residual_gas_buoyancy;
+pub mod resistor_line;
 pub mod statistic;
 pub mod straight_line;
 pub mod substitution;
@@ -110,7 +112,9 @@ pub static METHODS: &[&Method] = &[
     &parasitic_motion::METHOD,
     &polynomial_fit::METHOD,
     &profile_fit::METHOD,
+    &quantum_hall_resistance::METHOD,
     &residual_gas_buoyancy::METHOD,
+    &resistor_line::METHOD,
     &straight_line::METHOD,
     &substitution::METHOD,
     &tare_fit::METHOD,
