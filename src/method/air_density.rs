@@ -177,7 +177,7 @@ fn saturation_pressure<'g>(builder: &'g Builder, big_t: Quantity<'g>) -> Quantit
 }
 
 /// Z = 1 − (p/T)[a0 + a1 t + a2 t² + (b0 + b1 t) x_v + (c0 + c1 t) x_v²] + (p/T)² (d + e x_v²)
-fn compressibility<'g>(
+pub(super) fn compressibility<'g>(
     builder: &'g Builder,
     p: Quantity<'g>,
     big_t: Quantity<'g>,

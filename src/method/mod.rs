@@ -29,6 +29,8 @@ pub mod parasitic_motion;
 pub mod polynomial_fit;
 pub mod profile_fit;
 pub mod quantum_hall_resistance;
+pub mod refractive_index_ciddor;
+pub mod refractive_index_edlen;
 pub mod residual_gas_buoyancy;
 pub mod resistor_line;
 pub mod statistic;
@@ -113,6 +115,8 @@ pub static METHODS: &[&Method] = &[
     &polynomial_fit::METHOD,
     &profile_fit::METHOD,
     &quantum_hall_resistance::METHOD,
+    &refractive_index_ciddor::METHOD,
+    &refractive_index_edlen::METHOD,
     &residual_gas_buoyancy::METHOD,
     &resistor_line::METHOD,
     &straight_line::METHOD,
