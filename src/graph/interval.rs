@@ -7,6 +7,7 @@
 //! Variances are sums of squared departures from the mean, never a difference of large squares.
 
 use crate::numeric::sum::{experimental_standard_deviation, mean};
+use rayon::slice::ParallelSliceMut;
 
 /// What a run says of one measurand, in its coherent SI unit.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -25,7 +26,8 @@ pub struct Distributed {
 pub fn distributed(values: &mut [f64], probability: f64) -> Distributed {
     let (estimate, standard_uncertainty) =
         (mean(values).unwrap_or(f64::NAN), experimental_standard_deviation(values).unwrap_or(0.0));
-    values.sort_unstable_by(f64::total_cmp);
+    // Values that compare equal have the same bits, so threads do not show in the order.
+    values.par_sort_unstable_by(f64::total_cmp);
     Distributed {
         trials: values.len(),
         estimate,

@@ -12,6 +12,7 @@
 //! | `uncertainty`   | standard uncertainty, covariance, effective degrees of freedom, coverage |
 //! | `joint`         | uncertainties, covariance and correlation of any set of results          |
 //! | `adaptive`      | trials until the results are stable                                       |
+//! | `draw`          | draws of inputs, singly and jointly                                      |
 //! | `tape`          | scalars as operations on rows of trials                                   |
 //! | `budget`        | the uncertainty budget                                                   |
 //! | `trail`         | from a result down to readings                                           |
@@ -23,6 +24,7 @@
 mod adaptive;
 mod budget;
 mod build;
+mod draw;
 mod estimator;
 mod evaluate;
 mod handle;

@@ -8,6 +8,7 @@
 //! graph anew. Random streams are keyed by input path and block: a new input leaves all other draws as they were,
 //! and blocks may run on any number of threads.
 
+use super::draw::{Draw, JointDraw, scaling};
 use super::evaluate::evaluate_displaced;
 use super::interval::{Distributed, distributed};
 use super::node::*;
@@ -17,7 +18,6 @@ use super::value::Value;
 use crate::diagnostic::Problem;
 use crate::numeric::linear::covariance_factor;
 use crate::numeric::stream::{Key, Stream};
-use crate::numeric::{self, sampler};
 use rayon::prelude::*;
 use std::collections::{BTreeMap, BTreeSet};
 
@@ -153,7 +153,7 @@ impl<'g> Plan<'g> {
     fn block(&self, block: u64, rows: &mut [Row], values: &mut [&mut [f64]]) {
         let length = values.first().map_or(0, |values| values.len());
         let mut streams: Vec<Stream> = self.draws.iter().map(|draw| draw.key.stream(block)).collect();
-        let mut group_streams: Vec<Stream> = self.groups.iter().map(|group| Stream::new(&group.path, block)).collect();
+        let mut group_streams: Vec<Stream> = self.groups.iter().map(|group| group.key.stream(block)).collect();
         let noise = self.noise.draw(self.graph, block, length);
         for start in (0..length).step_by(CHUNK) {
             let count = CHUNK.min(length - start);
@@ -177,11 +177,10 @@ impl<'g> Plan<'g> {
 /// The joint draw of correlated inputs: multivariate normal, or multivariate t with the fewest degrees of freedom
 /// among them (JCGM 101, 6.4.8 and 6.4.9).
 struct GroupDraw {
-    path: String,
+    key: Key,
     /// Inputs by number with their rows; those not needed are drawn all the same, so that streams stay in step.
     members: Vec<(u32, Option<Register>)>,
-    root: Vec<Vec<f64>>,
-    degrees_of_freedom: f64,
+    joint: JointDraw,
 }
 
 /// Inputs drawn singly, by number with their rows.
@@ -197,10 +196,9 @@ fn split_groups(graph: &Graph, draws: SingleDraws) -> Result<(SingleDraws, Vec<G
         if members.iter().any(|(_, register)| register.is_some()) {
             let freedoms = group.inputs.iter().map(|input| graph.inputs[*input as usize].degrees_of_freedom);
             groups.push(GroupDraw {
-                path: group.path.clone(),
+                key: Key::new(&group.path),
                 members,
-                root: covariance_factor(&group.coefficients)?,
-                degrees_of_freedom: freedoms.fold(f64::INFINITY, f64::min),
+                joint: JointDraw::new(&group.coefficients, freedoms.fold(f64::INFINITY, f64::min))?,
             });
         }
     }
@@ -217,19 +215,11 @@ impl GroupDraw {
         count: usize,
         row_of: impl Fn(Register) -> usize,
     ) {
-        let mut draw = |trial: usize| {
-            let freedom = self.degrees_of_freedom;
-            let scale = if freedom > 2.0 && freedom.is_finite() { t_scale(freedom, stream) } else { 1.0 };
-            let normals: Vec<f64> = self.root.iter().map(|_| stream.normal()).collect();
-            for ((number, register), root) in self.members.iter().zip(&self.root) {
-                let Some(register) = register else { continue };
-                let input = &graph.inputs[*number as usize];
-                let drawn: f64 = root.iter().zip(&normals).map(|(cell, normal)| cell * normal).sum();
-                let departure = input.distribution.standard_uncertainty() * scale * drawn;
-                rows[row_of(*register)][trial] = departure;
-            }
-        };
-        (0..count).for_each(&mut draw);
+        self.joint.fill(stream, count, |trial, member, drawn| {
+            let (number, Some(register)) = &self.members[member] else { return };
+            let uncertainty = graph.inputs[*number as usize].distribution.standard_uncertainty();
+            rows[row_of(*register)][trial] = uncertainty * drawn;
+        });
     }
 }
 
@@ -279,77 +269,12 @@ fn is_boundary(graph: &Graph, id: NodeId) -> bool {
     matches!(graph.node(id).op, Op::Sum(_) | Op::Row(..) | Op::Output(..))
 }
 
-/// An input drawn by itself.
-struct Draw<'g> {
-    input: &'g Input,
-    key: Key,
-    row: usize,
-}
-
-/// What a row of draws of this input is multiplied by and added to: those of the plainest distributions are drawn in
-/// standard form, so that the scaling becomes part of the sums they enter.
-fn scaling(graph: &Graph, number: u32) -> (f64, f64) {
-    let input = &graph.inputs[number as usize];
-    let scale = match input.distribution {
-        _ if graph.correlated.iter().any(|group| group.position(number).is_some()) => 1.0,
-        Distribution::Normal { standard_uncertainty } => standard_uncertainty,
-        Distribution::Rectangular { half_width } => half_width,
-        _ => 1.0,
-    };
-    (graph.number(input.node), scale)
-}
-
-impl<'g> Draw<'g> {
-    fn new(graph: &'g Graph, number: u32, row: usize) -> Self {
-        let input = &graph.inputs[number as usize];
-        let path = graph.node(input.node).name.as_ref().map_or("", |name| name.path.as_str());
-        Self { input, key: Key::new(path), row }
-    }
-
-    /// Draws in the form that [`scaling`] expects.
-    fn fill(&self, stream: &mut Stream, row: &mut [f64]) {
-        match self.input.distribution {
-            Distribution::Normal { .. } => stream.fill_normal(row),
-            Distribution::Rectangular { .. } => {
-                stream.fill_uniform(row);
-                row.iter_mut().for_each(|value| *value = 2.0 * *value - 1.0);
-            }
-            _ => row.iter_mut().for_each(|value| *value = departure(self.input, stream)),
-        }
-    }
-}
-
-/// One draw of an input about its estimate (JCGM 101, 6.4).
-fn departure(input: &Input, stream: &mut Stream) -> f64 {
-    match input.distribution {
-        Distribution::Exact => 0.0,
-        Distribution::Normal { standard_uncertainty } => standard_uncertainty * stream.normal(),
-        Distribution::StudentT { scale } if input.degrees_of_freedom > 2.0 => {
-            scale * numeric::distribution::student_t_quantile(stream.uniform(), input.degrees_of_freedom)
-        }
-        Distribution::StudentT { scale } => scale * stream.normal(),
-        Distribution::Rectangular { half_width } => half_width * (2.0 * stream.uniform() - 1.0),
-        Distribution::Triangular { half_width } => half_width * (stream.uniform() + stream.uniform() - 1.0),
-        Distribution::RectangularInexact { half_width, inexactness } => {
-            sampler::rectangular_inexact_limits(-half_width, half_width, inexactness, stream.uniform())
-        }
-        Distribution::Trapezoidal { half_width, beta } => {
-            sampler::trapezoidal(-half_width, half_width, beta, stream.uniform())
-        }
-        Distribution::Exponential { mean } => sampler::exponential(mean, stream.uniform()) - mean,
-        Distribution::Gamma { shape, rate } => sampler::gamma(shape, rate, stream.uniform()) - shape / rate,
-        Distribution::Arcsine { half_width } => {
-            half_width * numeric::elementary::sin(std::f64::consts::TAU * stream.uniform())
-        }
-    }
-}
-
 /// Noise of numbers taken from columns: per-row uncertainty of readings (one joint normal over all of them), and
 /// the scatter seen by estimators (a joint t each).
 struct Noise {
     nodes: Vec<NodeId>,
     columns_root: Vec<Vec<f64>>,
-    estimator_roots: BTreeMap<u32, Vec<Vec<f64>>>,
+    estimators: BTreeMap<u32, (Key, JointDraw)>,
 }
 
 impl Noise {
@@ -366,9 +291,13 @@ impl Noise {
             kept.iter().map(|(_, a)| kept.iter().map(|(_, b)| shared_variance(a, b)).collect()).collect();
         let nodes: Vec<NodeId> = kept.iter().map(|(id, _)| *id).collect();
         let estimators: BTreeSet<u32> = nodes.iter().filter_map(|id| output_of(graph, *id).map(|(e, _)| e)).collect();
-        let scatter = |e: &u32| Ok((*e, covariance_factor(&graph.estimators[*e as usize].estimate.own_covariance)?));
-        let estimator_roots = estimators.iter().map(scatter).collect::<Result<_, Problem>>()?;
-        Ok(Self { nodes, columns_root: covariance_factor(&covariance)?, estimator_roots })
+        let scatter = |number: &u32| {
+            let node = &graph.estimators[*number as usize];
+            let joint = JointDraw::new(&node.estimate.own_covariance, node.estimate.degrees_of_freedom)?;
+            Ok((*number, (Key::new(&node.path), joint)))
+        };
+        let estimators = estimators.iter().map(scatter).collect::<Result<_, Problem>>()?;
+        Ok(Self { nodes, columns_root: covariance_factor(&covariance)?, estimators })
     }
 
     fn number_of(&self, id: NodeId) -> Option<usize> {
@@ -377,15 +306,16 @@ impl Noise {
 
     fn draw(&self, graph: &Graph, block: u64, length: usize) -> Vec<Vec<f64>> {
         let mut noise = self.column_noise(block, length);
-        for (&estimator, root) in &self.estimator_roots {
-            let scatter = estimator_scatter(graph, estimator, root, block, length);
-            for (row, id) in noise.iter_mut().zip(&self.nodes) {
-                if let Some((of, output)) = output_of(graph, *id)
-                    && of == estimator
-                {
-                    row.iter_mut().zip(&scatter[output]).for_each(|(value, drawn)| *value += drawn);
+        for (&estimator, (key, joint)) in &self.estimators {
+            let rows: Vec<(usize, usize)> = (0..self.nodes.len())
+                .filter_map(|row| Some((row, output_of(graph, self.nodes[row])?)))
+                .filter_map(|(row, (of, output))| (of == estimator).then_some((row, output)))
+                .collect();
+            joint.fill(&mut key.stream(block), length, |trial, member, drawn| {
+                for (row, _) in rows.iter().filter(|(_, output)| *output == member) {
+                    noise[*row][trial] += drawn;
                 }
-            }
+            });
         }
         noise
     }
@@ -397,11 +327,10 @@ impl Noise {
                 continue;
             }
             let mut stream = Stream::new(&format!("columns of readings {column}"), block);
-            for trial in 0..length {
-                let drawn = stream.normal();
-                for (row, root) in noise.iter_mut().zip(&self.columns_root) {
-                    row[trial] += root[column] * drawn;
-                }
+            let mut drawn = vec![0.0; length];
+            stream.fill_normal(&mut drawn);
+            for (row, root) in noise.iter_mut().zip(&self.columns_root) {
+                row.iter_mut().zip(&drawn).for_each(|(value, drawn)| *value += root[column] * drawn);
             }
         }
         noise
@@ -437,26 +366,4 @@ fn shared_variance(a: &[(u32, Vec<f64>)], b: &[(u32, Vec<f64>)]) -> f64 {
         .iter()
         .filter_map(|(number, left)| b.iter().find(|(other, _)| other == number).map(|(_, right)| (left, right)));
     pairs.map(|(left, right)| left.iter().zip(right).map(|(l, r)| l * r).sum::<f64>()).sum()
-}
-
-/// √(ν/χ²) with χ² drawn with ν degrees of freedom: turns normal draws into t draws.
-fn t_scale(freedom: f64, stream: &mut Stream) -> f64 {
-    (freedom / (2.0 * numeric::gamma::gamma_quantile(freedom / 2.0, stream.uniform()))).sqrt()
-}
-
-/// Joint draws of an estimator's own scatter: multivariate t with its degrees of freedom (JCGM 101, 6.4.9.2),
-/// normal where those are so few that the t has no variance.
-fn estimator_scatter(graph: &Graph, estimator: u32, root: &[Vec<f64>], block: u64, length: usize) -> Vec<Vec<f64>> {
-    let node = &graph.estimators[estimator as usize];
-    let mut stream = Stream::new(&node.path, block);
-    let mut scatter = vec![Vec::with_capacity(length); root.len()];
-    for _ in 0..length {
-        let freedom = node.estimate.degrees_of_freedom;
-        let scale = if freedom > 2.0 && freedom.is_finite() { t_scale(freedom, &mut stream) } else { 1.0 };
-        let normals: Vec<f64> = root.iter().map(|_| stream.normal()).collect();
-        for (row, out) in root.iter().zip(scatter.iter_mut()) {
-            out.push(scale * row.iter().zip(&normals).map(|(cell, normal)| cell * normal).sum::<f64>());
-        }
-    }
-    scatter
 }

@@ -430,3 +430,31 @@ fn add_terms(rows: &mut [Row], to: usize, start: impl Fn(f64) -> f64, terms: &[(
         _ => {}
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn wide_registers_change_no_bits() {
+        let terms = |count: usize| (0..count).map(|row| (row, 0.1 + row as f64)).collect();
+        let steps = [
+            Step::Weighted { to: 9, constant: 0.3, terms: terms(1) },
+            Step::Weighted { to: 10, constant: 0.0, terms: terms(2) },
+            Step::Weighted { to: 11, constant: -7.0, terms: terms(8) },
+            Step::Product { to: 12, a: 9, b: 10 },
+            Step::Ratio { to: 13, a: 11, b: 12 },
+            Step::Reciprocal { to: 14, number: 3.0, b: 13 },
+            Step::Square { to: 15, a: 14 },
+            Step::Single { to: 16, op: Op::SquareRoot(NodeId(0)), a: 15 },
+        ];
+        let row = |seed: usize| std::array::from_fn(|trial| 1.0 / (1 + seed * CHUNK + trial) as f64);
+        let (mut narrow, mut wide): (Vec<Row>, Vec<Row>) = ((0..17).map(row).collect(), (0..17).map(row).collect());
+        run_steps(&steps, &mut narrow, CHUNK);
+        Tape { steps: steps.into(), ..Tape::default() }.run(&mut wide, CHUNK);
+        assert_eq!(narrow, wide);
+        let by_hand =
+            -7.0 + (0..8).fold(0.0, |sum, register| sum + (0.1 + f64::from(register)) * narrow[register as usize][5]);
+        assert!((narrow[11][5] - by_hand).abs() < 1e-14, "{} and not {by_hand}", narrow[11][5]);
+    }
+}

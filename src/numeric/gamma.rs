@@ -133,26 +133,36 @@ pub fn upper_gamma(a: f64, x: f64) -> f64 {
 /// Newton's method on ln P or ln Q, whichever is smaller; start after E. B. Wilson and M. M. Hilferty,
 /// Proc. Natl. Acad. Sci. 17 (1931) 684-688, or from P(a, x) <= x^a / Γ(a + 1).
 pub fn gamma_quantile(shape: f64, p: f64) -> f64 {
-    if !(shape > 0.0 && shape.is_finite() && (0.0..=1.0).contains(&p)) {
+    gamma_quantile_of_tails(shape, p, 1.0 - p)
+}
+
+/// [`gamma_quantile`] from the probabilities below and above it, each exact where the other has lost digits.
+pub(super) fn gamma_quantile_of_tails(shape: f64, below: f64, above: f64) -> f64 {
+    if !(shape > 0.0 && shape.is_finite() && below >= 0.0 && above >= 0.0) {
         return f64::NAN;
     }
-    if p == 0.0 || p == 1.0 {
-        return if p == 0.0 { 0.0 } else { f64::INFINITY };
+    if below == 0.0 || above == 0.0 {
+        return if below == 0.0 { 0.0 } else { f64::INFINITY };
     }
     let density = |x: f64| exp(ln_front(shape, x));
-    newton_in_logarithm(gamma_start(shape, p), |x| {
+    newton_in_logarithm(gamma_start(shape, below, above), |x| {
         let (lower, upper) = ln_incomplete_gamma(shape, x);
-        if p <= 0.5 { (lower - ln(p)) * exp(lower) / density(x) } else { (log1p(-p) - upper) * exp(upper) / density(x) }
+        if below <= 0.5 {
+            (lower - ln(below)) * exp(lower) / density(x)
+        } else {
+            (ln(above) - upper) * exp(upper) / density(x)
+        }
     })
 }
 
 /// A first guess of the gamma quantile.
-fn gamma_start(shape: f64, p: f64) -> f64 {
-    let cube_root = 1.0 - 1.0 / (9.0 * shape) + normal_quantile(p) / (3.0 * sqrt(shape));
+fn gamma_start(shape: f64, below: f64, above: f64) -> f64 {
+    let z = if below < above { normal_quantile(below) } else { -normal_quantile(above) };
+    let cube_root = 1.0 - 1.0 / (9.0 * shape) + z / (3.0 * sqrt(shape));
     if shape > 0.5 && cube_root > 0.3 {
         return shape * cube_root * cube_root * cube_root;
     }
-    pow(p, 1.0 / shape) * exp(lgamma(shape + 1.0) / shape)
+    pow(below, 1.0 / shape) * exp(lgamma(shape + 1.0) / shape)
 }
 
 #[cfg(test)]

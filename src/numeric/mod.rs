@@ -16,6 +16,7 @@
 //! | [`normal`], [`student_t`] | the two distributions behind coverage factors |
 //! | [`distribution`] | the probabilities and quantiles the rest of the project asks for |
 //! | [`sampler`] | from a uniform draw to a draw of each input distribution |
+//! | [`tabulated`] | slow quantiles as piecewise polynomials in the normal one |
 //! | `chacha` | the key stream behind the random streams |
 //! | `wide` | loops for the processor's widest registers, with the same bits |
 //! | [`stream`] | reproducible random streams, one per input and block of trials |
@@ -36,4 +37,5 @@ pub mod sampler;
 pub mod stream;
 pub mod student_t;
 pub mod sum;
+pub mod tabulated;
 pub(crate) mod wide;

@@ -1,6 +1,6 @@
 //! The normal distribution.
 
-use super::elementary::{erfc, exp, ln, ln_without_branch, sqrt};
+use super::elementary::{erf, erfc, exp, ln, ln_without_branch, sqrt};
 use std::f64::consts::{FRAC_1_SQRT_2, PI};
 
 /// Probability that a standard normal variable is at most `x`.
@@ -8,6 +8,11 @@ use std::f64::consts::{FRAC_1_SQRT_2, PI};
 /// Relative error below 2e-16 (1 + x²): the tail magnifies the rounding of its argument.
 pub fn normal_cdf(x: f64) -> f64 {
     0.5 * erfc(-x * FRAC_1_SQRT_2)
+}
+
+/// Probability that a standard normal variable is between 0 and `x`.
+pub(super) fn normal_central(x: f64) -> f64 {
+    0.5 * erf(x * FRAC_1_SQRT_2)
 }
 
 /// Density of the standard normal distribution.
