@@ -31,7 +31,7 @@ impl Orientation {
     /// The orientation at an instant.
     pub fn at(instant: Instant) -> Self {
         let t = instant.terrestrial_centuries();
-        let node = radians(125.044_52 - 1934.136_261 * t);
+        let node = radians(125.044_52 - 1_934.136_261 * t);
         let sun = radians(2.0 * (280.466_5 + 36_000.769_8 * t));
         let moon = radians(2.0 * (218.316_5 + 481_267.881_3 * t));
         let psi = -17.20 * sin(node) - 1.32 * sin(sun) - 0.23 * sin(moon) + 0.21 * sin(2.0 * node);
