@@ -4,6 +4,7 @@
 
 pub mod abbe_offset;
 pub mod air_density;
+pub mod air_pressure_effect;
 pub mod allan_deviation;
 pub mod analysis_of_variance;
 pub mod autocorrelation;
@@ -17,6 +18,10 @@ pub mod consistency;
 pub mod constants;
 pub mod conventional_mass;
 pub mod conversion_1990;
+pub mod gravity_epoch;
+pub mod gravity_profile;
+pub mod gravity_range;
+pub mod gravity_site;
 pub mod gravity_transfer;
 pub mod instrument_correction;
 pub mod interferometer_velocity;
@@ -25,7 +30,11 @@ pub mod kibble_mass;
 pub mod laser_alignment;
 pub mod mass_on_day;
 pub mod measurement_model;
+pub mod normal_gravity;
+pub mod ocean_loading;
 pub mod parasitic_motion;
+pub mod permanent_tide;
+pub mod polar_motion;
 pub mod polynomial_fit;
 pub mod profile_fit;
 pub mod quantum_hall_resistance;
@@ -33,10 +42,15 @@ pub mod refractive_index_ciddor;
 pub mod refractive_index_edlen;
 pub mod residual_gas_buoyancy;
 pub mod resistor_line;
+pub mod solid_earth_tide;
 pub mod statistic;
 pub mod straight_line;
 pub mod substitution;
 pub mod tare_fit;
+pub mod tidal_attraction;
+pub mod tidal_groups;
+pub mod tidal_response;
+pub mod tidal_waves;
 pub mod type_a_mean;
 pub mod volume;
 pub mod weighing_cycle;
@@ -91,6 +105,7 @@ impl WorkedExample {
 pub static METHODS: &[&Method] = &[
     &abbe_offset::METHOD,
     &air_density::METHOD,
+    &air_pressure_effect::METHOD,
     &allan_deviation::METHOD,
     &analysis_of_variance::METHOD,
     &autocorrelation::METHOD,
@@ -103,6 +118,8 @@ pub static METHODS: &[&Method] = &[
     &consistency::METHOD,
     &conventional_mass::METHOD,
     &conversion_1990::METHOD,
+    &gravity_epoch::METHOD,
+    &gravity_profile::METHOD,
     &gravity_transfer::METHOD,
     &instrument_correction::METHOD,
     &interferometer_velocity::METHOD,
@@ -111,7 +128,11 @@ pub static METHODS: &[&Method] = &[
     &laser_alignment::METHOD,
     &mass_on_day::METHOD,
     &measurement_model::METHOD,
+    &normal_gravity::METHOD,
+    &ocean_loading::METHOD,
     &parasitic_motion::METHOD,
+    &permanent_tide::METHOD,
+    &polar_motion::METHOD,
     &polynomial_fit::METHOD,
     &profile_fit::METHOD,
     &quantum_hall_resistance::METHOD,
@@ -119,6 +140,7 @@ pub static METHODS: &[&Method] = &[
     &refractive_index_edlen::METHOD,
     &residual_gas_buoyancy::METHOD,
     &resistor_line::METHOD,
+    &solid_earth_tide::METHOD,
     &straight_line::METHOD,
     &substitution::METHOD,
     &tare_fit::METHOD,

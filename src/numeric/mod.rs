@@ -18,9 +18,11 @@
 //! | [`sampler`] | from a uniform draw to a draw of each input distribution |
 //! | [`tabulated`] | slow quantiles as piecewise polynomials in the normal one |
 //! | `chacha` | the key stream behind the random streams |
+//! | [`astronomy`] | places of Moon and Sun, orientation of the Earth, tidal arguments |
 //! | `wide` | loops for the processor's widest registers, with the same bits |
 //! | [`stream`] | reproducible random streams, one per input and block of trials |
 
+pub mod astronomy;
 pub mod beta;
 mod chacha;
 pub mod continued_fraction;
