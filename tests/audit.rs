@@ -152,7 +152,7 @@ fn a_digit_changed_in_an_attached_reading_is_named() {
     let audit = audit(&meddled(|document| replace(document, RAW, &altered_reading())));
     assert_eq!(failed(&audit), ["attachments", "re-reduction", "printed digits", "derivation", "pages"], "{audit:#?}");
     assert_eq!(says(&audit, "attachments"), format!("{RAW} was changed"));
-    assert!(says(&audit, "re-reduction").contains("W1."), "{audit:#?}");
+    assert!(says(&audit, "re-reduction").contains("R1.mass"), "{audit:#?}");
 }
 
 #[test]

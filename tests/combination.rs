@@ -260,3 +260,49 @@ fn covariance_of_any_set_of_results() {
         near(found.covariance[1][2] / found.covariance[2][2], 1.0, 1e-12);
     });
 }
+
+const REPORT: &str = "---\nrecord: REP\ndate: 2041-03-20\nperformed_by: duty metrologist\nreport:\n  title: Combined runs\n  place: room 4\n  method: {id: P-1, revision: 2}\n  deviations: none\n  results: [C.value]\n  performed_by: duty metrologist\n---\n\n# Agreement\n\n";
+
+/// The typesetter's source of a report with this prose.
+fn page(runs: &Runs<'_>, combination: &str, prose: &str) -> (String, Vec<(Code, String)>) {
+    let files = [
+        ("laboratory.md", LABORATORY.to_string()),
+        ("record.md", runs.record(combination)),
+        ("report.md", format!("{REPORT}{prose}\n")),
+    ];
+    let intake = MemoryIntake::with(files);
+    let engine = Engine::read(&intake, None).expect("readable");
+    let written = libripens::report::write_report(&engine, "report.md");
+    let said = engine.complaints().list.iter().map(|one| (one.code, one.message.clone())).collect();
+    (written.map_or_else(String::new, |written| written.document.source.clone()), said)
+}
+
+#[test]
+fn the_report_shows_agreement_correlation_and_what_was_left_out() {
+    let combination = "weights: covariance\nexcluded:\n  - {result: X2.value, rule: EARLY, reason: door open}";
+    let prose = "{{ consistency(C) }}\n\n{{ correlation(X1.value, X2.value, C.value) }}\n\n{{ excluded() }}\n\n{{ chart(C) }}\n\nBirge ratio {{ C.birge_ratio }}.";
+    let (page, said) = page(&THREE, combination, prose);
+    assert!(said.is_empty(), "{said:?}");
+    // Of the two kept: χ² = 36/340, w = 144/340 and 196/340.
+    for shown in [
+        "0.106",
+        "0.424",
+        "0.576",
+        "χ²",
+        "Birge ratio",
+        "0.350",
+        "EARLY: A run with an open door is left out. Reason: door open.",
+        "left out",
+        "0.325396",
+    ] {
+        assert!(page.replace(['\u{202f}', '\u{2009}'], "").contains(shown), "{shown} in {page}");
+    }
+}
+
+#[test]
+fn a_correlation_needs_two_results() {
+    for prose in ["{{ correlation(X1.value) }}", "{{ correlation(X1.value, \"X2.value\") }}", "{{ consistency(X1) }}"] {
+        let (_, said) = page(&THREE, "weights: covariance", prose);
+        assert_eq!(said.iter().map(|(code, _)| *code).collect::<Vec<_>>(), [Code::TemplateFaulty], "{prose}: {said:?}");
+    }
+}

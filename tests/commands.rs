@@ -130,6 +130,49 @@ fn shares_of_a_budget_sum_to_one() {
 }
 
 #[test]
+fn several_budgets_are_followed_by_what_they_share() {
+    let found = json(&["budget", "R1.mass", "R2.mass", "W1.difference", "example-records", "--json"]);
+    let cell = |matrix: &str, row: usize, column: usize| number(&found[matrix][row][column]);
+    let budgets = found["budgets"].as_array().expect("budgets");
+    assert_eq!(budgets.len(), 3);
+    for (row, budget) in budgets.iter().enumerate() {
+        let u = number(&budget["standard_uncertainty"]);
+        assert!((cell("covariance", row, row) / (u * u) - 1.0).abs() < 1e-12);
+        assert_eq!(cell("correlation", row, row), 1.0);
+        for column in 0..row {
+            let scale = u * number(&budgets[column]["standard_uncertainty"]);
+            assert!((cell("covariance", row, column) / scale - cell("correlation", row, column)).abs() < 1e-12);
+            assert_eq!(cell("correlation", row, column), cell("correlation", column, row));
+        }
+    }
+    // Two items against one reference standard; a difference alone does not contain the standard.
+    assert!(cell("correlation", 0, 1) > 0.9 && cell("correlation", 0, 2).abs() < 0.3, "{found}");
+    let text = printed(&["budget", "R1.mass", "R2.mass", "example-records"]);
+    let heads = ["R1.mass: mass of HW 1", "R2.mass: mass of HW 2", "Correlation coefficients", "Covariance,"];
+    let places: Vec<usize> =
+        heads.iter().map(|head| text.find(head).unwrap_or_else(|| panic!("{head}: {text}"))).collect();
+    assert!(places.is_sorted());
+}
+
+#[test]
+fn trials_stand_beside_first_order() {
+    let found = json(&["budget", "R1.mass", "example-records", "--trials", "50000", "--json"]);
+    let trials = &found["trials"];
+    assert_eq!(trials["trials"], 50_000);
+    assert_eq!(trials["is_validated"], true);
+    let ratio = number(&trials["standard_uncertainty"]) / number(&found["standard_uncertainty"]);
+    assert!((ratio - 1.0).abs() < 0.02, "{ratio}");
+    // The tolerance of u = 10 µg to one digit is 5 µg.
+    assert_eq!(number(&trials["numerical_tolerance"]), 0.5e-8);
+    let steady = json(&["budget", "W1.difference", "example-records", "--until-stable", "1", "--json"]);
+    assert_eq!(steady["trials"]["is_stable"], true);
+    let text = printed(&["budget", "W1.difference", "example-records", "--until-stable", "1"]);
+    assert!(text.contains("stable to 1 significant digit") && text.contains("JCGM 101, clause 8"), "{text}");
+    assert!(json(&["budget", "R1.mass", "example-records", "--json"]).get("trials").is_none());
+    assert_eq!(run(&["budget", "R1.mass", "example-records", "--trials", "0"]).status.code(), Some(2));
+}
+
+#[test]
 fn budget_falls_by_contribution_and_folds_the_smallest() {
     let budget = json(&["budget", "R1.mass", "example-records", "--json"]);
     let contributions: Vec<f64> =

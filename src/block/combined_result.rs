@@ -7,7 +7,7 @@ use super::fields::Fields;
 use super::weight::Weight;
 use super::{BlockKind, Output};
 use crate::diagnostic::{Code, Complaints, Problem};
-use crate::graph::{Quantity, Value, joint};
+use crate::graph::{Quantity, joint};
 use crate::method::combination::{self, Between, Choices, Combination, Disagreement, Expansion, Weights};
 use crate::method::{consistency, conventional_mass, unit};
 use crate::quantity::{Dimension, Kind, Unit, choose_unit};
@@ -232,27 +232,31 @@ impl<'e> Work<'e> {
         let shown = self.shown_unit(entries.first()?.result);
         let decided = decisions(&names, &found, choices, &shown, engine.laboratory.style);
         let quantities: Vec<Quantity<'e>> = entries.iter().map(|entry| entry.result).collect();
+        let of_differences = combination::difference_uncertainties(&shared.covariance, &found.weights);
         let mut combined = combination::weighted(&quantities, &found.weights)?;
         if found.consistency.is_some() {
             let rule = Disagreement {
-                covariance: shared.covariance,
+                covariance: shared.covariance.clone(),
                 added_variance: found.added_variance,
+                between: found.between_variance.sqrt(),
+                expansion_factor: found.expansion_factor,
                 decisions: decided.clone(),
             };
-            let departure = self.disagreement(rule, &quantities, prefix, &found, &shown)?;
+            let departure = self.disagreement(rule, &quantities, prefix, &shown)?;
             if choices.between != Between::None || choices.expansion != Expansion::None {
                 combined = combined + departure;
             }
         }
         let named = self.name(combined, &names.join(", "), prefix, &shown);
         self.conventional(named, prefix);
-        let member = |((entry, u), weight): ((&Entry, f64), &f64)| Member {
+        let member = |(index, entry): (usize, &Entry)| Member {
             path: entry.path.text.clone(),
             id: entry.result.id,
-            standard_uncertainty: u,
-            weight: *weight,
+            standard_uncertainty: shared.standard_uncertainties[index],
+            weight: found.weights[index],
+            difference_uncertainty: of_differences[index],
         };
-        let members = entries.iter().zip(shared.standard_uncertainties).zip(&found.weights).map(member).collect();
+        let members = entries.iter().enumerate().map(member).collect();
         let decisions = decided.into_iter().map(|one| (one.what, one.decided)).collect();
         Some(Made { combined: named, members, found, decisions })
     }
@@ -294,13 +298,13 @@ impl<'e> Work<'e> {
         rule: Disagreement,
         results: &[Quantity<'e>],
         prefix: &str,
-        found: &Combination,
         shown: &Unit,
     ) -> Option<Quantity<'e>> {
         let (engine, block, choices) = (self.engine, self.block, self.choices());
         let first = results.first()?;
         let one = (Dimension::ONE, Kind::Plain);
-        let outputs = [(first.dimension(), first.kind().of_difference()), one, one, one, one];
+        let difference = (first.dimension(), first.kind().of_difference());
+        let outputs = [difference, one, one, one, one, difference, one];
         let what = match choices.expansion {
             Expansion::None => "between_component",
             _ => "expansion",
@@ -322,15 +326,14 @@ impl<'e> Work<'e> {
         for (quantity, (path, symbol, words)) in made.iter().skip(1).zip(names) {
             quantity.result(&format!("{prefix}{path}"), symbol, &format!("{words} of {}", block.name()), &Unit::one());
         }
-        let exact = |value: f64, (dimension, kind)| engine.builder.exact(Value::Scalar(value), dimension, kind);
-        if choices.between != Between::None {
-            let tau = found.between_variance.sqrt();
+        if let (Some(between), true) = (made.get(5), choices.between != Between::None) {
             let words = format!("standard deviation between the results of {}", block.name());
-            exact(tau, outputs[0]).result(&format!("{prefix}between"), "τ", &words, &choose_unit(tau, shown));
+            let shown = choose_unit(between.number(), shown);
+            between.result(&format!("{prefix}between"), "τ", &words, &shown);
         }
-        if choices.expansion != Expansion::None {
+        if let (Some(factor), true) = (made.get(6), choices.expansion != Expansion::None) {
             let words = format!("expansion factor of {}", block.name());
-            exact(found.expansion_factor, one).result(&format!("{prefix}expansion_factor"), "f", &words, &Unit::one());
+            factor.result(&format!("{prefix}expansion_factor"), "f", &words, &Unit::one());
         }
         made.first().copied()
     }

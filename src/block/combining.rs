@@ -36,6 +36,8 @@ pub struct Member {
     /// In its coherent SI unit.
     pub standard_uncertainty: f64,
     pub weight: f64,
+    /// Standard uncertainty of its difference from the combined result, with what both share.
+    pub difference_uncertainty: f64,
 }
 
 /// A result left out.

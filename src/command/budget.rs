@@ -1,53 +1,119 @@
-//! `budget`: where the uncertainty of one result comes from.
+//! `budget`: where the uncertainty of results comes from, and what they share.
 
 use super::folder::{Folder, find_quantity};
-use super::{Outcome, Stopped, terminal};
+use super::trials::{Amount, JsonTrials, Tried};
+use super::{Outcome, Stopped, covariance, terminal};
 use crate::block::Engine;
 use crate::graph::{
-    Budget as GraphBudget, BudgetLine, Coverage, Graph, NodeId, Sensitivities, Source, budget, coverage, sensitivities,
+    Budget as GraphBudget, BudgetLine, Coverage, Graph, NodeId, Sensitivities, Source, budget, coverage, joint,
+    sensitivities,
 };
 use crate::quantity::{Decimal, Style, Unit, choose_unit};
 use crate::report::listing::print_quantity;
 use serde::Serialize;
 use std::collections::BTreeMap;
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 
-/// Prints one result with its standard uncertainty, coverage factor and expanded uncertainty, and the uncertainty
+/// Prints each result with its standard uncertainty, coverage factor and expanded uncertainty, and the uncertainty
 /// budget: one line for each input or scatter of readings, the largest contribution first.
 ///
 /// The contribution is |c| u in a unit that suits the result; the share is its part of u_c². Only the blocks that the
-/// result rests on are computed.
+/// results rest on are computed. Several results are followed by their covariance and correlation.
 #[derive(Debug, clap::Args)]
+#[command(override_usage = "libripens budget [OPTIONS] <QUANTITY>... [FOLDER]")]
 pub struct Budget {
-    /// The result by its path, such as W1.mass; `reduce` lists them, `reduce --all` lists inputs too
-    quantity: String,
-    /// The laboratory folder, or any place in it
-    #[arg(default_value = ".")]
-    folder: PathBuf,
+    /// The results by their paths, such as W1.mass W2.mass; `reduce` lists them, `reduce --all` lists inputs too. The
+    /// laboratory folder, or any place in it, may stand last
+    #[arg(value_name = "QUANTITY", required = true)]
+    named: Vec<String>,
     /// Print lines with a share below 0.01 % too, instead of folding them into one
     #[arg(long)]
     all: bool,
     /// Print the budget as JSON, every line, in coherent SI units
     #[arg(long)]
     json: bool,
+    #[command(flatten)]
+    amount: Amount,
 }
 
 impl Budget {
     /// Runs the command.
     pub fn run(self) -> Result<Outcome, Stopped> {
-        let folder = Folder::find(&self.folder)?;
+        let (paths, place) = paths_and_folder(self.named);
+        let folder = Folder::find(&place)?;
         let progress = terminal::progress("computing the budget");
         let engine = Engine::read(&folder.disk, folder.campaign.as_deref()).map_err(Stopped::because)?;
-        let found = find_quantity(&engine, &self.quantity)?;
-        progress.finish_and_clear();
-        let Some(measurand) = found else {
+        let found: Vec<Option<NodeId>> =
+            paths.iter().map(|path| find_quantity(&engine, path)).collect::<Result<_, _>>()?;
+        let Some(ids) = found.into_iter().collect::<Option<Vec<NodeId>>>() else {
+            progress.finish_and_clear();
             terminal::say_complaints(&engine);
             return Ok(Outcome::Faults);
         };
-        let sheet = Sheet::draw_up(&engine, measurand, &self.quantity)?;
-        terminal::print(&if self.json { sheet.json() } else { sheet.text(self.all) });
+        let sheets: Vec<Sheet> =
+            paths.iter().zip(&ids).map(|(path, id)| Sheet::draw_up(&engine, *id, path)).collect::<Result<_, _>>()?;
+        let tried = self.amount.run(&engine, &ids)?;
+        progress.finish_and_clear();
+        let printed = match self.json {
+            true => json(&engine, &sheets, &ids, tried.as_deref()),
+            false => text(&engine, &sheets, &ids, tried.as_deref(), self.all),
+        };
+        terminal::print(&printed?);
         Ok(terminal::say_complaints(&engine))
     }
+}
+
+/// The quantities asked for and the folder, which stands last when it is there or looks like a path.
+fn paths_and_folder(mut named: Vec<String>) -> (Vec<String>, PathBuf) {
+    let is_folder = |last: &String| last.contains(['/', '\\']) || Path::new(last).exists();
+    match named.len() > 1 && named.last().is_some_and(is_folder) {
+        true => {
+            let folder = named.pop().unwrap_or_default();
+            (named, folder.into())
+        }
+        false => (named, ".".into()),
+    }
+}
+
+fn text(
+    engine: &Engine,
+    sheets: &[Sheet],
+    ids: &[NodeId],
+    tried: Option<&[Tried]>,
+    all: bool,
+) -> Result<String, Stopped> {
+    let mut parts = Vec::new();
+    for (index, sheet) in sheets.iter().enumerate() {
+        parts.push(sheet.text(all));
+        parts.extend(tried.and_then(|tried| tried.get(index)).map(|one| one.text(sheet.style, &sheet.unit)));
+    }
+    if sheets.len() > 1 {
+        let found = joint(&engine.graph(), ids).map_err(|problem| Stopped(problem.message))?;
+        let paths: Vec<String> = sheets.iter().map(|sheet| sheet.path.clone()).collect();
+        parts.push(covariance::text(&engine.graph(), &paths, ids, &found, engine.laboratory.style));
+    }
+    Ok(parts.join("\n"))
+}
+
+/// One result as one object; several as a list of such objects with their covariance and correlation.
+fn json(engine: &Engine, sheets: &[Sheet], ids: &[NodeId], tried: Option<&[Tried]>) -> Result<String, Stopped> {
+    let trials = |index: usize| tried.and_then(|tried| tried.get(index)).map(Tried::json);
+    let mut made: Vec<JsonSheet> = sheets.iter().enumerate().map(|(index, sheet)| sheet.json(trials(index))).collect();
+    let text = match (made.pop(), made.is_empty()) {
+        (Some(only), true) => serde_json::to_string_pretty(&only),
+        (last, _) => {
+            let found = joint(&engine.graph(), ids).map_err(|problem| Stopped(problem.message))?;
+            let budgets = made.into_iter().chain(last).collect();
+            serde_json::to_string_pretty(&JsonSheets {
+                format: 1,
+                engine: crate::VERSION,
+                budgets,
+                covariance: found.covariance,
+                correlation: found.correlation,
+            })
+        }
+    };
+    Ok(text.unwrap_or_default() + "\n")
 }
 
 /// A budget with the result it belongs to.
@@ -230,9 +296,9 @@ impl Sheet {
         self.style.number(&rounded)
     }
 
-    fn json(&self) -> String {
+    fn json(&self, trials: Option<JsonTrials>) -> JsonSheet<'_> {
         let finite = |number: f64| Some(number).filter(|number| number.is_finite());
-        let sheet = JsonSheet {
+        JsonSheet {
             format: 1,
             engine: crate::VERSION,
             quantity: &self.path,
@@ -247,10 +313,8 @@ impl Sheet {
             coverage_factor: self.coverage.factor,
             expanded_uncertainty: self.coverage.expanded_uncertainty,
             lines: self.budget.lines.iter().map(JsonLine::of).collect(),
-        };
-        let mut text = serde_json::to_string_pretty(&sheet).unwrap_or_default();
-        text.push('\n');
-        text
+            trials,
+        }
     }
 }
 
@@ -327,6 +391,18 @@ struct JsonSheet<'s> {
     coverage_factor: f64,
     expanded_uncertainty: f64,
     lines: Vec<JsonLine<'s>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    trials: Option<JsonTrials>,
+}
+
+/// Several budgets with what their results share, in coherent SI units, in the order asked for.
+#[derive(Serialize)]
+struct JsonSheets<'s> {
+    format: u32,
+    engine: &'static str,
+    budgets: Vec<JsonSheet<'s>>,
+    covariance: Vec<Vec<f64>>,
+    correlation: Vec<Vec<f64>>,
 }
 
 #[derive(Serialize)]
@@ -367,7 +443,7 @@ impl<'s> JsonLine<'s> {
 
 #[cfg(test)]
 mod tests {
-    use super::quotient;
+    use super::{paths_and_folder, quotient};
     use crate::quantity::Unit;
 
     #[test]
@@ -378,5 +454,17 @@ mod tests {
         assert_eq!(of("mg", "/K"), "mg K");
         assert_eq!(of("mg", "1"), "mg");
         assert_eq!(of("1", "K"), "1/K");
+    }
+
+    #[test]
+    fn the_folder_may_stand_last() {
+        let split = |named: &[&str]| {
+            let (paths, folder) = paths_and_folder(named.iter().map(|name| name.to_string()).collect());
+            (paths.join(" "), folder.to_string_lossy().into_owned())
+        };
+        assert_eq!(split(&["W1.mass"]), ("W1.mass".into(), ".".into()));
+        assert_eq!(split(&["W1.mass", "W2.mass"]), ("W1.mass W2.mass".into(), ".".into()));
+        assert_eq!(split(&["W1.mass", "W2.mass", "src"]), ("W1.mass W2.mass".into(), "src".into()));
+        assert_eq!(split(&["W1.mass", "not/there"]), ("W1.mass".into(), "not/there".into()));
     }
 }

@@ -4,6 +4,7 @@
 
 mod audit;
 mod budget;
+mod covariance;
 mod disk;
 mod examine;
 mod folder;
@@ -12,6 +13,7 @@ mod report;
 mod start;
 mod terminal;
 mod trail;
+mod trials;
 mod validate;
 
 use clap::{Parser, Subcommand};
@@ -50,7 +52,7 @@ enum Command {
     Reduce(reduce::Reduce),
     /// Walk from one result down to its readings
     Trail(trail::Trail),
-    /// Print the uncertainty budget of one result
+    /// Print the uncertainty budget of results, and their covariance when there are several
     Budget(budget::Budget),
     /// Typeset a report as a draft PDF with its dossier
     Report(report::Report),

@@ -13,7 +13,7 @@ use super::consistency::{self, Consistency, dersimonian_laird, expansion_factor,
 use super::{Method, WorkedExample, exact};
 use crate::diagnostic::Problem;
 use crate::graph::{Builder, Decision, Estimate, Estimator, MethodInfo, Quantity};
-use crate::numeric::linear::{Matrix, bilinear};
+use crate::numeric::linear::{Matrix, bilinear, times_vector};
 use crate::numeric::sum::sum;
 
 /// The registry's line.
@@ -168,16 +168,26 @@ pub fn combine(results: &[f64], covariance: &[Vec<f64>], choices: Choices) -> Re
     Ok(Combination { weights, consistency, between_variance, expansion_factor, added_variance })
 }
 
+/// Standard uncertainty of each result's difference from the mean: √(V_ii − 2 (V w)_i + wᵀV w).
+pub fn difference_uncertainties(covariance: &[Vec<f64>], weights: &[f64]) -> Vec<f64> {
+    let (shared, own) = (times_vector(covariance, weights), bilinear(weights, covariance, weights));
+    (0..weights.len()).map(|i| (covariance[i][i] - 2.0 * shared[i] + own).max(0.0).sqrt()).collect()
+}
+
 /// The rule of what disagreement adds to the mean: a departure of zero with a variance of its own, and the statistics
-/// of the test: chi-square, chi-square over its degrees of freedom, its probability, the Birge ratio.
+/// of the test: chi-square, chi-square over its degrees of freedom, its probability, the Birge ratio; then τ and the
+/// expansion factor.
 pub struct Disagreement {
     pub covariance: Matrix,
     pub added_variance: f64,
+    /// τ in the results' unit, and the expansion factor: frozen, as the weights are.
+    pub between: f64,
+    pub expansion_factor: f64,
     pub decisions: Vec<Decision>,
 }
 
-/// How many outputs [`Disagreement`] has: the departure, and four statistics.
-pub const DISAGREEMENT_OUTPUTS: usize = 5;
+/// How many outputs [`Disagreement`] has.
+pub const DISAGREEMENT_OUTPUTS: usize = 7;
 
 impl Estimator for Disagreement {
     fn outputs(&self) -> usize {
@@ -190,7 +200,15 @@ impl Estimator for Disagreement {
         let reduced = found.chi_square / found.degrees_of_freedom;
         let own = |i: usize, j: usize| if (i, j) == (0, 0) { self.added_variance } else { 0.0 };
         Ok(Estimate {
-            values: vec![0.0, found.chi_square, reduced, found.probability, found.birge_ratio],
+            values: vec![
+                0.0,
+                found.chi_square,
+                reduced,
+                found.probability,
+                found.birge_ratio,
+                self.between,
+                self.expansion_factor,
+            ],
             jacobian: columns.iter().map(|column| vec![vec![0.0; column.len()]; DISAGREEMENT_OUTPUTS]).collect(),
             own_covariance: (0..DISAGREEMENT_OUTPUTS)
                 .map(|i| (0..DISAGREEMENT_OUTPUTS).map(|j| own(i, j)).collect())
@@ -271,6 +289,20 @@ mod tests {
         }
         let equal = weights(&shared, Weights::Equal);
         assert_eq!(equal, [1.0 / 3.0; 3]);
+    }
+
+    /// A mean of least variance and its differences from the results are independent: u²(d) = u²(x) − u²(y).
+    #[test]
+    fn differences_are_as_certain_as_what_is_not_shared() {
+        let (x, alone) = ([12.0, 25.0, 18.0], diagonal(&[14.0, 16.0, 12.0]));
+        let shared: Matrix = alone.iter().map(|row| row.iter().map(|cell| cell + 121.0).collect()).collect();
+        let weights = combine(&x, &shared, Choices { weights: Weights::Covariance, ..Choices::default() })
+            .expect("combined")
+            .weights;
+        let of_mean = bilinear(&weights, &shared, &weights);
+        for (i, u) in difference_uncertainties(&shared, &weights).into_iter().enumerate() {
+            assert!((u * u - (shared[i][i] - of_mean)).abs() < 1e-9);
+        }
     }
 
     #[test]

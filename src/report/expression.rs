@@ -89,11 +89,13 @@ static FUNCTIONS: &[Function] = &[
     },
     Function { name: "chart", usage: "chart(W1)", answer: chart },
     Function { name: "conditions", usage: "conditions(A1)", answer: conditions },
+    Function { name: "consistency", usage: "consistency(R1)", answer: consistency },
     Function {
         name: "contents",
         usage: "contents(C1)",
         answer: |engine, asked| campaign_part(engine, asked, parts::contents::contents_table),
     },
+    Function { name: "correlation", usage: "correlation(W1.mass, W2.mass)", answer: correlation },
     Function {
         name: "determinations",
         usage: "determinations(C1)",
@@ -445,6 +447,21 @@ fn conditions(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
     let name = asked.block_of(engine, &["ambient"])?;
     engine.conditions(&name).ok_or_else(|| uncomputed(&name))?;
     block(parts::conditions::conditions_table(engine, &name))
+}
+
+fn consistency(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
+    let name = asked.block_of(engine, &["combined-result"])?;
+    block(parts::consistency::consistency_part(engine, &name).ok_or_else(|| uncomputed(&name))?)
+}
+
+fn correlation(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
+    let paths: Vec<&str> = asked.arguments.iter().filter_map(Argument::path).collect();
+    if paths.len() < 2 || paths.len() < asked.arguments.len() {
+        let message = "A correlation is asked for between two results or more, each by its path.";
+        return Err(Problem::new(Code::TemplateFaulty, message));
+    }
+    let each = paths.iter().map(|path| figure_at(engine, path).and_then(|_| node_at(engine, path)));
+    block(parts::correlation::correlation_table(engine, &each.collect::<Result<Vec<NodeId>, _>>()?)?)
 }
 
 fn chart(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {

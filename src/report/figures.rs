@@ -1,5 +1,6 @@
 //! Numbers in print: values, uncertainties, coverage, in the laboratory's style.
 
+use super::listing::exact_decimals;
 use crate::block::Engine;
 use crate::graph::{Coverage, NodeId, coverage, sensitivities};
 use crate::quantity::{Style, Unit, choose_unit};
@@ -11,6 +12,8 @@ pub struct Figure {
     pub unit: Unit,
     pub symbol: String,
     pub label: String,
+    /// Decimals of the value where it has no uncertainty.
+    exact_decimals: i32,
     style: Style,
 }
 
@@ -24,6 +27,7 @@ impl Figure {
         value.is_finite().then_some(Figure {
             value,
             coverage,
+            exact_decimals: exact_decimals(&graph, id, value, &name.unit),
             unit: name.unit,
             symbol: name.symbol,
             label: name.label,
@@ -43,16 +47,22 @@ impl Figure {
     pub fn standard(&self) -> String {
         let u = self.coverage.standard_uncertainty;
         if u <= 0.0 {
-            return plain(self.style, self.value, &self.unit);
+            return self.exact();
         }
         self.style.standard(self.value, u, &self.unit_for(u)).unwrap_or_else(|problem| problem.message)
+    }
+
+    /// The value alone, for one without uncertainty.
+    fn exact(&self) -> String {
+        let decimals = self.exact_decimals.clamp(0, 12);
+        self.style.value(self.value, &self.unit, decimals).unwrap_or_else(|problem| problem.message)
     }
 
     /// `(0.999 999 119 ± 0.000 000 021) kg`.
     pub fn expanded(&self) -> String {
         let expanded = self.coverage.expanded_uncertainty;
         if expanded <= 0.0 {
-            return plain(self.style, self.value, &self.unit);
+            return self.exact();
         }
         self.style.expanded(self.value, expanded, &self.unit_for(expanded)).unwrap_or_else(|problem| problem.message)
     }

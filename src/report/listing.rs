@@ -3,9 +3,9 @@
 //! The JSON is a versioned shape. Additions keep the number; a changed meaning raises it.
 
 use crate::block::Engine;
-use crate::graph::{Graph, NodeId, Origin, Sensitivities, degrees_of_freedom, sensitivities, standard_uncertainty};
+use crate::graph::{Graph, NodeId, Op, Origin, Sensitivities, degrees_of_freedom, sensitivities, standard_uncertainty};
 use crate::intake::Sources;
-use crate::quantity::{Style, choose_unit};
+use crate::quantity::{Style, Unit, choose_unit};
 use serde::Serialize;
 
 /// The version of the JSON shape of results.
@@ -124,8 +124,20 @@ pub fn print_quantity(graph: &Graph, id: NodeId, of: &Sensitivities, style: Styl
             .or_else(|_| style.standard(value, u, &choose_unit(u, &name.unit)))
             .unwrap_or_else(|problem| problem.message);
     }
-    let decimals = name.unit.decimal_from_si(value).map_or(0, |decimal| decimal.decimals());
+    let decimals = exact_decimals(graph, id, value, &name.unit);
     style.value(value, &name.unit, decimals.clamp(0, 15)).unwrap_or_else(|problem| problem.message)
+}
+
+/// Digits shown of a statistic.
+const STATISTIC_DIGITS: usize = 6;
+
+/// The decimals of a value without uncertainty: those it has, for a statistic those of six significant digits.
+pub fn exact_decimals(graph: &Graph, id: NodeId, value: f64, unit: &Unit) -> i32 {
+    let Some(decimal) = unit.decimal_from_si(value) else { return 0 };
+    match graph.node(id).op {
+        Op::Output(..) => decimal.decimals().min(decimal.rounded_to_digits(STATISTIC_DIGITS).decimals()),
+        _ => decimal.decimals(),
+    }
 }
 
 fn listed_origin(sources: &Sources, origin: &Origin) -> ListedOrigin {

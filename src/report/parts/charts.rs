@@ -1,6 +1,7 @@
 //! Charts: differences of a comparison, results of a combination, conditions over time.
 
 use crate::block::Engine;
+use crate::block::combining::Combined;
 use crate::block::weighing::Comparison;
 use crate::graph::NodeId;
 use crate::quantity::{Marker, choose_unit};
@@ -135,14 +136,12 @@ fn subscript(letters: &str) -> &'static str {
 
 /// Results of a combination with their standard uncertainties, and the combined result.
 fn combined(engine: &Engine, name: &str) -> Option<Chart> {
-    let block = engine.blocks().get(name).filter(|block| block.kind.name == "combined-result")?;
-    let paths = block.fields().texts("results");
-    let ids: Vec<NodeId> = paths.iter().map(|path| engine.graph().find(&path.text)).collect::<Option<_>>()?;
+    let found = engine.found::<Combined>(name)?;
+    let kept = found.members.iter().map(|member| (&member.path, member.id));
+    let left_out = found.excluded.iter().map(|(id, one)| (&one.path, *id));
+    let (paths, ids): (Vec<&String>, Vec<NodeId>) = kept.chain(left_out).unzip();
     let figures: Vec<Figure> = ids.iter().map(|id| Figure::of(engine, *id)).collect::<Option<_>>()?;
-    let own = ["mass", "conventional_mass", "difference", "value"]
-        .iter()
-        .find_map(|path| engine.graph().find(&format!("{name}.{path}")))?;
-    let own = Figure::of(engine, own)?;
+    let own = Figure::of(engine, found.result)?;
     let unit = choose_unit(own.coverage.standard_uncertainty, &own.unit);
     let centre = own.value;
     let points = figures.iter().enumerate().map(|(index, figure)| {
@@ -152,17 +151,23 @@ fn combined(engine: &Engine, name: &str) -> Option<Chart> {
             Some(unit.difference_from_si(figure.coverage.standard_uncertainty)),
         )
     });
+    let mut points: Vec<(f64, f64, Option<f64>)> = points.collect();
+    let left_out = points.split_off(found.members.len());
+    let mut series = vec![Series { name: "results".into(), points, style: Style::Points }];
+    if !left_out.is_empty() {
+        series.push(Series { name: "left out".into(), points: left_out, style: Style::Points });
+    }
     Some(Chart {
         title: format!("{name}: results combined, as departures from the combined result, with standard uncertainties"),
         x_label: "result".into(),
         y_label: format!("departure/{}", engine.laboratory.style.unit(&unit)),
-        series: vec![Series { name: "results".into(), points: points.collect(), style: Style::Points }],
+        series,
         lines: vec![Mean {
             y: 0.0,
             half_width: Some(unit.difference_from_si(own.coverage.standard_uncertainty)),
             label: "combined result and its standard uncertainty".into(),
         }],
-        x_ticks: paths.iter().map(|path| path.text.clone()).collect(),
+        x_ticks: paths.into_iter().cloned().collect(),
         decimal_marker: marker(engine),
         ..Chart::default()
     })
