@@ -36,7 +36,9 @@ fn parts_say_what_they_show() {
     said("−0.1712(29)\u{a0}K");
     said("Lack of fit cannot be tested: no ordinates were repeated at one abscissa.");
     said("Lack of fit: F(17, 20) = 0.811, p = 0.67; not significant at the level 0.05");
-    said("Chi-square: χ² = 3.00 with 5 degrees of freedom, p = 0.70; the residuals agree with the stated uncertainties.");
+    said(
+        "Chi-square: χ² = 3.00 with 5 degrees of freedom, p = 0.70; the residuals agree with the stated uncertainties.",
+    );
     said("Chart: NULL: Allan deviation of null voltage. It shows σ/µV against averaging time τ/s.");
     said("bars at 6 positions");
     said("Uncertainty of the mean: 28.9 effective readings of 96.");

@@ -52,11 +52,7 @@ fn chart(engine: &Engine, name: &str, series: &TimedSeries, unit: &Unit) -> Char
         y_axis: Axis::Logarithm,
         series: vec![
             Series { name: "overlapping Allan deviation".into(), points: deviations, style: Style::Points },
-            Series {
-                name: format!("{} limits", per_cent(style, CONFIDENCE)),
-                points: limits,
-                style: Style::Limits,
-            },
+            Series { name: format!("{} limits", per_cent(style, CONFIDENCE)), points: limits, style: Style::Limits },
             Series { name: "slope −1/2, independent readings".into(), points: slope.collect(), style: Style::Line },
         ],
         decimal_marker: marker(engine),

@@ -80,7 +80,11 @@ fn remark(points: &[(f64, f64, Option<f64>)], band: Option<f64>) -> String {
     order.sort_by(|a, b| a.0.total_cmp(&b.0));
     let changes = order.windows(2).filter(|pair| (pair[0].1 < 0.0) != (pair[1].1 < 0.0)).count();
     let inside = band.map_or(0, |band| points.iter().filter(|point| point.1.abs() <= band).count());
-    let within = if band.is_some() { format!("{inside} of {} residuals lie within ± s. ", points.len()) } else { String::new() };
+    let within = if band.is_some() {
+        format!("{inside} of {} residuals lie within ± s. ", points.len())
+    } else {
+        String::new()
+    };
     format!("{within}Along the axis their sign changes {changes} times.")
 }
 
@@ -95,10 +99,8 @@ fn parameters(engine: &Engine, name: &str, fit: &Fitted) -> Markup {
         header.push(Cell::Markup(made));
     }
     let mut table = Table::new(format!("{name}: parameters, jointly estimated"), header);
-    table.align = ["left", "left", "right", "right"]
-        .into_iter()
-        .chain((1..fit.coefficients.len()).map(|_| "right"))
-        .collect();
+    table.align =
+        ["left", "left", "right", "right"].into_iter().chain((1..fit.coefficients.len()).map(|_| "right")).collect();
     for (power, id) in fit.coefficients.iter().enumerate() {
         let Some(figure) = Figure::of(engine, *id) else { continue };
         let words = match power {
@@ -164,15 +166,21 @@ fn sentences(engine: &Engine, fit: &Fitted) -> Vec<String> {
 fn lack_words(tested: Tested) -> String {
     let level = significant(Style::POINT, SIGNIFICANCE, 1);
     match tested.probability < SIGNIFICANCE {
-        true => format!("significant at the level {level}: the polynomial departs from the points by more than repeated readings scatter"),
-        false => format!("not significant at the level {level}: the points depart from the polynomial no more than repeated readings scatter"),
+        true => format!(
+            "significant at the level {level}: the polynomial departs from the points by more than repeated readings scatter"
+        ),
+        false => format!(
+            "not significant at the level {level}: the points depart from the polynomial no more than repeated readings scatter"
+        ),
     }
 }
 
 fn chi_square_words(tested: Tested) -> &'static str {
     match tested.probability {
         p if p < SIGNIFICANCE => "the residuals are larger than the stated uncertainties explain",
-        p if p > 1.0 - SIGNIFICANCE => "the residuals are smaller than the stated uncertainties let expect; these are kept",
+        p if p > 1.0 - SIGNIFICANCE => {
+            "the residuals are smaller than the stated uncertainties let expect; these are kept"
+        }
         _ => "the residuals agree with the stated uncertainties",
     }
 }
