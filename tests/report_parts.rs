@@ -45,6 +45,7 @@ fn parts_say_what_they_show() {
     said("analysis of variance of mass difference");
     said("first-order propagation is not validated");
     said("first-order propagation is validated");
+    said("with terms of second order");
     said("Bar chart. Shares of the squared standard uncertainty of the correction at 25 °C");
 }
 

@@ -129,7 +129,7 @@ pub fn scale_ticks(axis: Axis, range: (f64, f64), wanted: f64, marker: char) -> 
 fn decade_ticks(range: (f64, f64), multiples: &[i64], wanted: f64, marker: char) -> Ticks {
     let (first, last) = (libm::floor(range.0) as i32, libm::floor(range.1) as i32);
     let every = libm::ceil((range.1 - range.0) / wanted.max(1.0)).max(1.0) as usize;
-    let factor = if first >= -3 && last <= 4 { 0 } else { first.div_euclid(3) * 3 };
+    let factor = if first >= -3 && last <= 4 { 0 } else { last.div_euclid(3) * 3 };
     let mut list = Vec::new();
     for exponent in (first..=last).step_by(every) {
         for multiple in multiples {

@@ -1,10 +1,14 @@
 //! First-order propagation beside propagation of distributions: table, histogram, verdict.
 //!
-//! # Source   JCGM 101:2008, clause 8 (validation of first-order propagation by trials).
+//! # Source   JCGM 101:2008, clause 8 (validation of first-order propagation by trials); JCGM 100:2008, 5.1.2, NOTE
+//!            (terms of second order).
 
 use crate::block::Engine;
 use crate::diagnostic::Problem;
-use crate::graph::{Distributed, Histogram, NodeId, Validation, distributed, histogram, propagate_distributions};
+use crate::graph::{
+    Distributed, Histogram, NodeId, Validation, distributed, histogram, propagate_distributions,
+    second_order_uncertainty,
+};
 use crate::numeric::elementary::powi;
 use crate::quantity::{Marker, Style, Unit, choose_unit};
 use crate::report::Markup;
@@ -24,7 +28,12 @@ pub struct Comparison {
     pub found: Distributed,
     pub histogram: Histogram,
     pub validation: Validation,
+    /// Standard uncertainty with the terms of second order, where they matter.
+    pub second_order: Option<f64>,
 }
+
+/// Terms of second order that change u by less than this part of it are not shown.
+const SMALLEST_CHANGE: f64 = 1e-3;
 
 impl Comparison {
     /// Runs the trials of one result.
@@ -39,7 +48,17 @@ impl Comparison {
         let expanded = figure.coverage.expanded_uncertainty;
         let validation =
             Validation::new(figure.value, expanded, found.symmetric, figure.coverage.standard_uncertainty, DIGITS);
-        Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation }))
+        let first = figure.coverage.standard_uncertainty;
+        let second_order = second_order_uncertainty(&engine.graph(), result)
+            .filter(|second| (second - first).abs() > SMALLEST_CHANGE * second);
+        Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation, second_order }))
+    }
+
+    /// The interval with the terms of second order, with the same coverage factor.
+    fn second_order_interval(&self) -> Option<(f64, f64, f64)> {
+        let u = self.second_order?;
+        let half = self.figure.coverage.factor * u;
+        Some((u, self.figure.value - half, self.figure.value + half))
     }
 
     /// The verdict: which interval is valid, and why.
@@ -155,6 +174,9 @@ fn table(engine: &Engine, comparison: &Comparison) -> Markup {
         comparison.figure.coverage.standard_uncertainty,
         validation.first_order,
     ));
+    if let Some((u, low, high)) = comparison.second_order_interval() {
+        table.rows.push(row("with terms of second order", estimate, u, (low, high)));
+    }
     table.rows.push(row("trials, symmetric interval", found.estimate, found.standard_uncertainty, found.symmetric));
     table.rows.push(row("trials, shortest interval", found.estimate, found.standard_uncertainty, found.shortest));
     let blank = || Cell::from("");
