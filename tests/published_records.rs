@@ -7,7 +7,8 @@
 
 use libripens::block::Engine;
 use libripens::graph::{
-    Distributed, correlation, coverage, propagate_distributions, sensitivities, standard_uncertainty,
+    Distributed, Graph, NodeId, Validation, correlation, coverage, propagate_distributions, second_order_uncertainty,
+    sensitivities, standard_uncertainty,
 };
 use libripens::intake::MemoryIntake;
 use serde_json::Value;
@@ -49,6 +50,13 @@ fn by_trials(engine: &Engine, name: &str, seen: &mut BTreeMap<String, Distribute
     found
 }
 
+fn uncertainty_of(graph: &Graph, id: NodeId, second_order: bool) -> f64 {
+    match second_order {
+        true => second_order_uncertainty(graph, id).unwrap_or(f64::NAN),
+        false => standard_uncertainty(graph, &sensitivities(graph, id)),
+    }
+}
+
 fn found(engine: &Engine, one: &Value, seen: &mut BTreeMap<String, Distributed>) -> f64 {
     let (name, quantity) = (one["name"].as_str().expect("name"), one["quantity"].as_str().expect("quantity"));
     match quantity {
@@ -72,6 +80,21 @@ fn found(engine: &Engine, one: &Value, seen: &mut BTreeMap<String, Distributed>)
         "standard_uncertainty" => standard_uncertainty(&graph, &derivatives),
         "expanded_uncertainty" => coverage(&graph, &derivatives, engine.laboratory.settings).expanded_uncertainty,
         "coverage_factor" => coverage(&graph, &derivatives, engine.laboratory.settings).factor,
+        "second_order_standard_uncertainty" => second_order_uncertainty(&graph, id).unwrap_or(f64::NAN),
+        "low" | "high" | "second_order_low" | "second_order_high" => {
+            let k = coverage(&graph, &derivatives, engine.laboratory.settings).factor;
+            let half = k * uncertainty_of(&graph, id, quantity.starts_with("second_order"));
+            graph.number(id) + if quantity.ends_with("low") { -half } else { half }
+        }
+        "first_order_is_validated" | "second_order_is_validated" => {
+            let k = coverage(&graph, &derivatives, engine.laboratory.settings).factor;
+            let half = k * uncertainty_of(&graph, id, quantity.starts_with("second_order"));
+            let value = graph.number(id);
+            drop(graph);
+            let found = by_trials(engine, name, seen);
+            let shown = Validation::new(value, half, found.shortest, found.standard_uncertainty, 1);
+            f64::from(u8::from(shown.is_valid()))
+        }
         "degrees_of_freedom" => coverage(&graph, &derivatives, engine.laboratory.settings).effective_degrees_of_freedom,
         other => panic!("unknown quantity {other}"),
     }

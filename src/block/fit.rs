@@ -310,6 +310,9 @@ fn coefficient_unit(points: &Points<'_>, power: usize, coefficient: Quantity<'_>
     if x.is_one() {
         return y;
     }
+    if x.text() == y.text() && power == 1 {
+        return Unit::one();
+    }
     let exponent = if power == 1 { String::new() } else { power.to_string() };
     let top = if y.is_one() { String::new() } else { y.text() };
     let joined = Unit::parse(&format!("{top}/{}{exponent}", x.text())).ok();

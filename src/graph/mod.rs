@@ -9,6 +9,7 @@
 //! | `estimator`     | several outputs from columns: means, fits, combinations                  |
 //! | `evaluate`      | the graph with some inputs displaced                                     |
 //! | `sensitivity`   | one reverse sweep per measurand                                          |
+//! | `second_order`  | the law of propagation with its terms of second order                    |
 //! | `uncertainty`   | standard uncertainty, covariance, effective degrees of freedom, coverage |
 //! | `joint`         | uncertainties, covariance and correlation of any set of results          |
 //! | `adaptive`      | trials until the results are stable                                       |
@@ -32,6 +33,7 @@ mod interval;
 mod joint;
 mod monte_carlo;
 mod node;
+mod second_order;
 mod sensitivity;
 mod tape;
 mod trail;
@@ -51,6 +53,7 @@ pub use node::{
     Basis, CorrelatedInputs, Distribution, Evaluation, Graph, Input, MethodInfo, Name, Node, NodeId, Op, Origin,
     ReadingColumn, State,
 };
+pub use second_order::second_order_uncertainty;
 pub use sensitivity::{Sensitivities, Source, sensitivities};
 pub use trail::{TrailStep, TrailSteps, trail};
 pub use uncertainty::{

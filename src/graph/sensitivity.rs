@@ -26,7 +26,12 @@ pub struct Sensitivities {
 
 /// Derivatives of `measurand` by one reverse sweep over the graph.
 pub fn sensitivities(graph: &Graph, measurand: NodeId) -> Sensitivities {
-    let mut sweep = Sweep::new(graph, measurand);
+    sensitivities_at(graph, &graph.values, measurand)
+}
+
+/// The same where the nodes have other values; estimators keep the response found at the estimates.
+pub(super) fn sensitivities_at(graph: &Graph, values: &[Value], measurand: NodeId) -> Sensitivities {
+    let mut sweep = Sweep::new(graph, values, measurand);
     for index in (0..=measurand.index()).rev() {
         if let Some(adjoint) = sweep.adjoints[index].take() {
             sweep.pass_down(NodeId(index as u32), adjoint);
@@ -38,7 +43,7 @@ pub fn sensitivities(graph: &Graph, measurand: NodeId) -> Sensitivities {
 /// Derivatives of a scalar node with respect to the scalar nodes that shape the columns it reduces, together with
 /// its derivatives by noisy columns and estimators on the way. The sweep stops at scalars.
 pub(super) fn linear_response(graph: &Graph, boundary: NodeId) -> (BTreeMap<NodeId, f64>, Sensitivities) {
-    let mut sweep = Sweep::new(graph, boundary);
+    let mut sweep = Sweep::new(graph, &graph.values, boundary);
     let mut scalars = BTreeMap::new();
     for index in (0..=boundary.index()).rev() {
         let Some(adjoint) = sweep.adjoints[index].take() else { continue };
@@ -55,16 +60,21 @@ pub(super) fn linear_response(graph: &Graph, boundary: NodeId) -> (BTreeMap<Node
 
 struct Sweep<'g> {
     graph: &'g Graph,
+    values: &'g [Value],
     adjoints: Vec<Option<Value>>,
     inputs: BTreeMap<u32, Vec<f64>>,
     estimators: BTreeMap<u32, Vec<f64>>,
 }
 
 impl<'g> Sweep<'g> {
-    fn new(graph: &'g Graph, from: NodeId) -> Self {
+    fn new(graph: &'g Graph, values: &'g [Value], from: NodeId) -> Self {
         let mut adjoints = vec![None; from.index() + 1];
         adjoints[from.index()] = Some(Value::Scalar(1.0));
-        Self { graph, adjoints, inputs: BTreeMap::new(), estimators: BTreeMap::new() }
+        Self { graph, values, adjoints, inputs: BTreeMap::new(), estimators: BTreeMap::new() }
+    }
+
+    fn value(&self, id: NodeId) -> &'g Value {
+        &self.values[id.index()]
     }
 
     /// Hands a node's adjoint to its operands by the chain rule.
@@ -84,17 +94,17 @@ impl<'g> Sweep<'g> {
                 self.give(*b, &adjoint.map(|weight| -weight));
             }
             Op::Multiply(a, b) => {
-                self.give(*a, &adjoint.zip(graph.value(*b), |weight, b| weight * b));
-                self.give(*b, &adjoint.zip(graph.value(*a), |weight, a| weight * a));
+                self.give(*a, &adjoint.zip(self.value(*b), |weight, b| weight * b));
+                self.give(*b, &adjoint.zip(self.value(*a), |weight, a| weight * a));
             }
             Op::Divide(a, b) => {
-                let over = adjoint.zip(graph.value(*b), |weight, b| weight / b);
-                self.give(*b, &over.zip(graph.value(id), |over, ratio| -over * ratio));
+                let over = adjoint.zip(self.value(*b), |weight, b| weight / b);
+                self.give(*b, &over.zip(self.value(id), |over, ratio| -over * ratio));
                 self.give(*a, &over);
             }
             Op::Sum(a) => {
                 let weight = adjoint.number();
-                self.give(*a, &graph.value(*a).map(|_| weight));
+                self.give(*a, &self.value(*a).map(|_| weight));
             }
             Op::Row(a, row) => self.give_row(*a, *row, adjoint.number()),
             Op::Mix(a, weights) => self.give_mix(*a, weights, &adjoint),
@@ -106,7 +116,7 @@ impl<'g> Sweep<'g> {
             Op::Output(estimator, output) => self.pass_estimator(estimator.index(), *output as usize, adjoint.number()),
             op => {
                 for operand in op.operands() {
-                    let pairs = graph.value(operand).zip(graph.value(id), |x, y| slope(op, x, y));
+                    let pairs = self.value(operand).zip(self.value(id), |x, y| slope(op, x, y));
                     self.give(operand, &adjoint.zip(&pairs, |weight, slope| weight * slope));
                 }
             }
@@ -115,7 +125,7 @@ impl<'g> Sweep<'g> {
 
     /// Adds to the adjoint of a node; a scalar operand of a column gathers over the rows.
     fn give(&mut self, to: NodeId, adjoint: &Value) {
-        let adjoint = match (self.graph.value(to), adjoint) {
+        let adjoint = match (self.value(to), adjoint) {
             (Value::Scalar(_), Value::Column(rows)) => Value::Scalar(sum(rows.iter().copied())),
             (column @ Value::Column(_), Value::Scalar(weight)) => column.map(|_| *weight),
             _ => adjoint.clone(),
@@ -128,7 +138,7 @@ impl<'g> Sweep<'g> {
     }
 
     fn give_row(&mut self, to: NodeId, row: u32, weight: f64) {
-        match self.graph.value(to) {
+        match self.value(to) {
             Value::Scalar(_) => self.give(to, &Value::Scalar(weight)),
             Value::Column(rows) => {
                 let mut adjoint = vec![0.0; rows.len()];
@@ -141,7 +151,7 @@ impl<'g> Sweep<'g> {
     }
 
     fn give_mix(&mut self, to: NodeId, weights: &[Vec<(u32, f64)>], adjoint: &Value) {
-        let mut gathered = vec![0.0; self.graph.value(to).rows().len()];
+        let mut gathered = vec![0.0; self.value(to).rows().len()];
         for (row, mix) in weights.iter().enumerate() {
             for (index, weight) in mix {
                 if let Some(place) = gathered.get_mut(*index as usize) {
@@ -149,7 +159,7 @@ impl<'g> Sweep<'g> {
                 }
             }
         }
-        match self.graph.value(to) {
+        match self.value(to) {
             Value::Scalar(_) => self.give(to, &Value::Scalar(sum(gathered.iter().copied()))),
             Value::Column(_) => self.give(to, &Value::Column(gathered.into())),
         }

@@ -10,6 +10,7 @@ use super::literal::{typst_string, typst_text};
 use super::markup::Markup;
 use axis::{Tick, Ticks};
 
+pub use axis::superscript;
 pub use words::alternative_text;
 
 /// What runs along the horizontal axis.
@@ -19,6 +20,8 @@ pub enum Axis {
     Number,
     /// Seconds since 1970-01-01T00:00:00Z, shown in UTC.
     Time,
+    /// A number on a logarithmic scale; what is not above zero is left out.
+    Logarithm,
 }
 
 /// How the points of a series are shown.
@@ -29,6 +32,8 @@ pub enum Style {
     Line,
     /// A line that keeps its height up to the next point.
     Steps,
+    /// Bars from a lower to an upper end: the points come in pairs.
+    Limits,
 }
 
 /// One run of points.
@@ -55,12 +60,16 @@ pub struct Chart {
     pub x_label: String,
     pub y_label: String,
     pub x_axis: Axis,
+    /// A number or its logarithm.
+    pub y_axis: Axis,
     pub series: Vec<Series>,
     pub lines: Vec<Mean>,
     /// Names of the positions 0, 1, 2, … where the horizontal axis counts things instead of measuring.
     pub x_ticks: Vec<String>,
     /// `.` or `,`.
     pub decimal_marker: char,
+    /// What the chart shows, in a sentence for those who cannot see it.
+    pub remark: String,
 }
 
 impl Default for Chart {
@@ -70,10 +79,12 @@ impl Default for Chart {
             x_label: String::new(),
             y_label: String::new(),
             x_axis: Axis::Number,
+            y_axis: Axis::Number,
             series: Vec::new(),
             lines: Vec::new(),
             x_ticks: Vec::new(),
             decimal_marker: '.',
+            remark: String::new(),
         }
     }
 }
@@ -119,12 +130,13 @@ pub fn figure(chart: &Chart, width_mm: f64, height_mm: f64) -> Markup {
 
 /// The chart as a Typst expression, without a number sign before it.
 pub fn draw(chart: &Chart, width_mm: f64, height_mm: f64) -> String {
+    let chart = &axis::in_decades(chart);
     let series: Vec<Series> = chart.series.iter().map(finite).collect();
     let legend = legend_rows(chart, width_mm);
     let y_range = axis::padded(values(chart, &series), 0.06);
     let top = 1.5 + LINE_MM * legend.len() as f64 + 1.0;
     let height = (height_mm - top - 2.0 * LINE_MM - 3.5).max(10.0);
-    let y_ticks = axis::number_ticks(y_range, (height / 9.0).clamp(4.0, 8.0), chart.decimal_marker);
+    let y_ticks = axis::scale_ticks(chart.y_axis, y_range, (height / 9.0).clamp(4.0, 8.0), chart.decimal_marker);
     let note_room = if y_ticks.note.is_empty() { 0.0 } else { LINE_MM };
     let left = LINE_MM + 2.5 + widest(&y_ticks.list) + 1.5;
     let width = (width_mm - left - 5.0).max(10.0);
@@ -180,7 +192,7 @@ fn x_ticks(chart: &Chart, frame: &Frame) -> Ticks {
     }
     match chart.x_axis {
         Axis::Time => axis::time_ticks(frame.x, frame.width),
-        Axis::Number => axis::number_ticks(frame.x, (frame.width / 16.0).clamp(2.0, 10.0), chart.decimal_marker),
+        scale => axis::scale_ticks(scale, frame.x, (frame.width / 16.0).clamp(2.0, 10.0), chart.decimal_marker),
     }
 }
 

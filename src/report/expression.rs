@@ -77,6 +77,8 @@ struct Asked<'a> {
 
 /// Every function of reports, in order of name.
 static FUNCTIONS: &[Function] = &[
+    Function { name: "allan", usage: "allan(S1)", answer: allan },
+    Function { name: "analysis", usage: "analysis(V1)", answer: analysis },
     Function {
         name: "assumptions",
         usage: "assumptions()",
@@ -134,6 +136,7 @@ static FUNCTIONS: &[Function] = &[
     Function { name: "protocol", usage: "protocol(C1)", answer: protocol },
     Function { name: "readings", usage: "readings(W1)", answer: readings },
     Function { name: "relative_budget", usage: "relative_budget(C1.mass)", answer: relative_budget },
+    Function { name: "residuals", usage: "residuals(F1)", answer: residuals },
     Function {
         name: "results",
         usage: "results()",
@@ -441,6 +444,24 @@ fn series(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
     let name = asked.block_of(engine, &["comparison"])?;
     engine.weighing(&name).ok_or_else(|| uncomputed(&name))?;
     block(parts::readings::series_table(engine, &name))
+}
+
+fn residuals(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
+    let name = asked.block_of(engine, &["fit"])?;
+    let fit = engine.found(&name).ok_or_else(|| uncomputed(&name))?;
+    block(parts::fit::residuals_part(engine, &name, &fit))
+}
+
+fn allan(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
+    let name = asked.block_of(engine, &["series-in-time"])?;
+    let series = engine.found(&name).ok_or_else(|| uncomputed(&name))?;
+    block(parts::allan::allan_part(engine, &name, &series))
+}
+
+fn analysis(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
+    let name = asked.block_of(engine, &["analysis-of-variance"])?;
+    let found = engine.found(&name).ok_or_else(|| uncomputed(&name))?;
+    block(parts::analysis::analysis_table(engine, &name, &found))
 }
 
 fn conditions(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {

@@ -90,7 +90,9 @@ impl Figure {
 
 /// An exact value with the digits it has.
 pub fn plain(style: Style, value: f64, unit: &Unit) -> String {
-    let decimals = unit.decimal_from_si(value).map_or(0, |decimal| decimal.decimals()).clamp(0, 12);
+    let digits = unit.decimal_from_si(value).map(|decimal| decimal.plain_text()).unwrap_or_default();
+    let fraction = digits.split_once('.').map_or("", |(_, fraction)| fraction.trim_end_matches('0'));
+    let decimals = (fraction.len() as i32).min(12);
     style.value(value, unit, decimals).unwrap_or_else(|problem| problem.message)
 }
 

@@ -1,6 +1,7 @@
 //! Ranges, ticks and their labels.
 
-use crate::numeric::elementary::log10;
+use super::{Axis, Chart, Mean, Series};
+use crate::numeric::elementary::{log10, pow};
 use chrono::{DateTime, Utc};
 
 /// A tick and what stands beside it.
@@ -51,6 +52,14 @@ pub fn number_ticks(range: (f64, f64), wanted: f64, marker: char) -> Ticks {
         unit = 1;
         exponent += 1;
     }
+    if (range.1 - range.0) / (unit as f64 * power_of_ten(exponent)) < 2.5 {
+        // One or two ticks tell no scale.
+        (unit, exponent) = match unit {
+            5 => (2, exponent),
+            2 => (1, exponent),
+            _ => (5, exponent - 1),
+        };
+    }
     let step = unit as f64 * power_of_ten(exponent);
     // Every tick is a whole number of 10^exponent, so that its label is exact.
     let first = libm::ceil(range.0 / step) as i64;
@@ -76,6 +85,71 @@ pub fn number_ticks(range: (f64, f64), wanted: f64, marker: char) -> Ticks {
         ));
     }
     Ticks { list: list.collect(), note: note.join(" ") }
+}
+
+/// The chart with the values along logarithmic axes as powers of ten.
+pub fn in_decades(chart: &Chart) -> Chart {
+    let (across, up) = (chart.x_axis == Axis::Logarithm, chart.y_axis == Axis::Logarithm);
+    let scaled = |value: f64, logarithm: bool| match logarithm {
+        true if value > 0.0 => log10(value),
+        true => f64::NAN,
+        false => value,
+    };
+    let point = |(x, y, bar): &(f64, f64, Option<f64>)| (scaled(*x, across), scaled(*y, up), bar.filter(|_| !up));
+    let series = chart.series.iter();
+    let lines = chart.lines.iter();
+    Chart {
+        series: series
+            .map(|series| Series { points: series.points.iter().map(point).collect(), ..series.clone() })
+            .collect(),
+        lines: lines
+            .map(|line| Mean { y: scaled(line.y, up), half_width: line.half_width.filter(|_| !up), ..line.clone() })
+            .collect(),
+        ..chart.clone()
+    }
+}
+
+/// Ticks of an axis of numbers, or of their logarithms over a range of powers of ten.
+pub fn scale_ticks(axis: Axis, range: (f64, f64), wanted: f64, marker: char) -> Ticks {
+    if axis != Axis::Logarithm {
+        return number_ticks(range, wanted, marker);
+    }
+    let decades = range.1 - range.0;
+    if decades < 0.7 {
+        // Less than a decade holds too few of 1, 2 and 5.
+        let ends = (ten_to(range.0), ten_to(range.1));
+        let ticks = number_ticks(ends, wanted, marker);
+        let moved = ticks.list.into_iter().filter(|tick| tick.at > 0.0);
+        return Ticks { list: moved.map(|tick| Tick { at: log10(tick.at), ..tick }).collect(), note: ticks.note };
+    }
+    decade_ticks(range, if decades <= wanted / 2.0 { &[1, 2, 5] } else { &[1] }, wanted, marker)
+}
+
+/// Ticks at these multiples of the powers of ten; where there are many powers, at every second or third.
+fn decade_ticks(range: (f64, f64), multiples: &[i64], wanted: f64, marker: char) -> Ticks {
+    let (first, last) = (libm::floor(range.0) as i32, libm::floor(range.1) as i32);
+    let every = libm::ceil((range.1 - range.0) / wanted.max(1.0)).max(1.0) as usize;
+    let factor = if first >= -3 && last <= 4 { 0 } else { last.div_euclid(3) * 3 };
+    let mut list = Vec::new();
+    for exponent in (first..=last).step_by(every) {
+        for multiple in multiples {
+            let at = f64::from(exponent) + log10(*multiple as f64);
+            if at < range.0 || at > range.1 {
+                continue;
+            }
+            let label = match (multiples.len(), factor) {
+                (1, factor) if factor != 0 => format!("10{}", superscript(exponent)),
+                _ => decimal(*multiple, exponent - factor, marker),
+            };
+            list.push(Tick { at, label });
+        }
+    }
+    let note = if factor != 0 && multiples.len() > 1 { format!("× 10{}", superscript(factor)) } else { String::new() };
+    Ticks { list, note }
+}
+
+fn ten_to(exponent: f64) -> f64 {
+    pow(10.0, exponent)
 }
 
 /// The power of ten, a multiple of three, to be taken out of labels that would be too long or too small.
@@ -247,6 +321,30 @@ mod tests {
             assert!(low < high);
             assert!(!number_ticks((low, high), 5.0, '.').list.is_empty());
         }
+    }
+
+    #[test]
+    fn logarithmic_scales_bear_decades_and_their_parts() {
+        let labels = |low: f64, high: f64| {
+            let ticks = scale_ticks(Axis::Logarithm, (low, high), 6.0, '.');
+            (ticks.list.into_iter().map(|tick| tick.label).collect::<Vec<_>>().join(" "), ticks.note)
+        };
+        assert_eq!(labels(-0.1, 2.1), ("1 2 5 10 20 50 100".into(), String::new()));
+        assert_eq!(labels(-7.2, -5.9), ("0.1 0.2 0.5 1".into(), "× 10⁻⁶".into()));
+        assert_eq!(labels(-9.0, -1.0).0, "10⁻⁹ 10⁻⁷ 10⁻⁵ 10⁻³ 10⁻¹");
+        assert_eq!(labels(1.51, 1.92).0, "40 50 60 70 80");
+        let ticks = scale_ticks(Axis::Logarithm, (0.0, 2.0), 6.0, '.');
+        assert!((ticks.list[1].at - std::f64::consts::LOG10_2).abs() < 1e-15);
+    }
+
+    #[test]
+    fn what_is_not_above_zero_has_no_place_on_a_logarithmic_scale() {
+        let points = vec![(1.0, 100.0, Some(1.0)), (10.0, 0.0, None), (-1.0, 10.0, None)];
+        let series = vec![Series { points, ..Series::default() }];
+        let chart = Chart { x_axis: Axis::Logarithm, y_axis: Axis::Logarithm, series, ..Chart::default() };
+        let points = in_decades(&chart).series[0].points.clone();
+        assert_eq!(points[0], (0.0, 2.0, None));
+        assert!(points[1].1.is_nan() && points[2].0.is_nan());
     }
 
     #[test]

@@ -22,6 +22,7 @@ pub fn series(series: &Series, index: usize, frame: &Frame) -> String {
             format!("curve(fill: {}, stroke: 0.6pt + black, {marks})", fill(index))
         }
         Style::Line => line(&points, index),
+        Style::Limits => limits(&points),
         Style::Steps => {
             let corners = points.windows(2).filter_map(|pair| Some((pair.get(1)?.0, pair.first()?.1)));
             let mut path: Vec<(f64, f64)> =
@@ -37,6 +38,10 @@ pub fn series(series: &Series, index: usize, frame: &Frame) -> String {
 pub fn sample(style: Style, index: usize) -> String {
     match style {
         Style::Points => format!("curve(fill: {}, stroke: 0.6pt + black, {})", fill(index), mark(index, (3.0, 0.0))),
+        Style::Limits => format!(
+            "curve(stroke: 0.5pt + black, {})",
+            stroke((1.5, 0.0), (4.5, 0.0)) + &stroke((1.5, -0.8), (1.5, 0.8)) + &stroke((4.5, -0.8), (4.5, 0.8))
+        ),
         Style::Line | Style::Steps => line(&[(0.0, 0.0), (6.0, 0.0)], index),
     }
 }
@@ -101,6 +106,18 @@ fn disc(x: f64, y: f64, r: f64) -> String {
         + &arc((-r, -k), (-k, -r), (0.0, -r))
         + &arc((k, -r), (r, -k), (r, 0.0))
         + "curve.close(), "
+}
+
+/// Bars with short caps from the first to the second point of each pair.
+fn limits(points: &[(f64, f64)]) -> String {
+    let mut path = String::new();
+    for pair in points.chunks_exact(2) {
+        let (x, low, high) = (pair[0].0, pair[0].1, pair[1].1);
+        path.push_str(&stroke((x, low), (x, high)));
+        path.push_str(&stroke((x - 0.8, low), (x + 0.8, low)));
+        path.push_str(&stroke((x - 0.8, high), (x + 0.8, high)));
+    }
+    format!("curve(stroke: 0.5pt + black, {path})")
 }
 
 /// Error bars with short caps.

@@ -1,6 +1,6 @@
 //! What a chart shows, in words.
 
-use super::{Axis, Chart, Series};
+use super::{Axis, Chart, Series, Style};
 use chrono::{DateTime, Utc};
 
 /// The text that stands for the chart where it cannot be seen.
@@ -16,6 +16,7 @@ pub fn alternative_text(chart: &Chart) -> String {
             line.half_width.filter(|half| half.is_finite()).map(|half| format!(" with a band of ± {}", number(half)));
         text.push_str(&format!("Line {} at {}{}. ", line.label, number(line.y), band.unwrap_or_default()));
     }
+    text.push_str(&chart.remark);
     text.trim_end().to_string()
 }
 
@@ -26,6 +27,10 @@ fn series_words(chart: &Chart, series: &Series) -> String {
     else {
         return format!("{name} has no points. ");
     };
+    if series.style == Style::Limits {
+        let (low, high) = (number(y.0), number(y.1));
+        return format!("{name}: bars at {} positions, between {low} and {high}. ", points.len() / 2);
+    }
     let count = if points.len() == 1 { "1 point".to_string() } else { format!("{} points", points.len()) };
     let mean = points.iter().map(|point| point.1 / points.len() as f64).sum::<f64>();
     format!(
@@ -50,7 +55,7 @@ fn position(chart: &Chart, x: f64) -> String {
         return chart.x_ticks.get(x.max(0.0) as usize).cloned().unwrap_or_else(|| number(x));
     }
     match chart.x_axis {
-        Axis::Number => number(x),
+        Axis::Number | Axis::Logarithm => number(x),
         Axis::Time => DateTime::<Utc>::from_timestamp(libm::floor(x) as i64, 0)
             .map_or_else(|| number(x), |time| time.format("%Y-%m-%d %H:%M:%S UTC").to_string()),
     }

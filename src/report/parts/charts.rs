@@ -9,7 +9,7 @@ use crate::report::Markup;
 use crate::report::chart::{Axis, Chart, Mean, Series, Style, figure};
 use crate::report::figures::Figure;
 
-const WIDTH_MM: f64 = 150.0;
+pub(super) const WIDTH_MM: f64 = 150.0;
 /// Two charts beside each other.
 const HALF_WIDTH_MM: f64 = 76.0;
 
@@ -27,7 +27,7 @@ pub fn chart_of(engine: &Engine, name: &str) -> Option<Markup> {
     combined(engine, name).map(|chart| figure(&chart, WIDTH_MM, 58.0))
 }
 
-fn marker(engine: &Engine) -> char {
+pub(super) fn marker(engine: &Engine) -> char {
     if engine.laboratory.style.marker == Marker::Comma { ',' } else { '.' }
 }
 
@@ -121,7 +121,7 @@ fn conditions(engine: &Engine, name: &str) -> Option<Markup> {
 }
 
 /// A unit as it stands behind a solidus: a product in brackets.
-fn solidus(unit: &str) -> String {
+pub(super) fn solidus(unit: &str) -> String {
     if unit.contains([' ', '\u{a0}']) { format!("({unit})") } else { unit.into() }
 }
 

@@ -1,14 +1,20 @@
 //! First-order propagation beside propagation of distributions: table, histogram, verdict.
 //!
-//! # Source   JCGM 101:2008, clause 8 (validation of first-order propagation by trials).
+//! # Source   JCGM 101:2008, clause 8 (validation of first-order propagation by trials); JCGM 100:2008, 5.1.2, NOTE
+//!            (terms of second order).
 
 use crate::block::Engine;
 use crate::diagnostic::Problem;
-use crate::graph::{Distributed, Histogram, NodeId, Validation, distributed, histogram, propagate_distributions};
+use crate::graph::{
+    Distributed, Histogram, NodeId, Validation, distributed, histogram, propagate_distributions,
+    second_order_uncertainty,
+};
+use crate::numeric::elementary::powi;
 use crate::quantity::{Marker, Style, Unit, choose_unit};
 use crate::report::Markup;
-use crate::report::chart::{Chart, Series, Style as Look, figure};
-use crate::report::figures::{Figure, fixed, per_cent, significant};
+use crate::report::chart::{Chart, Series, Style as Look, figure, superscript};
+use crate::report::figures::{Figure, fixed, per_cent};
+use crate::report::parts::charts::solidus;
 use crate::report::parts::results::nominal_probability;
 use crate::report::table::{Cell, Table, head};
 
@@ -22,7 +28,12 @@ pub struct Comparison {
     pub found: Distributed,
     pub histogram: Histogram,
     pub validation: Validation,
+    /// Standard uncertainty with the terms of second order, where they matter.
+    pub second_order: Option<f64>,
 }
+
+/// Terms of second order that change u by less than this part of it are not shown.
+const SMALLEST_CHANGE: f64 = 1e-3;
 
 impl Comparison {
     /// Runs the trials of one result.
@@ -37,18 +48,30 @@ impl Comparison {
         let expanded = figure.coverage.expanded_uncertainty;
         let validation =
             Validation::new(figure.value, expanded, found.symmetric, figure.coverage.standard_uncertainty, DIGITS);
-        Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation }))
+        let first = figure.coverage.standard_uncertainty;
+        let second_order = second_order_uncertainty(&engine.graph(), result)
+            .filter(|second| (second - first).abs() > SMALLEST_CHANGE * second);
+        Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation, second_order }))
+    }
+
+    /// The interval with the terms of second order, with the same coverage factor.
+    fn second_order_interval(&self) -> Option<(f64, f64, f64)> {
+        let u = self.second_order?;
+        let half = self.figure.coverage.factor * u;
+        Some((u, self.figure.value - half, self.figure.value + half))
     }
 
     /// The verdict: which interval is valid, and why.
     pub fn verdict(&self, style: Style) -> String {
-        let unit = unit_of(self);
+        let scale = Scale::of(self);
         let ends = |(low, high): (f64, f64)| {
-            let decimals = unit.difference_decimal_from_si(self.found.standard_uncertainty);
-            let decimals = decimals.and_then(|u| u.rounded_to_digits(2).leading_power()).map_or(4, |lead| 1 - lead);
-            let estimate = self.figure.value;
-            let text = |value: f64| fixed(style, unit.difference_from_si(value - estimate), decimals.max(0));
-            format!("[{}, {}] {}", text(low), text(high), style.unit(&unit))
+            let text = |value: f64| scale.text(style, value - self.figure.value, 2);
+            let unit = match (scale.power, scale.unit_text(style).as_str()) {
+                (0, "") => String::new(),
+                (0, unit) => format!("\u{a0}{unit}"),
+                (_, power) => format!("\u{a0}×\u{a0}{power}"),
+            };
+            format!("[{}, {}]{unit}", text(low), text(high))
         };
         match self.validation.is_valid() {
             true => format!(
@@ -83,24 +106,55 @@ pub fn distribution_part(engine: &Engine, result: NodeId) -> Result<Markup, Prob
     Ok(made)
 }
 
-fn unit_of(comparison: &Comparison) -> Unit {
-    choose_unit(comparison.figure.coverage.standard_uncertainty, &comparison.figure.unit)
+/// How departures are shown: in a unit with a prefix that suits u, or in a power of ten where the unit is one.
+struct Scale {
+    unit: Unit,
+    power: i32,
+    /// The power of ten of the first digit of u on this scale.
+    lead: i32,
+}
+
+impl Scale {
+    fn of(comparison: &Comparison) -> Scale {
+        // At a point without slope first order knows no u.
+        let u = comparison.figure.coverage.standard_uncertainty.max(comparison.found.standard_uncertainty);
+        let unit = choose_unit(u, &comparison.figure.unit);
+        let lead = unit.difference_decimal_from_si(u).and_then(|u| u.rounded_to_digits(2).leading_power()).unwrap_or(0);
+        let power = if unit.is_one() && !(-2..=3).contains(&lead) { lead.div_euclid(3) * 3 } else { 0 };
+        Scale { unit, power, lead: lead - power }
+    }
+
+    fn shown(&self, value: f64) -> f64 {
+        self.unit.difference_from_si(value) * powi(10.0, -self.power)
+    }
+
+    /// With as many decimals as show u to so many digits.
+    fn text(&self, style: Style, value: f64, digits: i32) -> String {
+        fixed(style, self.shown(value), (digits - 1 - self.lead).max(0))
+    }
+
+    fn unit_text(&self, style: Style) -> String {
+        match self.power {
+            0 => style.unit(&self.unit),
+            power => format!("10{}", superscript(power)),
+        }
+    }
 }
 
 /// Values as departures from the first-order estimate, which keeps their digits beside a large value.
 fn table(engine: &Engine, comparison: &Comparison) -> Markup {
     let style = engine.laboratory.style;
-    let unit = unit_of(comparison);
+    let scale = Scale::of(comparison);
     let estimate = comparison.figure.value;
-    let shown = |value: f64| -> Cell { departure(style, &unit, value) };
+    let shown = |value: f64| Cell::from(scale.text(style, value, 3));
     let probability = per_cent(style, nominal_probability(comparison.found.probability));
-    let unit_text = style.unit(&unit);
+    let unit_text = scale.unit_text(style);
     let header = vec![
         "Propagation".into(),
         head("y", &unit_text),
         head("u", &unit_text),
-        format!("lower end/{unit_text}").into(),
-        format!("upper end/{unit_text}").into(),
+        over("lower end", &unit_text).into(),
+        over("upper end", &unit_text).into(),
     ];
     let caption = format!(
         "{}: first order and {} trials, {probability} coverage intervals, as departures from {}",
@@ -120,6 +174,9 @@ fn table(engine: &Engine, comparison: &Comparison) -> Markup {
         comparison.figure.coverage.standard_uncertainty,
         validation.first_order,
     ));
+    if let Some((u, low, high)) = comparison.second_order_interval() {
+        table.rows.push(row("with terms of second order", estimate, u, (low, high)));
+    }
     table.rows.push(row("trials, symmetric interval", found.estimate, found.standard_uncertainty, found.symmetric));
     table.rows.push(row("trials, shortest interval", found.estimate, found.standard_uncertainty, found.shortest));
     let blank = || Cell::from("");
@@ -134,36 +191,35 @@ fn table(engine: &Engine, comparison: &Comparison) -> Markup {
         "numerical tolerance δ".into(),
         blank(),
         blank(),
-        significant(style, unit.difference_from_si(validation.tolerance), 1).into(),
+        scale.text(style, validation.tolerance, 2).into(),
         blank(),
     ]);
     table.markup()
 }
 
-fn departure(style: Style, unit: &Unit, value: f64) -> Cell {
-    fixed(style, unit.difference_from_si(value), 4).into()
+/// A word over the unit it is counted in.
+fn over(word: &str, unit: &str) -> String {
+    if unit.is_empty() { word.into() } else { format!("{word}/{}", solidus(unit)) }
 }
 
 fn chart(engine: &Engine, comparison: &Comparison) -> Chart {
-    let unit = unit_of(comparison);
+    let scale = Scale::of(comparison);
+    let unit_text = scale.unit_text(engine.laboratory.style);
     let (estimate, u) = (comparison.figure.value, comparison.figure.coverage.standard_uncertainty);
-    let at = |value: f64| unit.difference_from_si(value - estimate);
+    let at = |value: f64| scale.shown(value - estimate);
     let classes = &comparison.histogram;
     let width = (classes.to - classes.from) / classes.counts.len() as f64;
     let total: f64 = classes.counts.iter().map(|count| *count as f64).sum();
-    let density = |count: u64| count as f64 / (total * unit.difference_from_si(width));
-    let mut steps: Vec<(f64, f64, Option<f64>)> = classes
-        .counts
-        .iter()
-        .enumerate()
-        .map(|(index, count)| (at(classes.from + width * index as f64), density(*count), None))
-        .collect();
+    let density = |count: u64| count as f64 / (total * scale.shown(width));
+    let mut steps = vec![(at(classes.from), 0.0, None)];
+    let class = |(index, count): (usize, &u64)| (at(classes.from + width * index as f64), density(*count), None);
+    steps.extend(classes.counts.iter().enumerate().map(class));
     steps.push((at(classes.to), 0.0, None));
     let highest = steps.iter().map(|(_, y, _)| *y).fold(0.0, f64::max);
-    let scale = unit.difference_from_si(u);
+    let spread = scale.shown(u);
     let normal = (0..=80).map(|index| {
         let z = -4.0 + f64::from(index) * 0.1;
-        (z * scale, crate::numeric::distribution::normal_density(z) / scale, None)
+        (z * spread, crate::numeric::distribution::normal_density(z) / spread, None)
     });
     let bar = |ends: (f64, f64), height: f64| {
         vec![(at(ends.0), height * highest, None), (at(ends.1), height * highest, None)]
@@ -174,8 +230,8 @@ fn chart(engine: &Engine, comparison: &Comparison) -> Chart {
             "{}: distribution of the trials, and the density of first-order propagation",
             comparison.figure.label
         ),
-        x_label: format!("departure/{}", engine.laboratory.style.unit(&unit)),
-        y_label: format!("density × {}", engine.laboratory.style.unit(&unit)),
+        x_label: over("departure", &unit_text),
+        y_label: if unit_text.is_empty() { "density".into() } else { format!("density × {unit_text}") },
         series: vec![
             Series { name: "trials".into(), points: steps, style: Look::Steps },
             Series { name: "first order".into(), points: normal.collect(), style: Look::Line },

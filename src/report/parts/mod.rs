@@ -1,5 +1,7 @@
 //! The parts a report is put together from: tables, lists, charts and statements made from the graph.
 
+pub mod allan;
+pub mod analysis;
 pub mod annex;
 pub mod budget;
 pub mod campaign;
@@ -10,6 +12,7 @@ pub mod contents;
 pub mod correlation;
 pub mod distribution;
 pub mod excluded;
+pub mod fit;
 pub mod protocol;
 pub mod readings;
 pub mod results;
@@ -19,6 +22,8 @@ pub mod traceability;
 pub mod trail;
 
 use super::Markup;
+use crate::block::Engine;
+use crate::graph::{Decision, Op};
 
 /// A list of short texts.
 pub fn bullets(items: &[String]) -> Markup {
@@ -28,4 +33,25 @@ pub fn bullets(items: &[String]) -> Markup {
     }
     made.push_code("\n");
     made
+}
+
+/// What the estimator behind a result decided.
+pub fn decisions_behind(engine: &Engine, path: &str) -> Vec<Decision> {
+    let graph = engine.graph();
+    let found = graph.find(path).map(|id| graph.node(id).op.clone());
+    match found {
+        Some(Op::Output(estimator, _)) => graph.estimators[estimator.index()].estimate.decisions.clone(),
+        _ => Vec::new(),
+    }
+}
+
+/// A decision as a sentence.
+pub fn sentence(decision: &Decision) -> String {
+    format!("{}: {}.", capital(&decision.what), decision.decided)
+}
+
+/// With a capital first letter.
+pub fn capital(text: &str) -> String {
+    let mut letters = text.chars();
+    letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
 }

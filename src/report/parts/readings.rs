@@ -6,6 +6,7 @@ use crate::block::weighing::{Comparison, CycleResult, pan_letter};
 use crate::quantity::{Decimal, Unit};
 use crate::report::Markup;
 use crate::report::figures::fixed;
+use crate::report::parts::capital;
 use crate::report::table::{Cell, Table, head};
 
 /// More cycles than this are shown by series, with the readings in the attached files.
@@ -122,9 +123,4 @@ fn decimals_of(indications: &[f64], unit: &Unit) -> i32 {
 
 fn time_of_day(time: f64) -> String {
     clock(time).get(11..19).unwrap_or_default().to_string()
-}
-
-fn capital(text: &str) -> String {
-    let mut letters = text.chars();
-    letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
 }
