@@ -16,6 +16,7 @@ use std::any::{Any, TypeId};
 use std::cell::{Ref, RefCell};
 use std::collections::{BTreeMap, BTreeSet};
 use std::rc::Rc;
+use std::sync::Arc;
 
 /// A block of a known kind, checked against its fields.
 pub struct Block {
@@ -68,6 +69,7 @@ pub struct Engine<'i> {
     pub laboratory: Laboratory,
     pub records: Vec<Record>,
     pub builder: Builder,
+    campaign: Option<String>,
     sources: RefCell<Sources>,
     blocks: BTreeMap<String, Block>,
     progress: RefCell<Progress>,
@@ -104,6 +106,7 @@ impl<'i> Engine<'i> {
             laboratory,
             records,
             builder: Builder::default(),
+            campaign: campaign.map(String::from),
             sources: RefCell::new(sources),
             blocks,
             progress: RefCell::new(progress),
@@ -135,6 +138,15 @@ impl<'i> Engine<'i> {
     /// Files a problem at a place.
     pub fn complain(&self, problem: Problem, place: Place) {
         self.progress.borrow_mut().complaints.add_at(problem, place);
+    }
+
+    /// Files a problem at a place, where it has one.
+    pub fn complain_somewhere(&self, problem: Problem, place: Option<Place>) {
+        let complaint = match place {
+            Some(place) => problem.at(place),
+            None => problem.anywhere(),
+        };
+        self.progress.borrow_mut().complaints.add(complaint);
     }
 
     /// Files several complaints.
@@ -177,6 +189,35 @@ impl<'i> Engine<'i> {
         };
         self.progress.borrow_mut().files.insert(file);
         Ok(file)
+    }
+
+    /// Whether records of the campaign read may use this file: its own and the shared ones.
+    pub fn sees(&self, path: &str) -> bool {
+        match (self.campaign.as_deref(), path.strip_prefix("campaigns/")) {
+            (Some(campaign), Some(inside)) => inside.split('/').next() == Some(campaign),
+            _ => true,
+        }
+    }
+
+    /// The bytes of a file as they stand in the folder, without marking it as used.
+    ///
+    /// # Errors
+    /// When it cannot be read.
+    pub fn original(&self, path: &str) -> Result<Arc<[u8]>, IntakeError> {
+        let sources = self.sources.borrow();
+        match sources.find(path) {
+            Some(file) => Ok(sources.file(file).bytes.clone()),
+            None => Ok(self.intake.read(path)?.into()),
+        }
+    }
+
+    /// Takes a file in for its places, without marking it as used.
+    ///
+    /// # Errors
+    /// When it cannot be read.
+    pub fn take_in(&self, path: &str) -> Result<FileId, IntakeError> {
+        let bytes = self.original(path)?;
+        Ok(self.sources.borrow_mut().add(path, bytes))
     }
 
     /// Marks a file as part of what a report rests on.

@@ -3,16 +3,23 @@
 #![allow(clippy::disallowed_methods)]
 
 mod audit;
+mod authorise;
 mod budget;
 mod disk;
 mod examine;
 mod folder;
+mod issue;
+mod lodge;
 mod reduce;
+mod register;
 mod report;
+mod send;
 mod start;
 mod terminal;
 mod trail;
 mod validate;
+mod vault;
+mod withdraw;
 
 use clap::{Parser, Subcommand};
 use std::process::ExitCode;
@@ -54,6 +61,18 @@ enum Command {
     Budget(budget::Budget),
     /// Typeset a report as a draft PDF with its dossier
     Report(report::Report),
+    /// Enter records and raw data into the register as they are made
+    Lodge(lodge::Lodge),
+    /// Record that a report was reviewed or authorised as it stands
+    Authorise(authorise::Authorise),
+    /// Give an authorised report its number and its final form
+    Issue(issue::Issue),
+    /// Record to whom an issued report went
+    Send(send::Send),
+    /// Withdraw an issued report
+    Withdraw(withdraw::Withdraw),
+    /// List issued reports and entries of the register, or verify it
+    Register(register::Register),
     /// Check a report from its PDF alone
     Audit(audit::Audit),
     /// Run every published check built in and print the validation record
@@ -96,6 +115,12 @@ pub fn run() -> ExitCode {
         Command::Trail(command) => command.run(),
         Command::Budget(command) => command.run(),
         Command::Report(command) => command.run(),
+        Command::Lodge(command) => command.run(),
+        Command::Authorise(command) => command.run(),
+        Command::Issue(command) => command.run(),
+        Command::Send(command) => command.run(),
+        Command::Withdraw(command) => command.run(),
+        Command::Register(command) => command.run(),
         Command::Audit(command) => command.run(),
         Command::Validate(command) => command.run(),
     };

@@ -8,6 +8,7 @@
 //! The seal is the SHA-256 of the bytes of `contents.json`.
 
 use super::derivation::derivation_json;
+use super::issue::Issue;
 use super::listing::list_results;
 use super::typeset::{Attachment, Relationship};
 use crate::block::Engine;
@@ -116,6 +117,17 @@ impl Dossier {
             mime_type: mime_type(name).into(),
             description,
         }
+    }
+}
+
+/// What is attached to an issued report beside its dossier.
+pub fn issue_attachment(issue: &Issue) -> Attachment {
+    Attachment {
+        name: ISSUE.into(),
+        bytes: issue.bytes(),
+        relationship: Relationship::Supplement,
+        mime_type: mime_type(ISSUE).into(),
+        description: "number, date, authorisations and head of the register; outside the seal".into(),
     }
 }
 
