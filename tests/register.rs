@@ -35,6 +35,8 @@ fn issued(place: u64, kind: ReportKind, of: Option<&str>) -> Act {
         blocks: Vec::new(),
         seen: "7".repeat(64),
         performed_by: "duty metrologist".into(),
+        results: vec!["R1.mass".into()],
+        left_out: Vec::new(),
     }))
 }
 
@@ -648,4 +650,141 @@ fn a_process_killed_at_any_instant_leaves_a_whole_report_or_none() {
     let left = std::fs::read_dir(folder.join("register/reports")).expect("the archive").count();
     printed(&mut program(&folder, "2041-06-01", &["lodge", "--as", "duty metrologist"]));
     assert!(left <= paths.len() + 1, "{left} files in the archive");
+}
+
+/// The number of the line that holds a text.
+fn line_of(path: &Path, text: &str) -> usize {
+    let whole = std::fs::read_to_string(path).expect("a record");
+    1 + whole.lines().position(|line| line.contains(text)).unwrap_or_else(|| panic!("no {text}"))
+}
+
+/// Writes a record with one correction.
+fn correct(folder: &Path, home: &str, name: &str, record: &str, old: &str, new: &str) {
+    let line = line_of(&folder.join(record), old);
+    let escaped = |text: &str| text.replace('\\', "\\\\").replace('"', "\\\"").replace('\n', "\\n");
+    let text = format!(
+        "---\nrecord: {name}\ndate: 2041-05-25\nperformed_by: second metrologist\n---\n\n# A correction\n\n\
+         ```yaml correction {name}\nrecord: {record}\nline: {line}\nold: \"{}\"\nnew: \"{}\"\n\
+         reason: digits exchanged when written down\nby: second metrologist\ndate: 2041-05-25\n```\n",
+        escaped(old),
+        escaped(new)
+    );
+    std::fs::write(folder.join(home), text).expect("written");
+}
+
+/// A reading of the first day, and what it should have been.
+const RAW: &str = "campaigns/two-kilograms/raw/day-1.csv";
+const MISREAD: (&str, &str) = ("-147.68322", "-147.63822");
+
+#[test]
+fn a_correction_leaves_the_original_and_shows_both_texts() {
+    let folder = laboratory("correction");
+    printed(&mut program(&folder, "2041-05-16", &["lodge", "--as", "duty metrologist"]));
+    let before = printed(&mut program(&folder, "2041-05-16", &["reduce", "--csv"]));
+    let raw = std::fs::read(folder.join(RAW)).expect("raw data");
+    correct(&folder, "campaigns/two-kilograms/corrections.md", "C1", RAW, MISREAD.0, MISREAD.1);
+    let after = printed(&mut program(&folder, "2041-05-25", &["reduce", "--csv"]));
+    assert_ne!(before, after, "the correction changes nothing");
+    assert!(std::fs::read(folder.join(RAW)).expect("raw data") == raw);
+    let trail =
+        String::from_utf8(printed(&mut program(&folder, "2041-05-25", &["trail", "W1.difference"]))).expect("text");
+    assert!(trail.contains("corrected by C1: “-147.68322” to “-147.63822” (digits exchanged when written down; second metrologist, 2041-05-25)"), "{trail}");
+    // Not lodged, the correction stops the issue; lodged, it has an entry of its own.
+    for who in ["second metrologist", "technical manager"] {
+        printed(&mut program(&folder, "2041-05-26", &["authorise", REPORT, "--as", who]));
+    }
+    let (status, said) = told(&mut program(&folder, "2041-05-26", &["issue", REPORT, "--as", "technical manager"]));
+    assert!(status == Some(1) && said.contains("not_lodged") && said.contains("corrections.md"), "{said}");
+    printed(&mut program(&folder, "2041-05-26", &["lodge", "--as", "duty metrologist"]));
+    let entries =
+        String::from_utf8(printed(&mut program(&folder, "2041-05-26", &["register", "--entries", "--record", RAW])));
+    let entries = entries.expect("text");
+    assert!(entries.contains("corrected") && entries.contains("“-147.68322” to “-147.63822”"), "{entries}");
+    printed(&mut program(&folder, "2041-05-26", &["issue", REPORT, "--as", "technical manager"]));
+    // The PDF carries the file as first written and the correction, and proves itself by applying it again.
+    let (status, found) = audit(&folder, "register/reports/0001.pdf");
+    assert_eq!(status, Some(0), "{found}");
+    let pdf = std::fs::read(folder.join("register/reports/0001.pdf")).expect("the report");
+    let originals = libripens::register::originals(&pdf).expect("attached files");
+    assert!(originals[RAW] == raw && originals.contains_key("campaigns/two-kilograms/corrections.md"));
+}
+
+#[test]
+fn a_correction_by_a_stranger_is_not_lodged() {
+    let folder = laboratory("stranger");
+    correct(&folder, "campaigns/two-kilograms/corrections.md", "C1", RAW, MISREAD.0, MISREAD.1);
+    let path = folder.join("campaigns/two-kilograms/corrections.md");
+    let text = std::fs::read_to_string(&path).expect("the correction");
+    std::fs::write(&path, text.replace("by: second metrologist", "by: night watch")).expect("written");
+    let (status, said) = told(&mut program(&folder, "2041-05-25", &["lodge", "--as", "duty metrologist"]));
+    assert!(status == Some(1) && said.contains("person_unauthorised") && said.contains("night watch"), "{said}");
+}
+
+fn findings(folder: &Path) -> (Option<i32>, serde_json::Value) {
+    let output = program(folder, "2041-06-01", &["consequences", "--json"]).output().expect("the program starts");
+    (output.status.code(), serde_json::from_slice(&output.stdout).expect("JSON"))
+}
+
+fn texts(list: &serde_json::Value, key: &str) -> Vec<String> {
+    list.as_array().expect("a list").iter().map(|one| one[key].as_str().expect("text").to_string()).collect()
+}
+
+#[test]
+fn consequences_find_what_changed_and_a_decision_holds_for_exactly_that() {
+    let folder = authorised("consequences");
+    printed(&mut issue(&folder, REPORT));
+    let (status, found) = findings(&folder);
+    assert_eq!((status, &found[0]["proven_by_hash"]), (Some(0), &true.into()), "{found}");
+    assert_eq!(
+        told(&mut program(
+            &folder,
+            "2041-06-01",
+            &["decide", "0001", "no-action", "--as", "technical manager", "--why", "x"]
+        ))
+        .0,
+        Some(2)
+    );
+
+    // A record the campaign sees but does not use is re-computed, and nothing is found.
+    std::fs::write(folder.join("standards/notes.md"), "# Notes\n").expect("written");
+    let (status, found) = findings(&folder);
+    assert_eq!((status, &found[0]["proven_by_hash"]), (Some(0), &false.into()), "{found}");
+
+    correct(&folder, "campaigns/two-kilograms/corrections.md", "C1", RAW, MISREAD.0, MISREAD.1);
+    let (status, found) = findings(&folder);
+    let difference = &found[0]["difference"];
+    assert_eq!(status, Some(1), "{found}");
+    assert_eq!(found[0]["files_changed"], serde_json::json!([RAW]));
+    let results = texts(&difference["results"], "name");
+    assert_eq!(results, ["R1.conventional_mass", "R1.mass"], "{difference}");
+    assert_eq!(difference["unchanged"], serde_json::json!(["R2.conventional_mass", "R2.mass"]));
+    assert!(difference["results"][1]["because_of"].as_array().is_some_and(|names| !names.is_empty()), "{difference}");
+    assert!(difference["results"][1]["relative_to_uncertainty"].as_f64().is_some_and(|ratio| ratio.abs() > 0.01));
+
+    let decide = ["decide", "0001", "no-action", "--as", "technical manager", "--why", "far below the uncertainty"];
+    printed(&mut program(&folder, "2041-06-01", &decide));
+    let (status, found) = findings(&folder);
+    assert_eq!((status, &found[0]["decision"]["decision"]), (Some(0), &"no_action".into()), "{found}");
+
+    // Another change: the decision no longer holds.
+    let newer = "calibrations:\n  - {certificate: C-41-200, date: 2041-05-01, due: 2043-05-01, mass: 1 kg + 0.300(12) mg, basis: consensus_8}";
+    correct(&folder, "standards/corrections.md", "C2", "standards/k17.md", "calibrations:", newer);
+    let (status, found) = findings(&folder);
+    assert_eq!(status, Some(1), "{found}");
+    assert!(
+        found[0]["decision"].is_null() && !found[0]["difference"]["superseded"].as_array().expect("a list").is_empty(),
+        "{found}"
+    );
+}
+
+#[test]
+fn a_run_added_since_is_found() {
+    let folder = authorised("run-added");
+    printed(&mut issue(&folder, REPORT));
+    let run = "---\nrecord: TK-14\ndate: 2041-05-28\n---\n\n```yaml comparison W8\ncycle: ABBA\na: K17\nb: S1\nresult: b minus a\n\
+               comparator: M1\nambient: A3\ntype_a: own\nunit: mg\ndata: D3_S1\n```\n";
+    std::fs::write(folder.join("campaigns/two-kilograms/day-4.md"), run).expect("written");
+    let (status, found) = findings(&folder);
+    assert_eq!((status, &found[0]["runs_added"]), (Some(1), &serde_json::json!(["W8"])), "{found}");
+    assert!(found[0]["difference"]["results"].as_array().expect("a list").is_empty(), "{found}");
 }

@@ -23,6 +23,7 @@ pub mod combined_result;
 pub mod combining;
 pub mod comparator;
 pub mod comparison;
+pub mod correction;
 pub mod correlation;
 pub mod engine;
 pub mod equation;
@@ -85,6 +86,7 @@ pub static KINDS: &[&BlockKind] = &[
     &combined_result::KIND,
     &comparator::KIND,
     &comparison::KIND,
+    &correction::KIND,
     &correlation::KIND,
     &particulars::CUSTOMER,
     &fit::KIND,

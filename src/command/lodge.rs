@@ -31,10 +31,15 @@ impl Lodge {
         let folder = Folder::find(&self.path)?;
         let vault = Vault::open(&folder.root)?;
         let engine = Engine::read(&folder.disk, None).map_err(Stopped::because)?;
-        let person = match acting(&engine, &self.who, None, now()?.time.date_naive()) {
+        let today = now()?.time.date_naive();
+        let person = match acting(&engine, &self.who, None, today) {
             Ok(person) => person,
             Err(problem) => return Ok(terminal::refuse(&engine, vec![problem])),
         };
+        let unknown = engine.corrections().iter().find_map(|one| acting(&engine, &one.by, None, today).err());
+        if let Some(problem) = unknown {
+            return Ok(terminal::refuse(&engine, vec![problem]));
+        }
         let files = match files_to_lodge(&engine, &folder.place) {
             Ok(files) if files.is_empty() => {
                 return Err(Stopped(format!(
@@ -49,11 +54,14 @@ impl Lodge {
             Ok(ledger) => ledger,
             Err(problem) => return Ok(terminal::refuse(&engine, vec![problem])),
         };
-        match lodge(&mut ledger, &files, &person.role, &self.why) {
+        match lodge(&mut ledger, &files, engine.corrections(), &person.role, &self.why) {
             Ok(lodging) => {
                 let mut said = String::new();
                 for file in &lodging.entered {
                     said += &format!("lodged {}  {}\n", &file.sha256[..16], file.path);
+                }
+                if lodging.corrections > 0 {
+                    said += &format!("{} entered\n", terminal::counted(lodging.corrections, "correction"));
                 }
                 let (new, known) = (terminal::counted(lodging.entered.len(), "file"), lodging.known);
                 said +=

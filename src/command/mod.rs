@@ -5,6 +5,8 @@
 mod audit;
 mod authorise;
 mod budget;
+mod consequences;
+mod decide;
 mod disk;
 mod examine;
 mod folder;
@@ -71,6 +73,10 @@ enum Command {
     Send(send::Send),
     /// Withdraw an issued report
     Withdraw(withdraw::Withdraw),
+    /// Find which issued reports the present records would change
+    Consequences(consequences::Consequences),
+    /// Record what is done about an issued report whose inputs changed
+    Decide(decide::Decide),
     /// List issued reports and entries of the register, or verify it
     Register(register::Register),
     /// Check a report from its PDF alone
@@ -120,6 +126,8 @@ pub fn run() -> ExitCode {
         Command::Issue(command) => command.run(),
         Command::Send(command) => command.run(),
         Command::Withdraw(command) => command.run(),
+        Command::Consequences(command) => command.run(),
+        Command::Decide(command) => command.run(),
         Command::Register(command) => command.run(),
         Command::Audit(command) => command.run(),
         Command::Validate(command) => command.run(),

@@ -45,6 +45,7 @@ codes! {
     ConditionsOutOfSpan "conditions_out_of_span" Fault "Conditions are asked for at a time outside the logged span.";
     ContentMissing "content_missing" Fault "A report lacks content it must have, and no reason is recorded.";
     ConventionMismatch "convention_mismatch" Fault "Values that must follow one convention follow two.";
+    CorrectionUnfit "correction_unfit" Fault "A correction does not fit the file it names, or would not be seen wherever the file is used.";
     CorrelationImpossible "correlation_impossible" Fault "Stated correlations or covariances contradict each other.";
     CustomerForeign "customer_foreign" Fault "Data of another customer are among what a report rests on.";
     DecimalComma "decimal_comma" Fault "A number is written with a decimal comma.";

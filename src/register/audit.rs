@@ -111,6 +111,15 @@ pub fn originals(bytes: &[u8]) -> Result<BTreeMap<String, Vec<u8>>, Problem> {
     Ok(files_by_path(&file, &contents))
 }
 
+/// One attached file of a report, by the name it is attached under.
+///
+/// # Errors
+/// When the bytes are no PDF that can be read, or nothing is attached under this name.
+pub fn attached(bytes: &[u8], name: &str) -> Result<Vec<u8>, Problem> {
+    let missing = || Problem::new(crate::diagnostic::Code::FileMissing, format!("{name} is not attached."));
+    read_pdf(bytes)?.attachments.remove(name).ok_or_else(missing)
+}
+
 /// Damage or extras in the file itself.
 fn check_form(file: &PdfFile, audit: &mut Audit) {
     audit.note(

@@ -15,6 +15,8 @@ pub struct Duties {
     pub performed_by: String,
     pub reviewed_by: Option<String>,
     pub authorised_by: Option<String>,
+    pub results: Vec<String>,
+    pub runs_left_out: Vec<String>,
 }
 
 impl Duties {
@@ -30,6 +32,8 @@ impl Duties {
             performed_by: report.words("performed_by"),
             reviewed_by: text("reviewed_by"),
             authorised_by: text("authorised_by"),
+            results: report.texts("results").into_iter().map(|text| text.text).collect(),
+            runs_left_out: report.mappings("runs_left_out").iter().map(|run| run.words("run")).collect(),
         }
     }
 

@@ -46,7 +46,7 @@ pub enum Act {
     /// Records and raw data were entered as made; a copy of each is kept.
     Lodged { files: Vec<LodgedFile> },
     /// A value of a lodged record was corrected by an entry of its own.
-    Corrected { correction: String, file: String, old: String, new: String },
+    Corrected { correction: String, file: String, line: u64, old: String, new: String, by: String },
     /// One seal was reviewed or authorised.
     Authorised { report: String, seal: String, duty: Duty },
     /// A report was issued.
@@ -89,9 +89,13 @@ pub struct IssuedReport {
     pub files: Vec<FileHash>,
     /// Blocks the report rests on.
     pub blocks: Vec<UsedBlock>,
-    /// SHA-256 over paths and hashes of all records the campaign saw.
+    /// SHA-256 over paths and hashes of all records the campaign saw, but for those that are reports.
     pub seen: String,
     pub performed_by: String,
+    /// The results it reports.
+    pub results: Vec<String>,
+    /// Runs of its items that it leaves out with a reason.
+    pub left_out: Vec<String>,
 }
 
 /// A file a report rests on.

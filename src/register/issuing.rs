@@ -7,7 +7,7 @@
 use super::authorise::{Duties, authorisations};
 use super::entry::{Act, Entry, FileHash, IssuedReport, UsedBlock, written_time};
 use super::ledger::{Ledger, archive_path, staged_path};
-use super::lodge::check_lodged;
+use super::lodge::{check_lodged, is_report};
 use super::requirements::check_requirements;
 use super::state::standings;
 use crate::block::Engine;
@@ -150,14 +150,17 @@ fn issued_act(
         blocks: blocks.collect(),
         seen: seen(engine),
         performed_by: duties.performed_by.clone(),
+        results: duties.results.clone(),
+        left_out: duties.runs_left_out.clone(),
     }))
 }
 
-/// SHA-256 over paths and hashes of all records that the campaign sees.
+/// SHA-256 over paths and hashes of all records that the campaign sees, but for those that are reports.
 pub fn seen(engine: &Engine) -> String {
     let mut lines: Vec<String> = engine
         .records
         .iter()
+        .filter(|record| !is_report(record))
         .map(|record| engine.sources().file(record.file).path.clone())
         .map(|path| format!("{} {path}\n", engine.original(&path).map(|bytes| sha256(&bytes)).unwrap_or_default()))
         .collect();

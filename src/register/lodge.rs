@@ -4,6 +4,7 @@ use super::chain::{REGISTER, Register};
 use super::entry::{Act, Entry, LodgedFile};
 use super::ledger::{Ledger, original_path};
 use crate::block::Engine;
+use crate::block::correction::Correction;
 use crate::diagnostic::{Code, Problem};
 use crate::intake::{IntakeError, Place};
 use crate::record::{Node, Record};
@@ -23,12 +24,14 @@ pub struct ToLodge {
 #[derive(Debug, Clone, Default, PartialEq, Eq)]
 pub struct Lodging {
     pub entered: Vec<LodgedFile>,
+    /// Corrections stated in them, each with an entry of its own.
+    pub corrections: usize,
     /// Files that were lodged before and are as they were.
     pub known: usize,
 }
 
 /// Whether a record is a report: those are sealed and authorised, not lodged.
-fn is_report(record: &Record) -> bool {
+pub fn is_report(record: &Record) -> bool {
     record.front.as_ref().is_some_and(|front| front.get("report").is_some())
 }
 
@@ -86,11 +89,17 @@ pub fn lodged(register: &Register) -> BTreeMap<&str, (&LodgedFile, &Entry)> {
     files.flatten().collect()
 }
 
-/// Lodges files: keeps a copy of each, then makes one entry. What is known and unchanged is left as it is.
+/// Lodges files: keeps a copy of each, then makes one entry, and one more for each correction they state. What is known and unchanged is left as it is.
 ///
 /// # Errors
 /// `lodged_file_changed`, one for each file that is not as it was lodged: then nothing is entered.
-pub fn lodge(ledger: &mut Ledger<'_>, files: &[ToLodge], who: &str, why: &str) -> Result<Lodging, Vec<Problem>> {
+pub fn lodge(
+    ledger: &mut Ledger<'_>,
+    files: &[ToLodge],
+    corrections: &[Correction],
+    who: &str,
+    why: &str,
+) -> Result<Lodging, Vec<Problem>> {
     let known = lodged(&ledger.register);
     let (mut lodging, mut problems, mut fresh) = (Lodging::default(), Vec::new(), Vec::new());
     for file in files {
@@ -113,7 +122,21 @@ pub fn lodge(ledger: &mut Ledger<'_>, files: &[ToLodge], who: &str, why: &str) -
         let (path, bytes) = (file.path.clone(), file.bytes.len() as u64);
         lodging.entered.push(LodgedFile { path, sha256: hash.clone(), bytes, stated: file.stated.clone() });
     }
-    ledger.enter(Act::Lodged { files: lodging.entered.clone() }, who, why).map_err(one)?;
+    let mut acts = vec![(Act::Lodged { files: lodging.entered.clone() }, who.to_string(), why.to_string())];
+    let is_new = |one: &&Correction| fresh.iter().any(|(file, _)| file.path == one.stated_in);
+    for one in corrections.iter().filter(is_new) {
+        let act = Act::Corrected {
+            correction: one.name.clone(),
+            file: one.record.clone(),
+            line: one.line as u64,
+            old: one.old.clone(),
+            new: one.new.clone(),
+            by: one.by.clone(),
+        };
+        acts.push((act, who.to_string(), one.reason.clone()));
+        lodging.corrections += 1;
+    }
+    ledger.enter_all(acts).map_err(one)?;
     Ok(lodging)
 }
 

@@ -14,6 +14,8 @@
 //! | `authorise` | review and authorisation of one seal                                           |
 //! | `requirements` | what must be there before a report is issued                                |
 //! | `issuing`   | number, seal, pages without DRAFT, entry, archive                              |
+//! | `difference` | what changed between two lists of results                                      |
+//! | `consequences` | which issued reports the present records would change, and by how much      |
 //! | `people`    | who may do what, on which day                                                  |
 //! | `lodge`     | entering records and raw data as made; whether they were changed since        |
 //! | `pdf_file`  | reading a PDF that anybody may have made: attachments, revisions, oddities    |
@@ -24,6 +26,8 @@ pub mod audit;
 pub mod authorise;
 pub mod canonical;
 pub mod chain;
+pub mod consequences;
+pub mod difference;
 pub mod entry;
 pub mod issuing;
 pub mod kept;

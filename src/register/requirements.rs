@@ -168,13 +168,9 @@ impl<'e> Check<'e> {
         let items: BTreeSet<String> = self.report.texts("items").into_iter().map(|text| text.text).collect();
         let used = self.engine.used_blocks();
         let explained: Vec<Fields<'_>> = self.report.mappings("runs_left_out");
-        let is_run = |block: &&Block| {
-            !block.kind.outputs.is_empty()
-                && !matches!(block.kind.name, "item" | "mass-standard")
-                && !used.iter().any(|name| name == block.name())
-                && names_one_of(&block.raw.body, &items)
-        };
-        for run in self.engine.blocks().values().filter(is_run) {
+        let blocks = self.engine.blocks();
+        let runs = runs_of(self.engine, &items).into_iter().filter(|name| !used.contains(name));
+        for run in runs.filter_map(|name| blocks.get(&name)) {
             let reason = explained.iter().find(|entry| entry.words("run") == run.name());
             if reason.is_some_and(|entry| !entry.words("reason").trim().is_empty()) {
                 continue;
@@ -188,6 +184,16 @@ impl<'e> Check<'e> {
             self.engine.complain(complaint, run.raw.name.place);
         }
     }
+}
+
+/// Blocks that compute something of one of these items.
+pub fn runs_of(engine: &Engine, items: &BTreeSet<String>) -> Vec<String> {
+    let is_run = |block: &&Block| {
+        !block.kind.outputs.is_empty()
+            && !matches!(block.kind.name, "item" | "mass-standard")
+            && names_one_of(&block.raw.body, items)
+    };
+    engine.blocks().values().filter(is_run).map(|block| block.name().to_string()).collect()
 }
 
 /// Whether some text of a block is the name of one of these.

@@ -192,7 +192,9 @@ pub fn entry_words(entry: &Entry) -> String {
             [first, .., last] => format!("{} files, {} to {}", files.len(), first.path, last.path),
             [] => "nothing".into(),
         },
-        Act::Corrected { file, old, new, correction } => format!("{file} by {correction}: “{old}” to “{new}”"),
+        Act::Corrected { file, line, old, new, correction, .. } => {
+            format!("{file}, line {line}, by {correction}: “{old}” to “{new}”")
+        }
         Act::Authorised { report, seal, .. } => format!("{report}, seal {}", crate::report::dossier::short_seal(seal)),
         Act::Issued(issued) => match (&issued.of, issued.kind) {
             (Some(of), ReportKind::Amendment) => format!("{}, amendment of {of}", issued.number),

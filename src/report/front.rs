@@ -274,6 +274,10 @@ fn register_words(issue: &Issue) -> String {
 fn annex(engine: &Engine, results: &[NodeId], dossier: &Dossier) -> Markup {
     let mut made = Markup::code("= Annex\n\n== Symbols\n\n");
     made.push(&parts::annex::symbols_table(engine, results));
+    if let Some(table) = parts::annex::corrections_table(engine) {
+        made.push_code("== Corrections\n\n");
+        made.push(&table);
+    }
     made.push_code("== Attached files\n\n");
     made.push(&parts::annex::files_table(engine, dossier));
     made
