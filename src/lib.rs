@@ -9,7 +9,7 @@
 //! | graph      | [`graph`], [`method`]                     | [`graph::Graph`]: quantities and how they are computed    |
 //! | evaluation | [`graph`], [`numeric`], [`quantity`]      | numbers, uncertainties, budgets, trails                   |
 //! | report     | [`report`]                                | [`report::Report`]: a PDF with its dossier                |
-//! | register   | [`register`]                              | audits: what a PDF proves by itself                       |
+//! | register   | [`register`]                              | [`register::Register`]: what was done, by whom, in a chain |
 //!
 //! A module imports only from the modules above it in this order: intake, diagnostic, numeric, quantity, graph,
 //! method, record, block, report, register. The compiler proper reads through [`intake::Intake`] alone: it never
@@ -42,5 +42,6 @@ use intake::{Intake, IntakeError};
 pub fn reduce<'i>(intake: &'i dyn Intake, campaign: Option<&str>) -> Result<Engine<'i>, IntakeError> {
     let engine = Engine::read(intake, campaign)?;
     engine.build_all();
+    register::check_lodged(&engine);
     Ok(engine)
 }

@@ -11,7 +11,19 @@ use std::fs;
 use std::path::{Path, PathBuf};
 
 /// Codes that no record of a comparison draws, with the test that covers them.
-const COVERED_ELSEWHERE: &[(&str, &str)] = &[("pdf_unreadable", "register::pdf_file::tests")];
+const COVERED_ELSEWHERE: &[(&str, &str)] = &[
+    ("already_issued", "tests/register.rs"),
+    ("clock_behind", "tests/register.rs"),
+    ("content_missing", "tests/register.rs"),
+    ("customer_foreign", "tests/register.rs"),
+    ("not_authorised", "tests/register.rs"),
+    ("not_lodged", "tests/register.rs"),
+    ("pdf_unreadable", "register::pdf_file::tests"),
+    ("person_unauthorised", "tests/register.rs"),
+    ("register_unwritable", "tests/register.rs"),
+    ("report_unknown", "tests/register.rs"),
+    ("run_unexplained", "tests/register.rs"),
+];
 
 fn folder() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/complaints")

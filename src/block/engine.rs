@@ -3,6 +3,7 @@
 //! The engine holds the blocks of a laboratory folder and one graph. Asking for a result builds the block that
 //! gives it and, before that, every block it rests on; what was not asked for is not built. Complaints gather here.
 
+use super::correction::{self, Corrected, Correction};
 use super::given::{Given, distribution_of};
 use super::laboratory::Laboratory;
 use super::{BlockKind, Fields, KINDS, field::check_fields, find_kind};
@@ -16,6 +17,7 @@ use std::any::{Any, TypeId};
 use std::cell::{Ref, RefCell};
 use std::collections::{BTreeMap, BTreeSet};
 use std::rc::Rc;
+use std::sync::Arc;
 
 /// A block of a known kind, checked against its fields.
 pub struct Block {
@@ -68,6 +70,8 @@ pub struct Engine<'i> {
     pub laboratory: Laboratory,
     pub records: Vec<Record>,
     pub builder: Builder,
+    campaign: Option<String>,
+    corrected: Corrected,
     sources: RefCell<Sources>,
     blocks: BTreeMap<String, Block>,
     progress: RefCell<Progress>,
@@ -81,13 +85,22 @@ impl<'i> Engine<'i> {
     pub fn read(intake: &'i dyn Intake, campaign: Option<&str>) -> Result<Engine<'i>, IntakeError> {
         let mut sources = Sources::default();
         let mut complaints = Complaints::default();
-        let mut records = Vec::new();
+        let (mut records, mut found_in) = (Vec::new(), Vec::new());
         for path in intake.list()?.into_iter().filter(|path| is_visible(path, campaign)) {
             let file = sources.add(&path, intake.read(&path)?);
             let (record, found) = read_record(file, &sources);
-            complaints.extend(found);
+            found_in.push(found);
             records.push(record);
         }
+        let corrected = correction::apply(intake, &records, &sources, campaign, &mut complaints);
+        for (path, text) in &corrected.texts {
+            let Some(file) = sources.find(path) else { continue };
+            sources.replace(file, text.clone());
+            if let Some(at) = records.iter().position(|record| record.file == file) {
+                (records[at], found_in[at]) = read_record(file, &sources);
+            }
+        }
+        found_in.into_iter().for_each(|found| complaints.extend(found));
         let laboratory =
             match sources.find("laboratory.md").and_then(|file| records.iter().find(|record| record.file == file)) {
                 Some(record) => Laboratory::read(record, &mut complaints),
@@ -104,6 +117,8 @@ impl<'i> Engine<'i> {
             laboratory,
             records,
             builder: Builder::default(),
+            campaign: campaign.map(String::from),
+            corrected,
             sources: RefCell::new(sources),
             blocks,
             progress: RefCell::new(progress),
@@ -137,6 +152,15 @@ impl<'i> Engine<'i> {
         self.progress.borrow_mut().complaints.add_at(problem, place);
     }
 
+    /// Files a problem at a place, where it has one.
+    pub fn complain_somewhere(&self, problem: Problem, place: Option<Place>) {
+        let complaint = match place {
+            Some(place) => problem.at(place),
+            None => problem.anywhere(),
+        };
+        self.progress.borrow_mut().complaints.add(complaint);
+    }
+
     /// Files several complaints.
     pub fn complain_all(&self, complaints: Complaints) {
         self.progress.borrow_mut().complaints.extend(complaints);
@@ -158,7 +182,16 @@ impl<'i> Engine<'i> {
         let of_blocks = progress.used.iter().filter_map(|name| self.blocks.get(name)).map(|block| block.path.clone());
         let others =
             progress.files.iter().map(|file| self.sources.borrow().file(*file).path.clone()).collect::<Vec<_>>();
-        of_blocks.chain(others).chain(["laboratory.md".to_string()]).collect()
+        let mut files: BTreeSet<String> = of_blocks.chain(others).chain(["laboratory.md".to_string()]).collect();
+        // What a file is corrected by belongs to it.
+        let correcting: Vec<String> = self
+            .corrections()
+            .iter()
+            .filter(|correction| files.contains(&correction.record))
+            .map(|correction| correction.stated_in.clone())
+            .collect();
+        files.extend(correcting);
+        files
     }
 
     /// Reads a file named in a record relative to the record's own folder; a file asked for twice is read once.
@@ -171,12 +204,88 @@ impl<'i> Engine<'i> {
         let file = match known {
             Some(file) => file,
             None => {
-                let bytes = self.intake.read(&path).map_err(|error| missing(named, &path, &error, self.intake))?;
+                let bytes: Arc<[u8]> = match self.corrected.texts.get(&path) {
+                    Some(text) => text.clone(),
+                    None => {
+                        let read = self.intake.read(&path);
+                        read.map_err(|error| missing(named, &path, &error, self.intake))?.into()
+                    }
+                };
                 self.sources.borrow_mut().add(&path, bytes)
             }
         };
         self.progress.borrow_mut().files.insert(file);
         Ok(file)
+    }
+
+    /// The corrections applied.
+    pub fn corrections(&self) -> &[Correction] {
+        &self.corrected.corrections
+    }
+
+    /// The corrections that touch a line with this place.
+    pub fn corrections_at(&self, place: Place) -> Vec<&Correction> {
+        let sources = self.sources.borrow();
+        let path = &sources.file(place.file).path;
+        let touches = |one: &&Correction| {
+            one.record == *path && one.range.0 <= place.end as usize && place.start as usize <= one.range.1
+        };
+        self.corrections().iter().filter(touches).collect()
+    }
+
+    /// The corrections that touch what an origin names, each once.
+    pub fn corrections_of(&self, origin: &Origin) -> Vec<&Correction> {
+        let mut found: Vec<&Correction> = match origin {
+            Origin::Stated(place) | Origin::Reading(place) => self.corrections_at(*place),
+            Origin::ReadingList(places) => places.iter().flat_map(|place| self.corrections_at(*place)).collect(),
+            Origin::Readings(column) => {
+                let sources = self.sources.borrow();
+                let file = sources.file(column.file);
+                let touches = |one: &&Correction| {
+                    one.record == file.path && column.lines.contains(&(file.line_of(one.range.0 as u32) as u32))
+                };
+                self.corrections().iter().filter(touches).collect()
+            }
+            _ => Vec::new(),
+        };
+        let mut seen = BTreeSet::new();
+        found.retain(|one| seen.insert(one.name.as_str()));
+        found
+    }
+
+    /// Whether records of the campaign read may use this file: its own and the shared ones.
+    pub fn sees(&self, path: &str) -> bool {
+        match (self.campaign.as_deref(), path.strip_prefix("campaigns/")) {
+            (Some(campaign), Some(inside)) => inside.split('/').next() == Some(campaign),
+            _ => true,
+        }
+    }
+
+    /// The bytes of a file as they stand in the folder, without marking it as used.
+    ///
+    /// # Errors
+    /// When it cannot be read.
+    pub fn original(&self, path: &str) -> Result<Arc<[u8]>, IntakeError> {
+        if let Some(bytes) = self.corrected.originals.get(path) {
+            return Ok(bytes.clone());
+        }
+        let sources = self.sources.borrow();
+        match sources.find(path) {
+            Some(file) => Ok(sources.file(file).bytes.clone()),
+            None => Ok(self.intake.read(path)?.into()),
+        }
+    }
+
+    /// Takes a file in for its places, without marking it as used.
+    ///
+    /// # Errors
+    /// When it cannot be read.
+    pub fn take_in(&self, path: &str) -> Result<FileId, IntakeError> {
+        let bytes = match self.corrected.texts.get(path) {
+            Some(text) => text.clone(),
+            None => self.original(path)?,
+        };
+        Ok(self.sources.borrow_mut().add(path, bytes))
     }
 
     /// Marks a file as part of what a report rests on.

@@ -28,6 +28,12 @@ const FIELDS: &[Field] = &[
         Shape::Choice(&["truncated", "as computed"]),
         "how effective degrees of freedom enter the coverage factor",
     ),
+    optional("number_prefix", Shape::Text, "what stands before the number of an issued report, such as NI-"),
+    optional(
+        "performer_may_authorise",
+        Shape::Choice(&["yes", "no"]),
+        "whether who performed the work may review or authorise the report; no unless stated",
+    ),
     optional("trials", Shape::Number, "number of Monte Carlo trials where a report asks for them"),
     optional("unit_bases", Shape::Mappings(BASIS_FIELDS), "the unit bases masses may refer to"),
 ];
@@ -41,6 +47,10 @@ pub struct Laboratory {
     pub style: Style,
     /// Monte Carlo trials where a report asks for them.
     pub trials: usize,
+    /// What stands before the number of an issued report.
+    pub number_prefix: String,
+    /// Whether who performed the work may also review or authorise the report.
+    pub performer_may_authorise: bool,
     /// Name and label of each unit basis.
     pub unit_bases: Vec<(String, String)>,
     /// Values used that `laboratory.md` does not state.
@@ -58,6 +68,8 @@ impl Default for Laboratory {
             settings: Settings::new(0.9545, DegreesOfFreedomRule::Truncated),
             style: Style::POINT,
             trials: DEFAULT_TRIALS,
+            number_prefix: String::new(),
+            performer_may_authorise: false,
             unit_bases: Vec::new(),
             assumed: Vec::new(),
         }
@@ -91,6 +103,7 @@ impl Laboratory {
         let mut laboratory =
             Laboratory { name: fields.words("name"), address: fields.words("address"), ..Laboratory::default() };
         laboratory.take_settings(fields, complaints);
+        laboratory.take_rules(fields, complaints);
         laboratory
     }
 
@@ -130,6 +143,20 @@ impl Laboratory {
         }
         self.unit_bases =
             fields.mappings("unit_bases").iter().map(|basis| (basis.words("id"), basis.words("label"))).collect();
+    }
+
+    fn take_rules(&mut self, fields: Fields<'_>, complaints: &mut Complaints) {
+        self.performer_may_authorise = fields.words("performer_may_authorise") == "yes";
+        let prefix = fields.words("number_prefix");
+        let fits = |c: char| c.is_ascii_alphanumeric() || matches!(c, '-' | '_');
+        if prefix.chars().all(fits) && prefix.len() <= 24 {
+            self.number_prefix = prefix;
+        } else {
+            let message = format!("“{prefix}” cannot stand before a report number.");
+            let problem = Problem::new(Code::NameInvalid, message);
+            let hint = "At most 24 letters, digits, hyphens and underscores: the number is also the name of a file.";
+            complaints.add_at(problem.hint(hint), fields.place_of("number_prefix"));
+        }
     }
 
     /// The label of a unit basis; its name where it has none.

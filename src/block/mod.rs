@@ -23,6 +23,7 @@ pub mod combined_result;
 pub mod combining;
 pub mod comparator;
 pub mod comparison;
+pub mod correction;
 pub mod correlation;
 pub mod determination;
 pub mod engine;
@@ -90,6 +91,7 @@ pub static KINDS: &[&BlockKind] = &[
     &combined_result::KIND,
     &comparator::KIND,
     &comparison::KIND,
+    &correction::KIND,
     &correlation::KIND,
     &particulars::CUSTOMER,
     &determination::KIND,

@@ -1,8 +1,10 @@
 //! `audit`: does a report prove itself?
 
+use super::folder::Folder;
 use super::{Outcome, Stopped, disk, terminal};
+use crate::intake::Intake;
 use crate::register::audit::CANNOT_SAY;
-use crate::register::{Audit as Checks, audit_report, originals};
+use crate::register::{Against, Audit as Checks, REGISTER, audit_against, originals};
 use std::path::{Path, PathBuf};
 
 /// Checks a report from its PDF alone: attachments against their list, every result re-computed from the attached
@@ -14,6 +16,12 @@ pub struct Audit {
     /// Print the checks as JSON
     #[arg(long)]
     json: bool,
+    /// The laboratory folder whose register, or the register file, the report is held against
+    #[arg(long, value_name = "FOLDER", conflicts_with = "extract")]
+    register: Option<PathBuf>,
+    /// The laboratory folder whose present records the attached ones are held against
+    #[arg(long, value_name = "FOLDER", conflicts_with = "extract")]
+    records: Option<PathBuf>,
     /// Write the attached records and raw data into this folder, which must not exist, instead of checking
     #[arg(long, value_name = "FOLDER", conflicts_with = "json")]
     extract: Option<PathBuf>,
@@ -29,9 +37,14 @@ impl Audit {
         if let Some(folder) = &self.extract {
             return extract(&bytes, folder);
         }
+        let records = self.records.as_deref().map(Folder::find).transpose()?;
+        let against = Against {
+            register: self.register.as_deref().map(register_bytes).transpose()?,
+            records: records.as_ref().map(|folder| &folder.disk as &dyn Intake),
+        };
         let progress = terminal::progress("re-computing the report");
-        let audit =
-            audit_report(&bytes).map_err(|problem| Stopped(format!("{}: {}", self.pdf.display(), problem.message)))?;
+        let audit = audit_against(&bytes, &against)
+            .map_err(|problem| Stopped(format!("{}: {}", self.pdf.display(), problem.message)))?;
         progress.finish_and_clear();
         match self.json {
             true => terminal::print(&format!("{}\n", serde_json::to_string_pretty(&audit).unwrap_or_default())),
@@ -39,6 +52,14 @@ impl Audit {
         }
         Ok(if audit.is_clean() { Outcome::AllWell } else { Outcome::Faults })
     }
+}
+
+/// The register of a laboratory folder, or the file given.
+fn register_bytes(path: &Path) -> Result<Vec<u8>, Stopped> {
+    if path.is_file() {
+        return read(path);
+    }
+    read(&Folder::find(path)?.root.join(REGISTER))
 }
 
 fn read(path: &Path) -> Result<Vec<u8>, Stopped> {

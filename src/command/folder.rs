@@ -42,6 +42,20 @@ impl Folder {
     }
 }
 
+impl Folder {
+    /// The folder around one report record.
+    ///
+    /// # Errors
+    /// When `path` is no file of a laboratory folder.
+    pub fn find_report(path: &Path) -> Result<Folder, Stopped> {
+        let folder = Folder::find(path)?;
+        if !path.is_file() {
+            return Err(Stopped(format!("{} is no report record; name the record itself", path.display())));
+        }
+        Ok(folder)
+    }
+}
+
 /// The quantity with this path. Only the block that gives it is built, with what that rests on; the whole folder is
 /// built when the name alone does not say who gives it, as for the mass of a standard on the day of its use.
 ///

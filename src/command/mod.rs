@@ -3,18 +3,27 @@
 #![allow(clippy::disallowed_methods)]
 
 mod audit;
+mod authorise;
 mod budget;
+mod consequences;
 mod covariance;
+mod decide;
 mod disk;
 mod examine;
 mod folder;
+mod issue;
+mod lodge;
 mod reduce;
+mod register;
 mod report;
+mod send;
 mod start;
 mod terminal;
 mod trail;
 mod trials;
 mod validate;
+mod vault;
+mod withdraw;
 
 use clap::{Parser, Subcommand};
 use std::process::ExitCode;
@@ -56,6 +65,22 @@ enum Command {
     Budget(budget::Budget),
     /// Typeset a report as a draft PDF with its dossier
     Report(report::Report),
+    /// Enter records and raw data into the register as they are made
+    Lodge(lodge::Lodge),
+    /// Record that a report was reviewed or authorised as it stands
+    Authorise(authorise::Authorise),
+    /// Give an authorised report its number and its final form
+    Issue(issue::Issue),
+    /// Record to whom an issued report went
+    Send(send::Send),
+    /// Withdraw an issued report
+    Withdraw(withdraw::Withdraw),
+    /// Find which issued reports the present records would change
+    Consequences(consequences::Consequences),
+    /// Record what is done about an issued report whose inputs changed
+    Decide(decide::Decide),
+    /// List issued reports and entries of the register, or verify it
+    Register(register::Register),
     /// Check a report from its PDF alone
     Audit(audit::Audit),
     /// Run every published check built in and print the validation record
@@ -98,6 +123,14 @@ pub fn run() -> ExitCode {
         Command::Trail(command) => command.run(),
         Command::Budget(command) => command.run(),
         Command::Report(command) => command.run(),
+        Command::Lodge(command) => command.run(),
+        Command::Authorise(command) => command.run(),
+        Command::Issue(command) => command.run(),
+        Command::Send(command) => command.run(),
+        Command::Withdraw(command) => command.run(),
+        Command::Consequences(command) => command.run(),
+        Command::Decide(command) => command.run(),
+        Command::Register(command) => command.run(),
         Command::Audit(command) => command.run(),
         Command::Validate(command) => command.run(),
     };

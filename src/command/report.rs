@@ -3,6 +3,8 @@
 use super::folder::Folder;
 use super::{Outcome, Stopped, disk, terminal};
 use crate::block::Engine;
+use crate::register::authorise::standing_words;
+use crate::register::lodge::register_of;
 use crate::report::{make_report, report_records};
 use std::path::{Path, PathBuf};
 
@@ -56,6 +58,7 @@ impl Report {
         let campaign = campaign_of(path);
         let engine = Engine::read(&folder.disk, campaign.as_deref()).map_err(Stopped::because)?;
         let made = make_report(&engine, path);
+        crate::register::check_lodged(&engine);
         let outcome = terminal::say_complaints(&engine);
         let Some(report) = made else {
             terminal::say(&format!("{path}: no PDF could be made.\n"));
@@ -70,6 +73,11 @@ impl Report {
             report.dossier.files.len(),
             crate::report::dossier::short_seal(&report.dossier.seal)
         ));
+        if let Some(register) = register_of(&engine) {
+            for line in standing_words(&register, path, &report.dossier.seal) {
+                terminal::print(&format!("  {line}\n"));
+            }
+        }
         Ok(outcome)
     }
 }

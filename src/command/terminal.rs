@@ -5,7 +5,7 @@
 
 use super::Outcome;
 use crate::block::Engine;
-use crate::diagnostic::{Complaints, Look, print_complaints};
+use crate::diagnostic::{Complaints, Look, Problem, Severity, print_complaints};
 use std::io::{IsTerminal, Write};
 use std::sync::mpsc::{Receiver, RecvTimeoutError, Sender, channel};
 use std::thread::JoinHandle;
@@ -28,6 +28,26 @@ pub fn say_complaints(engine: &Engine) -> Outcome {
     let complaints = engine.complaints();
     say(&complaints_text(engine, &complaints));
     outcome(&complaints)
+}
+
+/// Prints what the complaints of an engine and further problems say, and that nothing was done.
+pub fn refuse(engine: &Engine, problems: Vec<Problem>) -> Outcome {
+    let mut complaints = engine.complaints();
+    complaints.list.retain(|complaint| complaint.severity == Severity::Fault);
+    for problem in problems {
+        complaints.add(problem.anywhere());
+    }
+    say(&complaints_text(engine, &complaints));
+    say("Nothing was entered into the register.\n");
+    Outcome::Faults
+}
+
+/// Prints why nothing was done, without the complaints of records it has nothing to do with.
+pub fn refuse_for(engine: &Engine, problem: Problem) -> Outcome {
+    let complaints = Complaints { list: vec![problem.anywhere()] };
+    say(&complaints_text(engine, &complaints));
+    say("Nothing was entered into the register.\n");
+    Outcome::Faults
 }
 
 /// The complaints as text; nothing when there are none.

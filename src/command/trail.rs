@@ -46,6 +46,7 @@ impl Trail {
 
 /// A walk down a trail.
 struct Walk<'w> {
+    engine: &'w Engine<'w>,
     graph: &'w Graph,
     sources: &'w Sources,
     style: Style,
@@ -129,6 +130,7 @@ impl Walk<'_> {
             Origin::ReadingList(places) => vec![self.list(places)],
             Origin::Step => Vec::new(),
         };
+        details.extend(self.engine.corrections_of(&node.origin).iter().map(|correction| correction.words()));
         details.extend(self.decisions(node));
         details
     }
@@ -185,6 +187,7 @@ fn trail_text(engine: &Engine, quantity: NodeId, deepest: usize) -> String {
     let steps = trail(&graph, quantity).steps;
     let (count, longest) = (steps.len(), steps.iter().map(|step| step.depth).max().unwrap_or(0));
     let mut walk = Walk {
+        engine,
         graph: &graph,
         sources: &sources,
         style: engine.laboratory.style,

@@ -31,6 +31,7 @@ macro_rules! codes {
 }
 
 codes! {
+    AlreadyIssued "already_issued" Fault "A report with this very content was issued already.";
     BareNumber "bare_number" Fault "A number stands without the unit its quantity needs.";
     BasisMismatch "basis_mismatch" Fault "Two masses on different unit bases meet in one sum.";
     CalibrationsOneSided "calibrations_one_sided" Fault "A resistor was used outside the dates of its calibrations without a stated hold.";
@@ -39,11 +40,15 @@ codes! {
     CertificateMissing "certificate_missing" Fault "No calibration was valid on the day of use.";
     CheckOverdue "check_overdue" Warning "A check between realizations had run out when the campaign began.";
     CircularReference "circular_reference" Fault "Values refer to each other in a circle.";
+    ClockBehind "clock_behind" Fault "The clock stands before the last entry of the register.";
     ColumnImplausible "column_implausible" Fault "A column holds what its meaning does not allow: exchanged columns, or another unit.";
     ColumnUnknown "column_unknown" Fault "A raw data file has no column with this head, or has it twice.";
     ConditionsOutOfSpan "conditions_out_of_span" Fault "Conditions are asked for at a time outside the logged span.";
+    ContentMissing "content_missing" Fault "A report lacks content it must have, and no reason is recorded.";
     ConventionMismatch "convention_mismatch" Fault "Values that must follow one convention follow two.";
+    CorrectionUnfit "correction_unfit" Fault "A correction does not fit the file it names, or would not be seen wherever the file is used.";
     CorrelationImpossible "correlation_impossible" Fault "Stated correlations or covariances contradict each other.";
+    CustomerForeign "customer_foreign" Fault "Data of another customer are among what a report rests on.";
     DecimalComma "decimal_comma" Fault "A number is written with a decimal comma.";
     DesignIncomplete "design_incomplete" Fault "A cycle, series or list has not the number of readings its kind needs.";
     DimensionMismatch "dimension_mismatch" Fault "A value has another dimension than its quantity.";
@@ -63,18 +68,26 @@ codes! {
     GradientAssumed "gradient_assumed" Warning "The gradient of gravity was not measured; that of free air stands in.";
     KindMismatch "kind_mismatch" Fault "Two kinds of quantity that must not be mixed meet.";
     KindUnknown "kind_unknown" Fault "A measurement block is of a kind nobody knows.";
+    LodgedFileChanged "lodged_file_changed" Fault "A file was changed or removed after it was lodged, without a correction.";
     MassInPrimary "mass_in_primary" Fault "A mass has weight in the result of a primary method and is not declared auxiliary.";
     NameInvalid "name_invalid" Fault "A name is not a letter followed by letters, digits and underscores.";
+    NotAuthorised "not_authorised" Fault "A report was not reviewed or authorised as it stands now.";
+    NotLodged "not_lodged" Fault "A report rests on a record or raw data that were never lodged.";
     NotationUnreadable "notation_unreadable" Fault "A value is written in no known notation.";
     OutOfRange "out_of_range" Fault "A reading lies outside the range of its instrument.";
     OutOfValidity "out_of_validity" Fault "A value lies outside the range in which a formula is valid.";
     PathOutside "path_outside" Fault "A path leaves the laboratory folder.";
     PdfUnreadable "pdf_unreadable" Fault "A PDF cannot be read back as a report.";
+    PersonUnauthorised "person_unauthorised" Fault "A person is unknown, or not authorised for this activity on this day.";
     ProseUnreadable "prose_unreadable" Fault "Prose uses something a report cannot typeset.";
     ReadingsCorrelated "readings_correlated" Warning "The uncertainty of a mean is claimed for independent readings, but they depend on their neighbours.";
     RecordUnreadable "record_unreadable" Fault "A record is no readable text, or its front matter is damaged.";
+    RegisterDamaged "register_damaged" Fault "The register does not hold together.";
+    RegisterUnwritable "register_unwritable" Fault "The register, or what is kept with it, cannot be read or written.";
+    ReportUnknown "report_unknown" Fault "No report has this number, or its state does not allow what is asked.";
     ResultsInconsistent "results_inconsistent" Warning "Results combined disagree by more than their uncertainties let expect.";
     RuleDated "rule_dated" Fault "A rule is dated after the data it judges.";
+    RunUnexplained "run_unexplained" Fault "A run of the same item is not used by a report, and no reason is recorded.";
     SameValueTwice "same_value_twice" Warning "The same value and uncertainty stand in two blocks: one input or two?";
     ShapeMismatch "shape_mismatch" Fault "A field holds a list, a mapping or text where another is expected.";
     SignContradicts "sign_contradicts" Fault "Signs in one row contradict each other: direction, fringes and steps, or state and current.";

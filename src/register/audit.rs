@@ -4,11 +4,12 @@
 //! raw data come from the PDF's own attachments; every computation is re-run and the pages are set anew.
 
 use super::pdf_file::{PdfFile, read_pdf};
+use super::present::{Against, check_issue, check_records, check_register};
 use crate::block::Engine;
 use crate::diagnostic::Problem;
 use crate::intake::MemoryIntake;
 use crate::report::dossier::{CONTENTS, Contents, DERIVATION, ISSUE, RESULTS, sha256, short_seal};
-use crate::report::{Report, make_report};
+use crate::report::{Issue, Report, make_issued, make_report};
 use serde::Serialize;
 use std::collections::BTreeMap;
 
@@ -53,12 +54,12 @@ pub const CANNOT_SAY: &str = "An audit cannot say that the readings are true, th
     was not made anew as a whole: for that, compare the seal with the one the laboratory keeps.";
 
 impl Audit {
-    fn note(&mut self, what: &'static str, passed: bool, says: impl Into<String>) {
+    pub(super) fn note(&mut self, what: &'static str, passed: bool, says: impl Into<String>) {
         let verdict = if passed { Verdict::Passed } else { Verdict::Failed };
         self.checks.push(Check { what, verdict, says: says.into() });
     }
 
-    fn skip(&mut self, what: &'static str, why: &str) {
+    pub(super) fn skip(&mut self, what: &'static str, why: &str) {
         self.checks.push(Check { what, verdict: Verdict::NotChecked, says: why.into() });
     }
 
@@ -73,17 +74,30 @@ impl Audit {
 /// # Errors
 /// When the bytes are no PDF that can be read.
 pub fn audit_report(bytes: &[u8]) -> Result<Audit, Problem> {
+    audit_against(bytes, &Against::default())
+}
+
+/// Audits a report from the bytes of its PDF, and against the register and the records of the laboratory.
+///
+/// # Errors
+/// When the bytes are no PDF that can be read.
+pub fn audit_against(bytes: &[u8], against: &Against<'_>) -> Result<Audit, Problem> {
     let file = read_pdf(bytes)?;
     let mut audit = Audit::default();
     check_form(&file, &mut audit);
     let Some(contents) = check_contents(&file, &mut audit) else {
-        for what in ["seal", "re-reduction", "printed digits", "derivation", "pages"] {
+        for what in
+            ["seal", "issue", "register", "status", "re-reduction", "printed digits", "derivation", "pages", "records"]
+        {
             audit.skip(what, "there is no usable list of contents");
         }
         return Ok(audit);
     };
     check_seal(&file, &contents, &mut audit);
-    check_recomputation(bytes, &file, &contents, &mut audit);
+    let issue = check_issue(&file, &mut audit);
+    check_register(bytes, issue.as_ref(), against, &mut audit);
+    check_recomputation(bytes, &file, &contents, issue.as_ref(), &mut audit);
+    check_records(&file, &contents, against, &mut audit);
     Ok(audit)
 }
 
@@ -95,6 +109,15 @@ pub fn originals(bytes: &[u8]) -> Result<BTreeMap<String, Vec<u8>>, Problem> {
     let file = read_pdf(bytes)?;
     let contents = read_contents(&file).map_err(|reason| Problem::new(crate::diagnostic::Code::FileMissing, reason))?;
     Ok(files_by_path(&file, &contents))
+}
+
+/// One attached file of a report, by the name it is attached under.
+///
+/// # Errors
+/// When the bytes are no PDF that can be read, or nothing is attached under this name.
+pub fn attached(bytes: &[u8], name: &str) -> Result<Vec<u8>, Problem> {
+    let missing = || Problem::new(crate::diagnostic::Code::FileMissing, format!("{name} is not attached."));
+    read_pdf(bytes)?.attachments.remove(name).ok_or_else(missing)
 }
 
 /// Damage or extras in the file itself.
@@ -181,11 +204,16 @@ fn files_by_path(file: &PdfFile, contents: &Contents) -> BTreeMap<String, Vec<u8
 }
 
 /// Everything computed and typeset anew from the attachments.
-fn check_recomputation(bytes: &[u8], file: &PdfFile, contents: &Contents, audit: &mut Audit) {
+fn check_recomputation(bytes: &[u8], file: &PdfFile, contents: &Contents, issue: Option<&Issue>, audit: &mut Audit) {
     let intake = MemoryIntake::with(files_by_path(file, contents));
     let campaign = campaign_of(&contents.report);
     let made = Engine::read(&intake, campaign.as_deref()).ok().and_then(|engine| {
-        let report = make_report(&engine, &contents.report);
+        let report = match issue {
+            None => make_report(&engine, &contents.report),
+            Some(issue) => {
+                make_issued(&engine, &contents.report, &mut |_| Some(issue.clone())).map(|(report, _)| report)
+            }
+        };
         let complaints = engine.complaints();
         report.map(|report| (report, complaints.has_faults()))
     });
@@ -309,7 +337,7 @@ fn check_pages(bytes: &[u8], file: &PdfFile, report: &Report, contents: &Content
         return;
     }
     let at = bytes.iter().zip(&report.pdf).position(|(a, b)| a != b).unwrap_or(bytes.len().min(report.pdf.len()));
-    let cause = if file.attachments == report.dossier.files {
+    let cause = if file.attachments == report.attached() {
         "the attachments are those of the report, so pages or structure were altered"
     } else {
         "the attachments differ as well"

@@ -1,8 +1,9 @@
 //! From a report record to a PDF with its dossier.
 
-use super::dossier::Dossier;
+use super::dossier::{Dossier, ISSUE, issue_attachment};
 use super::expression::{Evaluator, Request, answer, failed_block, gap, named_result, prepare};
 use super::front::Front;
+use super::issue::Issue;
 use super::markup::Markup;
 use super::prose::{Insert, Inserted, Prose, path_in_folder, typeset_prose};
 use super::template::Templates;
@@ -19,6 +20,17 @@ pub struct Report {
     pub pdf: Vec<u8>,
     pub pages: usize,
     pub dossier: Dossier,
+    /// Of an issued report, what is attached beside the dossier.
+    pub issue: Option<Issue>,
+}
+
+impl Report {
+    /// Every attached file by name: the dossier, and of an issued report its issue.
+    pub fn attached(&self) -> BTreeMap<String, Vec<u8>> {
+        let mut files = self.dossier.files.clone();
+        files.extend(self.issue.iter().map(|issue| (ISSUE.to_string(), issue.bytes())));
+        files
+    }
 }
 
 /// The records that are reports, by path.
@@ -46,11 +58,36 @@ pub struct Manuscript {
 pub fn make_report(engine: &Engine, path: &str) -> Option<Report> {
     let manuscript = write_report(engine, path)?;
     let (pdf, pages) = print(engine, &manuscript)?;
-    Some(Report { pdf, pages, dossier: manuscript.dossier })
+    Some(Report { pdf, pages, dossier: manuscript.dossier, issue: None })
+}
+
+/// Makes the report of the record at `path` as issued. `issue` is asked once the dossier is known; where it gives
+/// nothing, nothing is made.
+pub fn make_issued(
+    engine: &Engine,
+    path: &str,
+    issue: &mut dyn FnMut(&Dossier) -> Option<Issue>,
+) -> Option<(Report, Issue)> {
+    let mut kept = None;
+    let manuscript = write_with(engine, path, &mut |dossier| {
+        kept = issue(dossier);
+        kept.clone().map(Some)
+    })?;
+    let (pdf, pages) = print(engine, &manuscript)?;
+    Some((Report { pdf, pages, dossier: manuscript.dossier, issue: kept.clone() }, kept?))
 }
 
 /// Writes the report of the record at `path` out as Typst, up to the door of the typesetter.
 pub fn write_report(engine: &Engine, path: &str) -> Option<Manuscript> {
+    write_with(engine, path, &mut |_| Some(None))
+}
+
+/// Writes a report out; `issue` gives nothing to stop, no issue for a draft, or the issue.
+fn write_with(
+    engine: &Engine,
+    path: &str,
+    issue: &mut dyn FnMut(&Dossier) -> Option<Option<Issue>>,
+) -> Option<Manuscript> {
     let mut writing = Writing::new(engine, path)?;
     let body = writing.body();
     let templates = templates(engine)?;
@@ -58,16 +95,28 @@ pub fn write_report(engine: &Engine, path: &str) -> Option<Manuscript> {
     extra.insert(Templates::REPORT_PATH.into(), templates.report.clone().into_bytes());
     extra.insert(Templates::PARTS_PATH.into(), templates.parts.clone().into_bytes());
     let dossier = Dossier::new(engine, path, &extra);
-    let page = writing.front.page(engine, body, &writing.results, &dossier);
+    let issue = issue(&dossier)?;
+    let page = writing.front.page(engine, body, &writing.results, &dossier, issue.as_ref());
     let place = writing.front.place;
     let rendered = engine.keep(templates.render(&page.values()), place)?;
     let mut files = templates.files();
     files.extend(writing.images.iter().map(|(path, bytes)| (path.clone(), bytes.clone())));
-    let document =
-        TypstDocument { source: rendered.source, files, attachments: dossier.attachments(), spans: rendered.spans };
-    let timestamp = writing.front.date.and_hms_opt(0, 0, 0)?.and_utc();
-    let options = PdfOptions { identifier: dossier.seal.clone(), timestamp };
+    let mut attachments = dossier.attachments();
+    attachments.extend(issue.as_ref().map(issue_attachment));
+    let document = TypstDocument { source: rendered.source, files, attachments, spans: rendered.spans };
+    let options = pdf_options(&writing.front, &dossier, issue.as_ref())?;
     Some(Manuscript { document, options, dossier })
+}
+
+fn pdf_options(front: &Front, dossier: &Dossier, issue: Option<&Issue>) -> Option<PdfOptions> {
+    let of_record = front.date.and_hms_opt(0, 0, 0)?.and_utc();
+    Some(match issue {
+        None => PdfOptions { identifier: dossier.seal.clone(), timestamp: of_record },
+        Some(issue) => PdfOptions {
+            identifier: format!("{} {}", dossier.seal, issue.number),
+            timestamp: issue.time.parse().unwrap_or(of_record),
+        },
+    })
 }
 
 fn print(engine: &Engine, manuscript: &Manuscript) -> Option<(Vec<u8>, usize)> {

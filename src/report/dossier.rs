@@ -8,6 +8,7 @@
 //! The seal is the SHA-256 of the bytes of `contents.json`.
 
 use super::derivation::derivation_json;
+use super::issue::Issue;
 use super::listing::list_results;
 use super::typeset::{Attachment, Relationship};
 use crate::block::Engine;
@@ -65,13 +66,12 @@ impl Dossier {
     /// `extra` are files that are no records: templates and images, by path.
     pub fn new(engine: &Engine, report: &str, extra: &BTreeMap<String, Vec<u8>>) -> Dossier {
         let mut originals: BTreeMap<String, Vec<u8>> = extra.clone();
-        let sources = engine.sources();
         for path in engine.used_files().into_iter().chain([report.to_string()]) {
-            if let Some(file) = sources.find(&path) {
-                originals.insert(path, sources.file(file).bytes.to_vec());
+            // A corrected file is attached as first written, beside its correction.
+            if let Ok(bytes) = engine.original(&path) {
+                originals.insert(path, bytes.to_vec());
             }
         }
-        drop(sources);
         let mut files = BTreeMap::new();
         let mut entries = Vec::new();
         let mut taken: BTreeSet<String> = [CONTENTS, RESULTS, DERIVATION, ISSUE].map(String::from).into();
@@ -116,6 +116,17 @@ impl Dossier {
             mime_type: mime_type(name).into(),
             description,
         }
+    }
+}
+
+/// What is attached to an issued report beside its dossier.
+pub fn issue_attachment(issue: &Issue) -> Attachment {
+    Attachment {
+        name: ISSUE.into(),
+        bytes: issue.bytes(),
+        relationship: Relationship::Supplement,
+        mime_type: mime_type(ISSUE).into(),
+        description: "number, date, authorisations and head of the register; outside the seal".into(),
     }
 }
 

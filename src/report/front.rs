@@ -1,6 +1,7 @@
 //! The front matter of a report record, and the particulars it puts on the first page.
 
 use super::dossier::{Dossier, short_seal};
+use super::issue::{Clock, Duty, Issue, ReportKind, Witness, day_of};
 use super::markup::Markup;
 use super::page::{Page, Signature};
 use super::parts;
@@ -16,6 +17,17 @@ use chrono::{DateTime, NaiveDate};
 const METHOD_FIELDS: &[Field] =
     &[needed("id", Shape::Text, "the procedure"), needed("revision", Shape::Text, "its revision")];
 
+const CONTENT_FIELDS: &[Field] = &[
+    needed("content", Shape::Choice(&["customer", "items", "condition", "adjusted"]), "what is left out"),
+    needed("reason", Shape::Text, "why"),
+];
+
+const RUN_FIELDS: &[Field] = &[
+    needed("run", Shape::Name, "the run"),
+    optional("rule", Shape::Name, "the rule it is left out by"),
+    needed("reason", Shape::Text, "why"),
+];
+
 const REPORT_FIELDS: &[Field] = &[
     needed("title", Shape::Text, "the title of the report"),
     optional("customer", Shape::Name, "the customer block of the client"),
@@ -27,6 +39,12 @@ const REPORT_FIELDS: &[Field] = &[
     needed("performed_by", Shape::Text, "who did the work, by role"),
     optional("reviewed_by", Shape::Text, "who reviews, by role"),
     optional("authorised_by", Shape::Text, "who authorises, by role"),
+    optional("content_left_out", Shape::Mappings(CONTENT_FIELDS), "content the report lacks, with the reason"),
+    optional(
+        "runs_left_out",
+        Shape::Mappings(RUN_FIELDS),
+        "runs of the same items the report does not use, with the reason",
+    ),
 ];
 
 const RECORD_FIELDS: &[Field] = &[
@@ -83,28 +101,31 @@ impl Front {
     }
 
     /// The page of this report with its body.
-    pub fn page(&self, engine: &Engine, body: Markup, results: &[NodeId], dossier: &Dossier) -> Page {
+    pub fn page(
+        &self,
+        engine: &Engine,
+        body: Markup,
+        results: &[NodeId],
+        dossier: &Dossier,
+        issue: Option<&Issue>,
+    ) -> Page {
         Page {
             language: "en".into(),
             title: self.title.clone(),
             laboratory_name: engine.laboratory.name.clone(),
             laboratory_address: engine.laboratory.address.split(',').map(|line| line.trim().to_string()).collect(),
-            draft: true,
-            number: None,
+            draft: issue.is_none(),
+            number: issue.map(|issue| issue.number.clone()),
             seal: short_seal(&dossier.seal),
-            particulars: self.particulars(engine),
+            particulars: self.particulars(engine, issue),
             body,
-            statements: statements(),
-            signatures: self
-                .duties
-                .iter()
-                .map(|(duty, person)| Signature { duty: (*duty).into(), person: person.clone(), date: String::new() })
-                .collect(),
+            statements: statements(issue),
+            signatures: self.duties.iter().map(|(duty, person)| signature(duty, person, issue)).collect(),
             annex: Some(annex(engine, results, dossier)),
         }
     }
 
-    fn particulars(&self, engine: &Engine) -> Vec<(String, Markup)> {
+    fn particulars(&self, engine: &Engine, issue: Option<&Issue>) -> Vec<(String, Markup)> {
         let mut rows: Vec<(String, Markup)> = Vec::new();
         let mut add = |label: &str, text: String| {
             if !text.is_empty() {
@@ -126,7 +147,32 @@ impl Front {
         add("Method", self.method.clone());
         add("Deviations from the method", self.deviations.clone());
         add("Date of the record", long_date(self.date));
+        if let Some(issue) = issue {
+            add("Date of issue", issue.day().map(long_date).unwrap_or_default());
+            add("Issued by", issue.issued_by.clone());
+            let of = issue.of.clone().unwrap_or_default();
+            match issue.kind {
+                ReportKind::Original => {}
+                ReportKind::Amendment => add("Amendment to", format!("report {of}, valid only together with it")),
+                ReportKind::Replacement => add("Replaces", format!("report {of}")),
+            }
+        }
         rows
+    }
+}
+
+/// One field of the area of authorisation: of an issued report with who did it and when.
+fn signature(duty: &str, person: &str, issue: Option<&Issue>) -> Signature {
+    let wanted = match duty {
+        "Reviewed by" => Some(Duty::Review),
+        "Authorised by" => Some(Duty::Authorisation),
+        _ => None,
+    };
+    let done = issue.and_then(|issue| issue.authorisations.iter().find(|one| Some(one.duty) == wanted));
+    Signature {
+        duty: duty.into(),
+        person: done.map_or_else(|| person.to_string(), |one| one.who.clone()),
+        date: done.and_then(|one| day_of(&one.time)).map(long_date).unwrap_or_default(),
     }
 }
 
@@ -172,7 +218,7 @@ fn condition_words(item: &Block) -> String {
 }
 
 /// First and last day of the weighings used.
-fn calibration_dates(engine: &Engine) -> String {
+pub fn calibration_span(engine: &Engine) -> Option<(NaiveDate, NaiveDate)> {
     let times: Vec<f64> = engine
         .used_blocks()
         .iter()
@@ -182,16 +228,14 @@ fn calibration_dates(engine: &Engine) -> String {
     let (first, last) =
         (times.iter().copied().fold(f64::INFINITY, f64::min), times.iter().copied().fold(f64::NEG_INFINITY, f64::max));
     let day = |time: f64| DateTime::from_timestamp(time as i64, 0).map(|at| at.date_naive());
-    match (day(first), day(last)) {
-        (Some(first), Some(last)) if times.is_empty() || first == last => {
-            if times.is_empty() {
-                String::new()
-            } else {
-                long_date(first)
-            }
-        }
-        (Some(first), Some(last)) => format!("{} to {}", long_date(first), long_date(last)),
-        _ => String::new(),
+    if times.is_empty() { None } else { day(first).zip(day(last)) }
+}
+
+fn calibration_dates(engine: &Engine) -> String {
+    match calibration_span(engine) {
+        Some((first, last)) if first == last => long_date(first),
+        Some((first, last)) => format!("{} to {}", long_date(first), long_date(last)),
+        None => String::new(),
     }
 }
 
@@ -201,20 +245,39 @@ pub fn long_date(date: NaiveDate) -> String {
 }
 
 /// Statements that every report carries.
-fn statements() -> Vec<Markup> {
-    [
+fn statements(issue: Option<&Issue>) -> Vec<Markup> {
+    let always = [
         "The results relate only to the items named above, in the condition in which they were calibrated. This report may be reproduced only in full unless the laboratory agrees in writing.",
         "Everything this report rests on is attached to this file. The seal on each page is the beginning of the SHA-256 digest of the attached list of contents, contents.json. The command libripens audit re-computes every result from the attached readings and sets the pages anew.",
-    ]
-    .iter()
-    .map(|text| Markup::text(text))
-    .collect()
+    ];
+    always
+        .iter()
+        .map(|text| Markup::text(text))
+        .chain(issue.map(|issue| Markup::text(&register_words(issue))))
+        .collect()
+}
+
+/// What an issued report says of the register.
+fn register_words(issue: &Issue) -> String {
+    let clock = match issue.clock {
+        Clock::System => "",
+        Clock::Set => " The clock of the register was set by hand.",
+    };
+    let Witness { size, head } = &issue.register;
+    format!(
+        "Whether this report still holds, or was amended, replaced or withdrawn, the laboratory says on being told its number, {}, and the day. When it was issued the register of the laboratory had {size} entries with the head {head}; a register that no longer has this head was changed afterwards.{clock}",
+        issue.number
+    )
 }
 
 /// Symbols and attached files.
 fn annex(engine: &Engine, results: &[NodeId], dossier: &Dossier) -> Markup {
     let mut made = Markup::code("= Annex\n\n== Symbols\n\n");
     made.push(&parts::annex::symbols_table(engine, results));
+    if let Some(table) = parts::annex::corrections_table(engine) {
+        made.push_code("== Corrections\n\n");
+        made.push(&table);
+    }
     made.push_code("== Attached files\n\n");
     made.push(&parts::annex::files_table(engine, dossier));
     made

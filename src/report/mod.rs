@@ -10,6 +10,7 @@ pub mod dossier;
 pub mod expression;
 pub mod figures;
 pub mod front;
+pub mod issue;
 pub mod listing;
 pub mod literal;
 pub mod markup;
@@ -23,5 +24,6 @@ pub mod template;
 pub mod typeset;
 mod world;
 
-pub use compile::{Manuscript, Report, examine_reports, make_report, report_records, write_report};
+pub use compile::{Manuscript, Report, examine_reports, make_issued, make_report, report_records, write_report};
+pub use issue::Issue;
 pub use markup::Markup;

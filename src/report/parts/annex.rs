@@ -43,6 +43,25 @@ pub fn symbols_table(engine: &Engine, results: &[NodeId]) -> Markup {
     table.markup()
 }
 
+/// The corrections of the files used, with both texts; nothing when there are none.
+pub fn corrections_table(engine: &Engine) -> Option<Markup> {
+    let files = engine.used_files();
+    let header = vec!["File and line".into(), "As first written".into(), "Corrected to".into(), "Reason".into()];
+    let mut table = Table::new("Corrections of records and raw data this report rests on", header);
+    table.columns = vec!["1.2fr", "1fr", "1fr", "1.2fr"];
+    table.align = vec!["left"; 4];
+    for one in engine.corrections().iter().filter(|one| files.contains(&one.record)) {
+        let date = one.date.map(|date| date.to_string()).unwrap_or_default();
+        table.rows.push(vec![
+            format!("{}, line {}", one.record, one.line).into(),
+            one.old.clone().into(),
+            one.new.clone().into(),
+            format!("{}: {} ({}, {date})", one.name, one.reason.trim_end_matches('.'), one.by).into(),
+        ]);
+    }
+    (!table.rows.is_empty()).then(|| table.markup())
+}
+
 /// Every attached file with its path, size and digest.
 pub fn files_table(engine: &Engine, dossier: &Dossier) -> Markup {
     let header =

@@ -53,7 +53,9 @@ fn from(engine: &Engine, graph: &Graph, step: &TrailStep) -> String {
             .collect::<Vec<_>>()
             .join(", ")
     };
-    match &graph.node(step.node).origin {
+    let origin = &graph.node(step.node).origin;
+    let corrected: String = engine.corrections_of(origin).iter().map(|one| format!("; {}", one.words())).collect();
+    let from = match origin {
         Origin::Reading(place) => format!("reading, {}", at(*place)),
         Origin::Stated(place) => format!("stated, {}", at(*place)),
         Origin::ReadingList(_) => graph
@@ -72,5 +74,6 @@ fn from(engine: &Engine, graph: &Graph, step: &TrailStep) -> String {
         Origin::Assumed(reason) => format!("assumed: {reason}"),
         Origin::Computed(method) => format!("{}: {}. From {}", method.title, method.formula, rests()),
         Origin::Step => format!("from {}", rests()),
-    }
+    };
+    from + &corrected
 }

@@ -1,0 +1,233 @@
+//! What changed between two lists of results: inputs, values, printed digits, and what did not.
+
+use crate::block::Engine;
+use crate::graph::trail;
+use crate::report::listing::list_results;
+use serde::{Deserialize, Serialize};
+use std::collections::{BTreeMap, BTreeSet};
+
+/// One quantity as a list of results says it.
+#[derive(Debug, Clone, PartialEq, Deserialize)]
+pub struct Listed {
+    pub name: String,
+    pub label: String,
+    pub si_unit: String,
+    pub value: Option<f64>,
+    pub standard_uncertainty: Option<f64>,
+    pub printed: String,
+    pub origin: Origin,
+    pub typed: Option<String>,
+}
+
+/// Where its number comes from.
+#[derive(Debug, Clone, PartialEq, Deserialize)]
+pub struct Origin {
+    pub what: String,
+    pub file: Option<String>,
+    pub line: Option<u32>,
+}
+
+#[derive(Deserialize)]
+struct List {
+    quantities: Vec<Listed>,
+}
+
+/// Quantities by name.
+pub type Quantities = BTreeMap<String, Listed>;
+
+/// Reads `results.json`.
+pub fn read_results(bytes: &[u8]) -> Option<Quantities> {
+    let list: List = serde_json::from_slice(bytes).ok()?;
+    Some(list.quantities.into_iter().map(|one| (one.name.clone(), one)).collect())
+}
+
+/// The quantities an engine has built so far.
+pub fn present_results(engine: &Engine) -> Quantities {
+    read_results(list_results(engine).json().as_bytes()).unwrap_or_default()
+}
+
+/// A stated value, reading, constant or column that changed.
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+pub struct InputChange {
+    pub name: String,
+    pub label: String,
+    pub old: String,
+    pub new: String,
+    /// File and line of the new one, else of the old.
+    pub place: String,
+}
+
+/// A computed value that changed.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct ValueChange {
+    pub name: String,
+    pub label: String,
+    /// As printed, value and standard uncertainty.
+    pub old: String,
+    pub new: String,
+    /// New less old, in the unit of `si_unit`; none where one of them is missing.
+    pub difference: Option<f64>,
+    pub si_unit: String,
+    /// The difference in old standard uncertainties.
+    pub relative_to_uncertainty: Option<f64>,
+    /// New standard uncertainty over old.
+    pub uncertainty_ratio: Option<f64>,
+    pub printed_digits_change: bool,
+    /// Changed inputs it rests on.
+    pub because_of: Vec<String>,
+}
+
+/// What changed.
+#[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+pub struct Difference {
+    pub inputs: Vec<InputChange>,
+    /// Inputs that another takes the place of, as a newer certificate does on the day of use.
+    pub superseded: Vec<InputChange>,
+    /// Reported results that changed.
+    pub results: Vec<ValueChange>,
+    /// Other computed values whose printed digits changed.
+    pub others: Vec<ValueChange>,
+    /// Reported results that did not change.
+    pub unchanged: Vec<String>,
+}
+
+impl Difference {
+    /// Whether nothing changed.
+    pub fn is_empty(&self) -> bool {
+        self.inputs.is_empty() && self.superseded.is_empty() && self.results.is_empty() && self.others.is_empty()
+    }
+
+    /// Takes out of `then` and `now` what differs. `results` are the reported ones; `changed_files` are raw data and
+    /// records whose text that is read changed; `engine` has built what `now` lists.
+    pub fn between(
+        then: &Quantities,
+        now: &Quantities,
+        results: &[String],
+        changed_files: &BTreeSet<String>,
+        engine: &Engine,
+    ) -> Difference {
+        let mut difference = Difference::default();
+        for (name, old) in then.iter().filter(|(_, old)| old.origin.what != "computed") {
+            let new = now.get(name);
+            if is_same_input(old, new, changed_files) {
+                continue;
+            }
+            let change = input_change(old, new);
+            match is_superseded(old, engine) {
+                true => difference.superseded.push(change),
+                false => difference.inputs.push(change),
+            }
+        }
+        difference.superseded.extend(newly_used(then, now, results, engine));
+        let inputs: BTreeSet<&str> =
+            difference.inputs.iter().chain(&difference.superseded).map(|change| change.name.as_str()).collect();
+        let (mut reported, mut others) = (Vec::new(), Vec::new());
+        for (name, old) in then.iter().filter(|(_, old)| old.origin.what == "computed") {
+            let new = now.get(name);
+            let is_result = results.contains(name);
+            let is_same = new.is_some_and(|new| same_numbers(old, new) && old.printed == new.printed);
+            if is_same {
+                if is_result {
+                    difference.unchanged.push(name.clone());
+                }
+                continue;
+            }
+            let change = value_change(old, new, because_of(engine, name, &inputs));
+            match is_result {
+                true => reported.push(change),
+                false if change.printed_digits_change => others.push(change),
+                false => {}
+            }
+        }
+        (difference.results, difference.others) = (reported, others);
+        difference
+    }
+}
+
+/// Inputs a reported result rests on now that did not exist then: a newer certificate, a further effect.
+fn newly_used(then: &Quantities, now: &Quantities, results: &[String], engine: &Engine) -> Vec<InputChange> {
+    let graph = engine.graph();
+    let steps = results.iter().filter_map(|name| graph.find(name)).flat_map(|id| trail(&graph, id).steps);
+    let names: BTreeSet<&str> =
+        steps.filter_map(|step| graph.node(step.node).name.as_ref()).map(|name| name.path.as_str()).collect();
+    let is_new = |one: &&Listed| one.origin.what != "computed" && !then.contains_key(&one.name);
+    let new = names.into_iter().filter_map(|name| now.get(name)).filter(is_new);
+    new.map(|one| InputChange {
+        name: one.name.clone(),
+        label: one.label.clone(),
+        old: "not used".into(),
+        new: words(one),
+        place: place_words(&one.origin),
+    })
+    .collect()
+}
+
+fn place_words(origin: &Origin) -> String {
+    let line = origin.line.map(|line| format!(", line {line}")).unwrap_or_default();
+    format!("{}{line}", origin.file.clone().unwrap_or_default())
+}
+
+fn same_numbers(old: &Listed, new: &Listed) -> bool {
+    let bits = |value: Option<f64>| value.map(f64::to_bits);
+    bits(old.value) == bits(new.value) && bits(old.standard_uncertainty) == bits(new.standard_uncertainty)
+}
+
+fn is_same_input(old: &Listed, new: Option<&Listed>, changed_files: &BTreeSet<String>) -> bool {
+    let Some(new) = new else { return false };
+    let is_column = old.value.is_none();
+    let file_changed = old.origin.file.as_ref().is_some_and(|file| changed_files.contains(file));
+    same_numbers(old, new) && old.printed == new.printed && !(is_column && file_changed)
+}
+
+/// A value that was not touched but is no longer the one used.
+fn is_superseded(old: &Listed, engine: &Engine) -> bool {
+    let (Some(typed), Some(file), Some(line)) = (&old.typed, &old.origin.file, old.origin.line) else { return false };
+    let Some(file) = engine.sources().find(file) else { return false };
+    let sources = engine.sources();
+    let text = sources.file(file).line(line as usize).to_vec();
+    String::from_utf8_lossy(&text).contains(typed.as_str())
+}
+
+fn words(one: &Listed) -> String {
+    one.typed.clone().unwrap_or_else(|| one.printed.clone())
+}
+
+fn input_change(old: &Listed, new: Option<&Listed>) -> InputChange {
+    let origin = new.map_or(&old.origin, |new| &new.origin);
+    let (was, is) = (words(old), new.map_or_else(|| "none".into(), words));
+    InputChange {
+        name: old.name.clone(),
+        label: old.label.clone(),
+        new: if was == is && old.value.is_none() { format!("{is}, changed") } else { is },
+        old: was,
+        place: place_words(origin),
+    }
+}
+
+fn value_change(old: &Listed, new: Option<&Listed>, because_of: Vec<String>) -> ValueChange {
+    let difference = new.and_then(|new| Some(new.value? - old.value?));
+    let old_uncertainty = old.standard_uncertainty.filter(|u| *u > 0.0);
+    ValueChange {
+        name: old.name.clone(),
+        label: old.label.clone(),
+        old: old.printed.clone(),
+        new: new.map_or_else(|| "none".into(), |new| new.printed.clone()),
+        difference,
+        si_unit: old.si_unit.clone(),
+        relative_to_uncertainty: difference.zip(old_uncertainty).map(|(difference, u)| difference / u),
+        uncertainty_ratio: new
+            .and_then(|new| new.standard_uncertainty)
+            .zip(old_uncertainty)
+            .map(|(new, old)| new / old),
+        printed_digits_change: new.is_none_or(|new| new.printed != old.printed),
+        because_of,
+    }
+}
+
+/// The changed inputs in the trail of a quantity.
+fn because_of(engine: &Engine, name: &str, inputs: &BTreeSet<&str>) -> Vec<String> {
+    let graph = engine.graph();
+    let Some(id) = graph.find(name) else { return Vec::new() };
+    let names = trail(&graph, id).steps.into_iter().filter_map(|step| graph.node(step.node).name.as_ref());
+    names.map(|name| name.path.clone()).filter(|path| inputs.contains(path.as_str())).collect()
+}
