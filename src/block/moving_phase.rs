@@ -114,6 +114,8 @@ pub struct MovingPhase {
     pub drift: NodeId,
     /// m
     pub position: f64,
+    /// Position of each gate used from the weighing position, m.
+    pub offsets: Vec<f64>,
     /// Seconds since 1970.
     pub time: f64,
     /// First and last gate, seconds since 1970.
@@ -501,6 +503,7 @@ impl<'e> Work<'e> {
                 coefficients: coefficients[..=order].iter().map(|coefficient| coefficient.id).collect(),
                 drift: drift.id,
                 position: self.position,
+                offsets: rule.positions.clone(),
                 time: self.time,
                 span: (*self.gates.times.first()?, *self.gates.times.last()?),
                 alignment: effects.lengthening.id,

@@ -95,13 +95,23 @@ static FUNCTIONS: &[Function] = &[
     Function {
         name: "contents",
         usage: "contents(C1)",
-        answer: |engine, asked| campaign_part(engine, asked, parts::contents::contents_table),
+        answer: |engine, asked| part_of(engine, asked, &["realization"], parts::contents::contents_table),
+    },
+    Function {
+        name: "corrections",
+        usage: "corrections(D1)",
+        answer: |engine, asked| part_of(engine, asked, &["determination"], parts::phases::corrections_table),
+    },
+    Function {
+        name: "current",
+        usage: "current(WP1)",
+        answer: |engine, asked| part_of(engine, asked, &["weighing-phase"], parts::phases::current_charts),
     },
     Function { name: "correlation", usage: "correlation(W1.mass, W2.mass)", answer: correlation },
     Function {
         name: "determinations",
         usage: "determinations(C1)",
-        answer: |engine, asked| campaign_part(engine, asked, parts::campaign::determinations_table),
+        answer: |engine, asked| part_of(engine, asked, &["realization"], parts::campaign::determinations_table),
     },
     Function {
         name: "deviation",
@@ -132,6 +142,11 @@ static FUNCTIONS: &[Function] = &[
         name: "expanded_uncertainty",
         usage: "expanded_uncertainty(W1.mass)",
         answer: |engine, asked| inline(&asked.figure(engine)?.expanded_uncertainty()),
+    },
+    Function {
+        name: "profile",
+        usage: "profile(MP1)",
+        answer: |engine, asked| part_of(engine, asked, &["moving-phase"], parts::phases::profile_charts),
     },
     Function { name: "protocol", usage: "protocol(C1)", answer: protocol },
     Function { name: "readings", usage: "readings(W1)", answer: readings },
@@ -490,12 +505,13 @@ fn chart(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
     block(parts::charts::chart_of(engine, &name).ok_or_else(|| uncomputed(&name))?)
 }
 
-fn campaign_part(
+fn part_of(
     engine: &Engine,
     asked: &Asked<'_>,
+    kinds: &[&str],
     part: fn(&Engine, &str) -> Option<Markup>,
 ) -> Result<Inserted, Problem> {
-    let name = asked.block_of(engine, &["realization"])?;
+    let name = asked.block_of(engine, kinds)?;
     block(part(engine, &name).ok_or_else(|| uncomputed(&name))?)
 }
 
