@@ -23,6 +23,7 @@ const COVERED_ELSEWHERE: &[(&str, &str)] = &[
     ("register_unwritable", "tests/register.rs"),
     ("report_unknown", "tests/register.rs"),
     ("run_unexplained", "tests/register.rs"),
+    ("run_unlisted", "tests/realization_report.rs"),
 ];
 
 fn folder() -> PathBuf {

@@ -232,6 +232,7 @@ impl<'e> Work<'e> {
             basis: fields.text("basis").map_or_else(|| "own realization".into(), |basis| basis.text).into(),
         };
         work.mark_excluded(fields)?;
+        work.check_complete(&paths);
         work.check_checks(fields);
         Some(work)
     }
@@ -270,6 +271,25 @@ impl<'e> Work<'e> {
             }
         }
         Some(())
+    }
+
+    /// Every determination of the artefact in the campaign's folder is to be listed.
+    fn check_complete(&self, listed: &[Text]) {
+        let folder = |path: &str| path.rsplit_once('/').map_or(String::new(), |(folder, _)| folder.to_string());
+        let here = folder(&self.block.path);
+        for other in self.engine.blocks().values().filter(|other| other.kind.name == "determination") {
+            let is_listed = listed.iter().any(|path| path.text.split('.').next() == Some(other.name()));
+            if !is_listed && folder(&other.path) == here {
+                let message = format!(
+                    "The campaign has the determination {}, but {} does not list it.",
+                    other.name(),
+                    self.block.name()
+                );
+                let problem = Problem::new(Code::RunUnlisted, message)
+                    .hint("List it under `determinations:`; if it is not used, name it under `excluded:` with rule and reason.");
+                self.engine.complain(problem, self.block.fields().place_of("determinations"));
+            }
+        }
     }
 
     /// A check between realizations that had run out on the first day is said.
@@ -519,8 +539,9 @@ impl<'e> Work<'e> {
             )
         {
             let basis: Basis = dissemination.words("basis").into();
+            let basis_label = self.engine.laboratory.basis_label(&basis).to_string();
             let _scope = self.engine.builder.scope(name, Some(&campaign_mean::METHOD.info));
-            let label = format!("mass of {} on the basis {basis}", self.weight.block.label());
+            let label = format!("mass of {} on the basis {basis_label}", self.weight.block.label());
             (in_use + shift).on_basis(Some(basis)).result("disseminated_mass", "m_diss", &label, &unit("kg"));
         }
     }

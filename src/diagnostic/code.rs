@@ -88,6 +88,7 @@ codes! {
     ResultsInconsistent "results_inconsistent" Warning "Results combined disagree by more than their uncertainties let expect.";
     RuleDated "rule_dated" Fault "A rule is dated after the data it judges.";
     RunUnexplained "run_unexplained" Fault "A run of the same item is not used by a report, and no reason is recorded.";
+    RunUnlisted "run_unlisted" Fault "A determination of a campaign is not listed with its result.";
     SameValueTwice "same_value_twice" Warning "The same value and uncertainty stand in two blocks: one input or two?";
     ShapeMismatch "shape_mismatch" Fault "A field holds a list, a mapping or text where another is expected.";
     SignContradicts "sign_contradicts" Fault "Signs in one row contradict each other: direction, fringes and steps, or state and current.";

@@ -7,6 +7,7 @@ use super::page::{Page, Signature};
 use super::parts;
 use super::prose_text::dress;
 use crate::block::field::{Field, Shape, check_fields, needed, optional};
+use crate::block::realization::MeasuredAt;
 use crate::block::{Block, Engine, Fields};
 use crate::diagnostic::Complaints;
 use crate::graph::NodeId;
@@ -219,11 +220,12 @@ fn condition_words(item: &Block) -> String {
 
 /// First and last day of the weighings used.
 pub fn calibration_span(engine: &Engine) -> Option<(NaiveDate, NaiveDate)> {
-    let times: Vec<f64> = engine
-        .used_blocks()
-        .iter()
-        .filter_map(|name| engine.weighing(name))
+    let used = engine.used_blocks();
+    let weighings = used.iter().filter_map(|name| engine.weighing(name));
+    let runs = used.iter().filter_map(|name| engine.found::<MeasuredAt>(name));
+    let times: Vec<f64> = weighings
         .flat_map(|comparison| comparison.weighings.iter().map(|weighing| weighing.time).collect::<Vec<_>>())
+        .chain(runs.flat_map(|run| [run.start, run.end]))
         .collect();
     let (first, last) =
         (times.iter().copied().fold(f64::INFINITY, f64::min), times.iter().copied().fold(f64::NEG_INFINITY, f64::max));

@@ -47,16 +47,11 @@ pub fn determinations_table(engine: &Engine, name: &str) -> Option<Markup> {
         crate::report::prose_text::dress(&nominal_text, style)
     );
     let mut table = Table::new(caption, header);
-    table.columns = vec!["auto", "auto", "auto", "1fr", "auto", "auto", "auto", "auto", "1fr"];
+    table.columns = vec!["auto", "auto", "auto", "1fr", "auto", "auto", "auto", "auto", "auto"];
     table.align = vec!["left", "left", "left", "left", "right", "right", "right", "right", "left"];
     let micrograms = |value: f64, decimals: i32| fixed(style, value * MICROGRAMS, decimals);
     for run in &campaign.determinations {
-        let status = match &run.excluded {
-            None => "used".to_string(),
-            Some((rule, reason)) => {
-                format!("not used. Rule {} Reason: {}.", sentence(rule), reason.trim_end_matches('.'))
-            }
-        };
+        let status = if run.excluded.is_none() { "used" } else { "not used" };
         table.rows.push(vec![
             run.path.split('.').next().unwrap_or_default().into(),
             moment(run.at.start).into(),
@@ -71,6 +66,14 @@ pub fn determinations_table(engine: &Engine, name: &str) -> Option<Markup> {
     }
     table.closing = results_below(engine, name, nominal);
     let mut made = table.markup();
+    for run in &campaign.determinations {
+        if let Some((rule, reason)) = &run.excluded {
+            let name = run.path.split('.').next().unwrap_or_default();
+            let words =
+                format!("{name} is not used. Rule {} Reason: {}.", sentence(rule), reason.trim_end_matches('.'));
+            made.push_code("- ").push_text(&words).push_code("\n");
+        }
+    }
     for (what, decided) in &campaign.decisions {
         made.push_code("- ").push_text(&format!("{what}: {decided}.")).push_code("\n");
     }

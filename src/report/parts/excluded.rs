@@ -2,6 +2,7 @@
 
 use crate::block::Engine;
 use crate::block::combining::Combined;
+use crate::block::realization::Campaign;
 use crate::report::Markup;
 use crate::report::figures::{Figure, fixed};
 use crate::report::table::{Table, head};
@@ -42,6 +43,23 @@ fn excluded_results(engine: &Engine) -> Option<Table> {
                 rule_and_reason(&left_out.rule, &left_out.rule_text, &left_out.reason).into(),
                 combined.with_excluded.map_or_else(String::new, shown).into(),
                 shown(combined.result).into(),
+            ]);
+        }
+    }
+    for name in engine.used_blocks() {
+        let Some(campaign) = engine.found::<Campaign>(&name) else { continue };
+        let shown = |path: &str| {
+            let id = engine.graph().find(path);
+            id.and_then(|id| Figure::of(engine, id)).map_or_else(String::new, |figure| figure.standard())
+        };
+        for run in &campaign.determinations {
+            let Some((rule, reason)) = &run.excluded else { continue };
+            table.rows.push(vec![
+                name.clone().into(),
+                format!("{}: {}", run.path, shown(&run.path)).into(),
+                format!("{rule} Reason: {}.", reason.trim_end_matches('.')).into(),
+                shown(&format!("{name}.with_excluded.mass")).into(),
+                shown(&format!("{name}.mass")).into(),
             ]);
         }
     }
