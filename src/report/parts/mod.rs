@@ -13,6 +13,7 @@ pub mod correlation;
 pub mod distribution;
 pub mod excluded;
 pub mod fit;
+pub mod gravity;
 pub mod protocol;
 pub mod readings;
 pub mod results;
