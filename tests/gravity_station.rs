@@ -353,6 +353,14 @@ fn slips_of_sign_and_unit_are_seen() {
         ("ocean_loading: {sign: up, constituents: {M7: {amplitude: 1 nm/s2, phase: 10 °}}}", "undefined_reference"),
         ("air_pressure: {admittance: 3.0(3) nm s-2 hPa-1}", "out_of_validity"),
         ("tide: {source: series}", "field_missing"),
+        (
+            "profile: {gradient: -2976.5(200) nm s-2 m-1, balance: present}\nself_attraction: 5(1) nm/s2",
+            "convention_mismatch",
+        ),
+        (
+            "tide: {source: computed, wave_groups: [{from: 1.9, to: 2.0, factor: 1.18, phase_lead: 1 °}]}\nocean_loading: {sign: up, constituents: {M2: {amplitude: 1 nm/s2, phase: 10 °}}}",
+            "convention_mismatch",
+        ),
         ("tie: {value: 1(1) nm/s2, height: 1 m}", "field_missing"),
     ];
     for (slip, expected) in slips {
@@ -404,4 +412,23 @@ fn a_report_shows_each_effect_with_sign_and_uncertainty() {
     if let Some(path) = std::env::var_os("LIBRIPENS_SHOW") {
         std::fs::write(path, report.expect("a report").pdf).expect("written");
     }
+}
+
+/// First-order propagation and trials agree where everything but the height of the centre of mass is linear.
+#[test]
+fn trials_agree_with_first_order() {
+    let ties = "profile:\n  ties:\n    - {from: 250 mm, to: 850 mm, difference: -187.4(9) µGal}\n    - {from: 250 mm, to: 1450 mm, difference: -371.9(1.1) µGal}\n    - {from: 850 mm, to: 1450 mm, difference: -184.1(9) µGal}\n";
+    let two = "  - {value: 9.8072945600(200) m/s2, date: 2041-04-30, height: 1.2 m, permanent_tide: zero-tide}\n  - {value: 9.8072945800(300) m/s2, date: 2041-05-10, height: 1.2 m, permanent_tide: zero-tide, correlation: 0.7}";
+    let more = EFFECTS
+        .replace("profile: {gradient: -2.9765(200)e-6 s-2}\n", ties)
+        .replace(", normal_pressure: 963.46 hPa, data", ", data");
+    let intake = folder(&station(two, &more));
+    let engine = libripens::reduce(&intake, None).expect("readable");
+    ask(&engine, &[ZERO + 36_000.0, ZERO + 36_600.0], None).unwrap_or_else(|| panic!("{:#?}", engine.complaints()));
+    let (mean, u) = value_and_u(&engine, "W.gravity.mean");
+    let graph = engine.graph();
+    let id = graph.find("W.gravity.mean").expect("a mean");
+    let found = libripens::graph::propagate_distributions(&graph, &[id], 100_000).expect("runs").summary(0, 0.9545);
+    assert!((found.estimate - mean).abs() < 0.02 * u, "{} against {mean}", found.estimate);
+    assert!((found.standard_uncertainty / u - 1.0).abs() < 0.01, "{} against {u}", found.standard_uncertainty);
 }

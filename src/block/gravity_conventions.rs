@@ -2,6 +2,7 @@
 
 use super::fields::Fields;
 use super::gravity_check::stated_number;
+use super::gravity_station::GRAVIMETER_CORRECTIONS;
 use crate::diagnostic::{Code, Complaints, Problem};
 use crate::method::air_pressure_effect;
 use crate::quantity::Kind;
@@ -73,6 +74,31 @@ pub(super) fn check_conventions(fields: Fields<'_>, complaints: &mut Complaints)
         }
     }
     check_normal_pressures(fields, complaints);
+    check_attraction(fields, complaints);
+    for determination in determinations {
+        check_corrections(determination, complaints);
+    }
+}
+
+/// A profile measured with the balance in place holds the attraction of the balance already.
+fn check_attraction(fields: Fields<'_>, complaints: &mut Complaints) {
+    let present = fields.mapping("profile").is_some_and(|profile| profile.words("balance") == "present");
+    if present && fields.get("self_attraction").is_some() {
+        let message = "The profile was measured with the balance in its place and holds its attraction already.";
+        let problem = Problem::new(Code::ConventionMismatch, message);
+        complaints.add_at(problem.hint("Leave out `self_attraction:`."), fields.place_of("self_attraction"));
+    }
+}
+
+fn check_corrections(determination: Fields<'_>, complaints: &mut Complaints) {
+    for text in determination.texts("corrected_for") {
+        if GRAVIMETER_CORRECTIONS.contains(&text.text.as_str()) {
+            continue;
+        }
+        let message = format!("“{}” is no correction that the report of a gravimeter is asked about.", text.text);
+        let hint = format!("Known are {}.", GRAVIMETER_CORRECTIONS.join(", "));
+        complaints.add_at(Problem::new(Code::UndefinedReference, message).hint(hint), text.place);
+    }
 }
 
 /// The normal pressure of the effect that is added back, in Pa: as stated, else that of the height above sea level.

@@ -19,6 +19,9 @@ use std::rc::Rc;
 /// The treatments of the permanent tide.
 const PERMANENT_TIDES: &[&str] = &["zero-tide", "mean-tide", "tide-free"];
 
+/// What a gravimeter's own report answers for.
+pub(super) const GRAVIMETER_CORRECTIONS: &[&str] = &["diffraction", "self-attraction", "speed of light"];
+
 const DETERMINATION_FIELDS: &[Field] = &[
     needed("value", Shape::AnyValue, "g with its uncertainty, corrected to the conventions of its report"),
     needed("date", Shape::Date, "the day the value holds for, at noon"),
@@ -31,6 +34,11 @@ const DETERMINATION_FIELDS: &[Field] = &[
     optional("gravimeter", Shape::Text, "the gravimeter"),
     optional("certificate", Shape::Text, "the certificate or report"),
     optional("issued_by", Shape::Text, "who issued it"),
+    optional(
+        "corrected_for",
+        Shape::Texts,
+        "what the report corrects for in its gravimeter: diffraction, self-attraction, speed of light",
+    ),
     optional("correlation", Shape::Number, "correlation coefficient with the determination listed before"),
 ];
 
@@ -51,6 +59,7 @@ const PROFILE_FIELDS: &[Field] = &[
         Shape::Choice(&["stated", "from residuals"]),
         "where the uncertainty of fitted ties comes from",
     ),
+    optional("balance", Shape::Choice(&["absent", "present"]), "whether the balance stood in its place at the time"),
     optional("source", Shape::Text, "where they come from"),
 ];
 
@@ -303,6 +312,7 @@ fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
         inputs.push((input, fields.number("correlation")));
     }
     correlate_determinations(engine, block, &inputs)?;
+    assume_corrections(engine, block);
     determinations.sort_by(|a, b| a.time.total_cmp(&b.time));
     let last = determinations.last()?.time;
     let profile = StoredProfile::of(profile);
@@ -320,6 +330,24 @@ fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
     let _scope = engine.builder.scope(block.name(), Some(&gravity_transfer::METHOD.info));
     gravity.alias().result("gravity", "g_0", &format!("gravity at the mark of {}", block.label()), &unit("m/s2"));
     Some(())
+}
+
+/// Lists as an assumption what a report does not say of its gravimeter.
+fn assume_corrections(engine: &Engine, block: &Block) {
+    for (index, determination) in block.fields().mappings("determinations").into_iter().enumerate() {
+        let said = determination.texts("corrected_for");
+        let lacks = |what: &&&str| !said.iter().any(|text| text.text == **what);
+        let missing: Vec<&str> = GRAVIMETER_CORRECTIONS.iter().filter(lacks).copied().collect();
+        if !missing.is_empty() {
+            let text = format!(
+                "{}: determination {} is taken as corrected for {} of its gravimeter",
+                block.name(),
+                index + 1,
+                missing.join(", ")
+            );
+            engine.builder.assume(text, Some(determination.place()));
+        }
+    }
 }
 
 /// The height of the tie, and the profile of the balance above it.
