@@ -2,13 +2,12 @@
 
 use super::fields::Fields;
 use super::given::{Given, read_given};
-use super::gravity_station::stated_number;
+use super::gravity_conventions::check_conventions;
 use crate::diagnostic::{Code, Complaints, Problem};
+use crate::method::gravity_range::{self, Range, Verdict};
+use crate::method::ocean_loading::Constituent;
 use crate::method::unit;
 use crate::quantity::{Axis, Dimension, Kind, parse_coordinate};
-
-/// Normal pressures that agree to this, in Pa, are the same to what reports print.
-const SAME_PRESSURE: f64 = 6.0;
 
 /// Everything about a station that its fields alone tell.
 pub fn check(fields: Fields<'_>, complaints: &mut Complaints) {
@@ -18,7 +17,13 @@ pub fn check(fields: Fields<'_>, complaints: &mut Complaints) {
         }
     }
     check_values(fields, complaints);
-    check_profile(fields, complaints);
+    check_ranges(fields, complaints);
+    for profile in profiles(fields) {
+        check_profile(profile, complaints);
+    }
+    check_tie(fields, complaints);
+    check_loading(fields, complaints);
+    check_pole(fields, complaints);
     check_heights(fields, complaints);
     check_conventions(fields, complaints);
 }
@@ -43,6 +48,13 @@ fn sentence(problem: Problem) -> Problem {
 /// Dimensions of all values, and uncertainties where a value cannot go without.
 fn check_values(fields: Fields<'_>, complaints: &mut Complaints) {
     let acceleration = "nm/s2";
+    for profile in profiles(fields) {
+        expect(profile, "gradient", "nm s-2 m-1", true, complaints);
+        expect(profile, "second_coefficient", "nm s-2 m-2", true, complaints);
+    }
+    for point in fields.mapping("room_map").map(|map| map.mappings("points")).unwrap_or_default() {
+        expect(point, "difference", acceleration, false, complaints);
+    }
     for determination in fields.mappings("determinations") {
         expect(determination, "value", "m/s2", true, complaints);
         expect(determination, "gradient", "nm s-2 m-1", false, complaints);
@@ -51,12 +63,11 @@ fn check_values(fields: Fields<'_>, complaints: &mut Complaints) {
         expect(fields, name, acceleration, false, complaints);
     }
     let inner = [
-        ("profile", "gradient", "nm s-2 m-1", true),
-        ("profile", "second_coefficient", "nm s-2 m-2", true),
         ("tie", "value", acceleration, true),
         ("tide", "scale", "1", false),
         ("air_pressure", "admittance", "nm s-2 hPa-1", true),
         ("polar_motion", "effect", acceleration, false),
+        ("ocean_loading", "scale", "1", false),
     ];
     for (holder, name, unit_text, needs_uncertainty) in inner {
         if let Some(holder) = fields.mapping(holder) {
@@ -94,37 +105,114 @@ fn words(name: &str) -> String {
     name.replace('_', " ")
 }
 
-fn check_profile(fields: Fields<'_>, complaints: &mut Complaints) {
-    let Some(profile) = fields.mapping("profile") else { return };
-    let (gradient, second) = (profile.get("gradient"), profile.get("second_coefficient"));
-    if gradient.is_none() {
-        let problem = Problem::new(Code::FieldMissing, "The profile has no gradient.");
-        complaints.add_at(problem.hint("Write `gradient: -2976.5(200) nm s-2 m-1`."), profile.place());
-    }
-    let both_stated = [gradient, second]
-        .iter()
+/// The profile of the station, and that of its tie.
+fn profiles(fields: Fields<'_>) -> Vec<Fields<'_>> {
+    [fields.mapping("profile"), fields.mapping("tie").and_then(|tie| tie.mapping("profile"))]
+        .into_iter()
         .flatten()
-        .filter(|node| !matches!(node.as_text(), Some(text) if text.starts_with("from ")))
-        .count()
-        == 2;
-    let r = profile.number("correlation");
-    if both_stated && r.is_none() {
-        let problem = Problem::new(
-            Code::FieldMissing,
-            "The two coefficients of the profile stand without their correlation, which changes the uncertainty several times.",
-        );
+        .collect()
+}
+
+fn check_profile(profile: Fields<'_>, complaints: &mut Complaints) {
+    let (gradient, ties) = (profile.get("gradient"), profile.mappings("ties"));
+    if gradient.is_some() == profile.get("ties").is_some() {
+        let problem =
+            Problem::new(Code::FieldMissing, "The profile needs either its gradient or the ties it is fitted to.");
+        complaints.add_at(problem.hint("Write `gradient: -2976.5(200) nm s-2 m-1`, or list `ties:`."), profile.place());
+    }
+    for tie in &ties {
+        expect(*tie, "difference", "nm/s2", true, complaints);
+    }
+    if let Some(degree) = profile.number("degree").filter(|degree| ![1.0, 2.0].contains(degree)) {
+        let problem = Problem::new(Code::OutOfRange, format!("The degree {degree} of the profile is neither 1 nor 2."));
+        complaints.add_at(problem.hint("Write `degree: 1` for a straight profile."), profile.place_of("degree"));
+    }
+    let typed = |name: &str| {
+        profile.get(name).is_some_and(|node| !node.as_text().is_some_and(|text| text.starts_with("from ")))
+    };
+    if typed("gradient") && typed("second_coefficient") && profile.number("correlation").is_none() {
+        let message = "The two coefficients of the profile stand without their correlation, which changes the uncertainty several times.";
+        let problem = Problem::new(Code::FieldMissing, message);
         complaints.add_at(problem.hint("Write the `correlation:` of the fit, usually near -0.95."), profile.place());
     }
-    let holders = fields.mappings("determinations").into_iter().chain([profile]);
-    for holder in holders {
-        if let Some(r) = holder.number("correlation").filter(|r| !(-1.0..=1.0).contains(r)) {
-            let problem = Problem::new(
-                Code::CorrelationImpossible,
-                format!("The correlation coefficient {r} is not between -1 and 1."),
-            );
-            complaints.add_at(problem.hint("Take it from the report again."), holder.place_of("correlation"));
+    check_correlation(profile, complaints);
+}
+
+fn check_correlation(holder: Fields<'_>, complaints: &mut Complaints) {
+    if let Some(r) = holder.number("correlation").filter(|r| !(-1.0..=1.0).contains(r)) {
+        let message = format!("The correlation coefficient {r} is not between -1 and 1.");
+        let problem = Problem::new(Code::CorrelationImpossible, message);
+        complaints.add_at(problem.hint("Take it from the report again."), holder.place_of("correlation"));
+    }
+}
+
+fn check_tie(fields: Fields<'_>, complaints: &mut Complaints) {
+    let Some(tie) = fields.mapping("tie") else { return };
+    if tie.get("profile").is_some() != tie.get("height").is_some() {
+        let message = "A profile at the balance needs the height of the tie, and the height a profile.";
+        let problem = Problem::new(Code::FieldMissing, message);
+        complaints.add_at(problem.hint("Write both, or neither when one profile serves at both places."), tie.place());
+    }
+}
+
+fn check_loading(fields: Fields<'_>, complaints: &mut Complaints) {
+    let Some(loading) = fields.mapping("ocean_loading") else { return };
+    let entries = loading.get("constituents").and_then(|node| node.as_map()).unwrap_or_default();
+    for entry in entries {
+        expect(Fields { node: &entry.value }, "amplitude", "nm/s2", false, complaints);
+        if Constituent::of_name(&entry.key.text).is_none() {
+            let known: Vec<&str> = Constituent::ALL.iter().map(|known| known.name()).collect();
+            let message = format!("{} is no constituent of the ocean tide that is computed here.", entry.key.text);
+            let hint = format!("The constituents are {}.", known.join(", "));
+            complaints.add_at(Problem::new(Code::UndefinedReference, message).hint(hint), entry.key.place);
         }
     }
+    if fields.mapping("tide").is_some_and(|tide| tide.get("wave_groups").is_some()) {
+        let message = "The observed groups of waves hold the load of the ocean tide already.";
+        let problem = Problem::new(Code::ConventionMismatch, message);
+        complaints
+            .add_at(problem.hint("Leave out `ocean_loading:`, or the `wave_groups:` of the tide."), loading.place());
+    }
+}
+
+fn check_pole(fields: Fields<'_>, complaints: &mut Complaints) {
+    let Some(pole) = fields.mapping("polar_motion") else { return };
+    let (effect, x, y) = (pole.get("effect").is_some(), pole.get("x").is_some(), pole.get("y").is_some());
+    if x != y || effect == x {
+        let message = "Polar motion needs either its effect, or both coordinates of the pole.";
+        let problem = Problem::new(Code::FieldMissing, message);
+        complaints.add_at(problem.hint("Write `effect: 21(3) nm/s2`, or `x: 0.1234″` and `y: 0.3456″`."), pole.place());
+    }
+}
+
+/// What lies outside the range of the possible is refused, outside that of the usual warned of.
+fn check_ranges(fields: Fields<'_>, complaints: &mut Complaints) {
+    let mut judge = |holder: Option<Fields<'_>>, name: &str, kind: Kind, range: &Range| {
+        let Some(holder) = holder else { return };
+        let Some(value) = stated_number(holder, name, kind) else { return };
+        let place = holder.place_of(name);
+        match (range.verdict(value), range.remark(value)) {
+            (Verdict::Warn, Some(remark)) => {
+                complaints.add_at(Problem::new(Code::ValueUnusual, remark).hint(range.hint), place);
+            }
+            _ => {
+                complaints.keep(range.check(value), place);
+            }
+        }
+    };
+    for name in ["height_above_sea_level", "height_above_ellipsoid"] {
+        judge(Some(fields), name, Kind::Height, &gravity_range::HEIGHT);
+    }
+    for profile in profiles(fields) {
+        judge(Some(profile), "gradient", Kind::Plain, &gravity_range::GRADIENT);
+    }
+    let air = fields.mapping("air_pressure");
+    judge(air, "admittance", Kind::Plain, &gravity_range::ADMITTANCE);
+    judge(air, "normal_pressure", Kind::Pressure, &gravity_range::PRESSURE);
+    let pole = fields.mapping("polar_motion");
+    judge(pole, "x", Kind::Angle, &gravity_range::POLE_X);
+    judge(pole, "y", Kind::Angle, &gravity_range::POLE_Y);
+    judge(fields.mapping("tide"), "dut1", Kind::Duration, &gravity_range::DUT1);
 }
 
 fn check_heights(fields: Fields<'_>, complaints: &mut Complaints) {
@@ -139,6 +227,7 @@ fn check_heights(fields: Fields<'_>, complaints: &mut Complaints) {
         complaints.add_at(problem.hint("List at least one absolute value."), fields.place_of("determinations"));
     }
     for determination in &determinations {
+        check_correlation(*determination, complaints);
         if determination.get("effective_height").is_some() != determination.get("gradient").is_some() {
             let problem = Problem::new(
                 Code::FieldMissing,
@@ -156,96 +245,23 @@ fn check_heights(fields: Fields<'_>, complaints: &mut Complaints) {
     }
 }
 
-/// How a value treats the permanent tide: the word, and the factor of a tide-free value.
-#[derive(Debug, Clone, PartialEq)]
-struct Treatment {
-    word: String,
-    factor: Option<f64>,
-}
-
-impl Treatment {
-    fn of(fields: Fields<'_>) -> Option<Treatment> {
-        let word = fields.text("permanent_tide")?.text;
-        let factor = if word == "tide-free" { fields.number("permanent_tide_factor") } else { None };
-        Some(Treatment { word, factor })
-    }
-
-    fn words(&self) -> String {
-        match self.factor {
-            Some(factor) => format!("{} with the factor {factor}", self.word),
-            None => self.word.clone(),
-        }
-    }
-}
-
-/// Permanent tide and normal pressure must be the same in all determinations and in the effects added back.
-fn check_conventions(fields: Fields<'_>, complaints: &mut Complaints) {
-    let determinations = fields.mappings("determinations");
-    let tide = fields.mapping("tide");
-    for holder in determinations.iter().copied().chain(tide) {
-        let factor = holder.number("permanent_tide_factor");
-        if holder.words("permanent_tide") == "tide-free" && factor.is_none() {
-            let problem = Problem::new(Code::FieldMissing, "A tide-free value needs the factor its report used.");
-            complaints.add_at(
-                problem.hint("Write `permanent_tide_factor: 1.16` as the report says."),
-                holder.place_of("permanent_tide"),
-            );
-        }
-    }
-    if let Some(tide) = tide.filter(|tide| tide.words("source") == "series") {
-        for (name, meaning) in
-            [("data", "the raw data of the series"), ("permanent_tide", "how the series treats the permanent tide")]
-        {
-            if tide.get(name).is_none() {
-                let problem =
-                    Problem::new(Code::FieldMissing, format!("The series of the tide lacks {name}: {meaning}."));
-                complaints.add_at(problem.hint(format!("Write `{name}:` beside `source: series`.")), tide.place());
-            }
-        }
-    }
-    let Some(first) = determinations.first() else { return };
-    let Some(expected) = Treatment::of(*first) else { return };
-    for other in determinations.iter().skip(1).copied().chain(tide) {
-        if let Some(found) = Treatment::of(other).filter(|found| *found != expected) {
-            let message = format!(
-                "The permanent tide is {} here, but {} in the first determination.",
-                found.words(),
-                expected.words()
-            );
-            let problem = Problem::new(Code::ConventionMismatch, message);
-            complaints.add_at(
-                problem.hint("Convert one of them, and state the convention it then follows."),
-                other.place_of("permanent_tide"),
-            );
-        }
-    }
-    check_normal_pressures(fields, complaints);
-}
-
-fn check_normal_pressures(fields: Fields<'_>, complaints: &mut Complaints) {
-    let determinations = fields.mappings("determinations");
-    let air = fields.mapping("air_pressure");
-    let holders: Vec<Fields<'_>> = air.into_iter().chain(determinations).collect();
-    let stated: Vec<(f64, Fields<'_>)> = holders
-        .into_iter()
-        .filter_map(|holder| Some((stated_number(holder, "normal_pressure", Kind::Pressure)?, holder)))
-        .collect();
-    let Some((expected, _)) = stated.first().copied() else { return };
-    for (found, holder) in stated.into_iter().skip(1).filter(|(found, _)| (found - expected).abs() > SAME_PRESSURE) {
-        let message = format!(
-            "The normal pressure is {} hPa here, but {} hPa where it is written first.",
-            found / 100.0,
-            expected / 100.0
-        );
-        let problem = Problem::new(Code::ConventionMismatch, message);
-        complaints.add_at(
-            problem.hint("The effect of air pressure is added back against the normal pressure that the report subtracted it with; use the report's."),
-            holder.place_of("normal_pressure"),
-        );
-    }
-}
-
 /// Whether a result has the dimension of a unit; for values that refer to results.
 pub(super) fn fits(dimension: Dimension, unit_text: &str) -> bool {
     unit(unit_text).dimension() == dimension
+}
+
+/// A stated number in coherent SI units; nothing for a reference.
+pub(super) fn stated_number(fields: Fields<'_>, field: &str, kind: Kind) -> Option<f64> {
+    match fields.given(field, kind)? {
+        Given::Stated { value, .. } => Some(value.value),
+        Given::Reference(_) => None,
+    }
+}
+
+/// The standard uncertainty of a stated value, in coherent SI units.
+pub(super) fn stated_uncertainty(fields: Fields<'_>, field: &str) -> Option<f64> {
+    match fields.given(field, Kind::Plain)? {
+        Given::Stated { value, .. } => value.standard_uncertainty(),
+        Given::Reference(_) => None,
+    }
 }

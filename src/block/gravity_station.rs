@@ -3,25 +3,28 @@
 use super::engine::{Block, Engine};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
-use super::given::Given;
 use super::gravity_check::check;
-use super::raw_data::epoch;
+use super::gravity_reference::{correlate_determinations, determination, profile};
 use super::{BlockKind, Output};
-use crate::diagnostic::{Code, Problem};
-use crate::graph::{Distribution, InputDraft, Name, NodeId, Origin, Quantity, Value};
-use crate::intake::Place;
+use crate::graph::{Name, NodeId, Quantity};
+use crate::method::gravity_epoch::Determination;
+use crate::method::gravity_profile::Profile;
+use crate::method::gravity_site::Site;
+use crate::method::permanent_tide::PermanentSystem;
 use crate::method::{gravity_transfer, unit};
-use crate::quantity::Kind;
+use crate::quantity::{Axis, Kind, parse_coordinate};
 use crate::record::Text;
-use chrono::NaiveDate;
 use std::rc::Rc;
 
 /// The treatments of the permanent tide.
-pub const PERMANENT_TIDES: &[&str] = &["zero-tide", "mean-tide", "tide-free"];
+const PERMANENT_TIDES: &[&str] = &["zero-tide", "mean-tide", "tide-free"];
+
+/// What a gravimeter's own report answers for.
+pub(super) const GRAVIMETER_CORRECTIONS: &[&str] = &["diffraction", "self-attraction", "speed of light"];
 
 const DETERMINATION_FIELDS: &[Field] = &[
     needed("value", Shape::AnyValue, "g with its uncertainty, corrected to the conventions of its report"),
-    needed("date", Shape::Date, "the day the value holds for"),
+    needed("date", Shape::Date, "the day the value holds for, at noon"),
     needed("height", Shape::Value(Kind::Height), "the height above the mark at which the value holds"),
     optional("effective_height", Shape::Value(Kind::Height), "the height at which the value depends on no gradient"),
     optional("gradient", Shape::AnyValue, "the gradient the report used between the two heights"),
@@ -31,42 +34,96 @@ const DETERMINATION_FIELDS: &[Field] = &[
     optional("gravimeter", Shape::Text, "the gravimeter"),
     optional("certificate", Shape::Text, "the certificate or report"),
     optional("issued_by", Shape::Text, "who issued it"),
+    optional(
+        "corrected_for",
+        Shape::Texts,
+        "what the report corrects for in its gravimeter: diffraction, self-attraction, speed of light",
+    ),
     optional("correlation", Shape::Number, "correlation coefficient with the determination listed before"),
+];
+
+const HEIGHT_TIE_FIELDS: &[Field] = &[
+    needed("from", Shape::Value(Kind::Height), "the height of the first reading above the mark"),
+    needed("to", Shape::Value(Kind::Height), "the height of the second reading"),
+    needed("difference", Shape::AnyValue, "g at the second height less g at the first, with its uncertainty"),
 ];
 
 const PROFILE_FIELDS: &[Field] = &[
     optional("gradient", Shape::AnyValue, "the change of g with height at the mark, upwards"),
     optional("second_coefficient", Shape::AnyValue, "the coefficient of the height squared"),
     optional("correlation", Shape::Number, "correlation coefficient of the two"),
+    optional("ties", Shape::Mappings(HEIGHT_TIE_FIELDS), "measured differences, instead of coefficients"),
+    optional("degree", Shape::Number, "degree of the profile fitted to ties: 1 or 2"),
+    optional(
+        "scatter",
+        Shape::Choice(&["stated", "from residuals"]),
+        "where the uncertainty of fitted ties comes from",
+    ),
+    optional("balance", Shape::Choice(&["absent", "present"]), "whether the balance stood in its place at the time"),
     optional("source", Shape::Text, "where they come from"),
 ];
 
 const TIE_FIELDS: &[Field] = &[
     needed("value", Shape::AnyValue, "g at the balance less g at the absolute site, at one height"),
+    optional("height", Shape::Value(Kind::Height), "that height, where the balance stands on a profile of its own"),
+    optional("profile", Shape::Mapping(PROFILE_FIELDS), "the profile at the balance"),
     optional("source", Shape::Text, "where it comes from"),
 ];
 
+const GROUP_FIELDS: &[Field] = &[
+    needed("from", Shape::Number, "first frequency in cycles per day"),
+    needed("to", Shape::Number, "last frequency in cycles per day"),
+    needed("factor", Shape::Number, "observed gravimetric factor"),
+    needed("phase_lead", Shape::Value(Kind::Angle), "observed phase lead"),
+];
+
 const TIDE_FIELDS: &[Field] = &[
-    needed("source", Shape::Choice(&["series"]), "a series in a file"),
-    optional("data", Shape::Name, "the raw data with the column time"),
+    needed("source", Shape::Choice(&["computed", "series"]), "computed from place and time, or a series in a file"),
+    optional("data", Shape::Name, "the raw data of a series, with the column time"),
     optional("column", Shape::Text, "the column of the effect, tide unless written"),
-    optional("scale", Shape::AnyValue, "a factor of the whole effect with its uncertainty"),
-    optional("permanent_tide", Shape::Choice(PERMANENT_TIDES), "how the series treats the permanent tide"),
+    optional("scale", Shape::AnyValue, "a factor of the tide with its uncertainty"),
+    optional("permanent_tide", Shape::Choice(PERMANENT_TIDES), "how a series treats the permanent tide"),
     optional("permanent_tide_factor", Shape::Number, "the factor of a tide-free series"),
+    optional("dut1", Shape::Value(Kind::Duration), "UT1 − UTC for a computed tide, zero unless written"),
+    optional("wave_groups", Shape::Mappings(GROUP_FIELDS), "observed groups of waves in place of the body model"),
+];
+
+const CONSTITUENT_FIELDS: &[Field] = &[
+    needed("amplitude", Shape::AnyValue, "the amplitude"),
+    needed("phase", Shape::Value(Kind::Angle), "the Greenwich phase lag"),
+];
+
+const LOADING_FIELDS: &[Field] = &[
+    needed("sign", Shape::Choice(&["up", "down"]), "the direction in which the table counts gravity positive"),
+    needed("constituents", Shape::Named(CONSTITUENT_FIELDS), "the table"),
+    optional("scale", Shape::AnyValue, "1 with the relative uncertainty of the table, 5 % unless written"),
+    optional("source", Shape::Text, "the model of the ocean, and who computed the load"),
 ];
 
 const AIR_FIELDS: &[Field] = &[
     needed("admittance", Shape::AnyValue, "the change of g with pressure, with its uncertainty"),
-    needed("normal_pressure", Shape::Value(Kind::Pressure), "the normal pressure"),
-    optional(
-        "data",
-        Shape::Name,
-        "the raw data with the columns time and pressure; else the weighing gives the pressure",
-    ),
+    optional("normal_pressure", Shape::Value(Kind::Pressure), "the normal pressure; by DIN 5450 unless written"),
+    optional("data", Shape::Name, "raw data with the columns time and pressure; else the weighing gives the pressure"),
     optional("column", Shape::Text, "the column of the pressure, pressure unless written"),
 ];
 
-const POLE_FIELDS: &[Field] = &[optional("effect", Shape::AnyValue, "the effect on g")];
+const POLE_FIELDS: &[Field] = &[
+    optional("effect", Shape::AnyValue, "the effect on g"),
+    optional("x", Shape::Value(Kind::Angle), "coordinate x of the pole, instead of the effect"),
+    optional("y", Shape::Value(Kind::Angle), "coordinate y of the pole"),
+];
+
+const POINT_FIELDS: &[Field] = &[
+    needed("x", Shape::Value(Kind::Length), "first coordinate in the room"),
+    needed("y", Shape::Value(Kind::Length), "second coordinate in the room"),
+    needed("difference", Shape::AnyValue, "g there less g at the mark"),
+];
+
+const MAP_FIELDS: &[Field] = &[
+    needed("points", Shape::Mappings(POINT_FIELDS), "the points"),
+    optional("height", Shape::Value(Kind::Height), "the height above the mark"),
+    optional("source", Shape::Text, "when and how it was measured"),
+];
 
 /// A gravity station.
 pub static KIND: BlockKind = BlockKind {
@@ -91,9 +148,11 @@ pub static KIND: BlockKind = BlockKind {
         optional("tie", Shape::Mapping(TIE_FIELDS), "the tie from the absolute site to the balance"),
         optional("self_attraction", Shape::AnyValue, "attraction of the balance on the artefact"),
         optional("tide", Shape::Mapping(TIDE_FIELDS), "the tide of the solid Earth"),
+        optional("ocean_loading", Shape::Mapping(LOADING_FIELDS), "the load of the ocean tide"),
         optional("air_pressure", Shape::Mapping(AIR_FIELDS), "the effect of air pressure"),
         optional("polar_motion", Shape::Mapping(POLE_FIELDS), "the effect of polar motion"),
         optional("hydrology", Shape::AnyValue, "the effect of ground water against the determinations"),
+        optional("room_map", Shape::Mapping(MAP_FIELDS), "differences of g over the room, for the report"),
     ],
     outputs: &[
         Output { path: "gravity", meaning: "gravity at the mark on the reference date, as reported", unit: "m s⁻²" },
@@ -115,6 +174,23 @@ pub static KIND: BlockKind = BlockKind {
     },
 };
 
+/// A profile by the numbers of its nodes.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct StoredProfile {
+    pub gradient: NodeId,
+    pub second_coefficient: Option<NodeId>,
+}
+
+impl StoredProfile {
+    pub(super) fn of(profile: Profile<'_>) -> Self {
+        Self { gradient: profile.gamma_1.id, second_coefficient: profile.gamma_2.map(|second| second.id) }
+    }
+
+    pub(super) fn handles<'e>(self, engine: &'e Engine<'e>) -> Profile<'e> {
+        Profile { gamma_1: engine.at(self.gradient), gamma_2: self.second_coefficient.map(|id| engine.at(id)) }
+    }
+}
+
 /// A determination referred to the mark.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Determined {
@@ -126,10 +202,16 @@ pub struct Determined {
 /// What a station stores when it is built.
 #[derive(Debug, Clone, PartialEq)]
 pub struct Station {
+    /// Height above the ellipsoid, or above sea level where that alone is known.
+    pub site: Site,
+    /// Height of the mark above sea level, or above the ellipsoid where that alone is known, m.
+    pub above_sea_level: f64,
+    pub system: PermanentSystem,
     /// In order of time.
     pub determinations: Vec<Determined>,
-    pub gradient: NodeId,
-    pub second_coefficient: Option<NodeId>,
+    pub profile: StoredProfile,
+    /// Height of the tie and the profile above it, where the balance stands on a profile of its own.
+    pub at_balance: Option<(NodeId, StoredProfile)>,
 }
 
 /// A gravity station ready for use.
@@ -149,47 +231,10 @@ impl<'e> GravityStation<'e> {
         Some(Self { engine, block, station })
     }
 
-    /// Gravity at the mark at a time (s since 1970): on the line between two determinations, or the nearest one with
-    /// the stated change.
-    pub(super) fn on_day(&self, time: f64) -> Option<Quantity<'e>> {
-        let (engine, name) = (self.engine, self.block.name());
-        let list = &self.station.determinations;
-        let (first, last) = (list.first()?, list.last()?);
-        if let Some(pair) = list.windows(2).find(|pair| pair[0].time <= time && time <= pair[1].time) {
-            let part = (time - pair[0].time) / (pair[1].time - pair[0].time);
-            let (before, after) = (engine.at(pair[0].at_mark), engine.at(pair[1].at_mark));
-            let change = self.change(
-                "change_between_determinations",
-                "δ_b",
-                "departure from the line between two determinations",
-            );
-            return Some(plus(before * (1.0 - part) + after * part, change));
-        }
-        let nearest = if time < first.time { first } else { last };
-        let at_mark = engine.at(nearest.at_mark);
-        let same_day = |determined: &Determined| (time - determined.time).abs() <= 43_200.0;
-        if list.iter().any(same_day) {
-            return Some(at_mark);
-        }
-        match self.change("change_since_determination", "δ_s", "change of gravity since the determination") {
-            Some(change) => Some(at_mark + change),
-            None => {
-                let message = format!(
-                    "Gravity is needed on {}, but {name} was determined on {}.",
-                    day(time),
-                    list.iter().map(|one| day(one.time)).collect::<Vec<_>>().join(" and ")
-                );
-                let problem = Problem::new(Code::ConditionsOutOfSpan, message).hint(
-                    "Enter a determination on the other side of that day, or state how far g may have moved: `change_since_determination: 0.0(15) µGal`.",
-                );
-                engine.complain(problem, self.block.fields().place_of("determinations"));
-                None
-            }
-        }
-    }
-
-    fn change(&self, field: &str, symbol: &str, label: &str) -> Option<Quantity<'e>> {
-        stated(self.engine, self.block.fields(), field, &format!("{}.{field}", self.block.name()), symbol, label)
+    /// The determinations as the method takes them.
+    pub(super) fn determinations(&self) -> Vec<Determination<'e>> {
+        let handle = |one: &Determined| Determination { time: one.time, gravity: self.engine.at(one.at_mark) };
+        self.station.determinations.iter().map(handle).collect()
     }
 }
 
@@ -203,17 +248,16 @@ pub(super) fn stated<'e>(
     label: &str,
 ) -> Option<Quantity<'e>> {
     let found = engine.given(&fields.given(field, Kind::Plain)?, path, symbol, label, Kind::Plain)?;
-    let named = engine.graph().find(path).is_some();
-    if named {
-        return Some(found.as_kind(Kind::Plain));
-    }
     let made = found.as_kind(Kind::Plain);
-    let shown = engine.graph().node(found.id).name.clone().map_or_else(|| unit("1"), |name| name.unit);
-    engine.builder.name(made.id, Name { path: path.into(), symbol: symbol.into(), label: label.into(), unit: shown });
+    if engine.graph().find(path).is_none() {
+        let shown = engine.graph().node(found.id).name.clone().map_or_else(|| unit("1"), |name| name.unit);
+        let name = Name { path: path.into(), symbol: symbol.into(), label: label.into(), unit: shown };
+        engine.builder.name(made.id, name);
+    }
     Some(made)
 }
 
-/// A height in m as a plain quantity.
+/// A height above the mark as a plain quantity.
 pub(super) fn height<'e>(
     engine: &'e Engine<'e>,
     fields: Fields<'_>,
@@ -225,169 +269,97 @@ pub(super) fn height<'e>(
     Some(found.as_kind(Kind::Plain))
 }
 
-pub(super) fn plus<'e>(value: Quantity<'e>, change: Option<Quantity<'e>>) -> Quantity<'e> {
-    change.map_or(value, |change| value + change)
+/// The site and the height above sea level; where one height is missing the other serves for both.
+fn site(engine: &Engine, block: &Block) -> Option<(Site, f64)> {
+    let fields = block.fields();
+    let angle = |name: &str, axis: Axis| Some(parse_coordinate(&fields.text(name)?.text, axis).ok()?.radians);
+    let height = |name: &str| super::gravity_check::stated_number(fields, name, Kind::Height);
+    let (sea, ellipsoid) = (height("height_above_sea_level"), height("height_above_ellipsoid"));
+    let above_ellipsoid = ellipsoid.or(sea)?;
+    let made = Site::new(angle("latitude", Axis::Latitude)?, angle("longitude", Axis::Longitude)?, above_ellipsoid);
+    let place = fields.place_of("height_above_sea_level");
+    let text = match (sea, ellipsoid) {
+        (Some(_), None) => Some("ellipsoid is not stated; that above sea level"),
+        (None, Some(_)) => Some("sea level is not stated; that above the ellipsoid"),
+        _ => None,
+    };
+    if let Some(text) = text {
+        let text = format!("{}: the height of the mark above the {text} stands in", block.name());
+        engine.builder.assume(text.replace("the sea", "sea"), Some(place));
+    }
+    Some((engine.keep(made, place)?, sea.or(ellipsoid)?))
 }
 
-/// The day of a time in s since 1970.
-pub(super) fn day(time: f64) -> String {
-    chrono::DateTime::from_timestamp(time as i64, 0).map_or_else(String::new, |at| at.date_naive().to_string())
-}
-
-/// Noon of a day, in s since 1970.
-pub(super) fn noon(date: NaiveDate) -> f64 {
-    (date - epoch().date_naive()).num_days() as f64 * 86_400.0 + 43_200.0
+/// The system of the first determination; the check has seen that the others agree.
+fn system(fields: Fields<'_>) -> Option<PermanentSystem> {
+    let first = fields.mappings("determinations").into_iter().next()?;
+    Some(match first.words("permanent_tide").as_str() {
+        "mean-tide" => PermanentSystem::MeanTide,
+        "tide-free" => PermanentSystem::TideFree { factor: first.number("permanent_tide_factor")? },
+        _ => PermanentSystem::ZeroTide,
+    })
 }
 
 fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
-    let (gradient, second) = profile(engine, block)?;
+    let (site, above_sea_level) = site(engine, block)?;
+    let fields = block.fields();
+    let profile = profile(engine, block, fields.mapping("profile"), &format!("{}.profile", block.name()))?;
     let mut determinations = Vec::new();
     let mut inputs = Vec::new();
-    for (index, fields) in block.fields().mappings("determinations").into_iter().enumerate() {
-        let (value, at_mark) = determination(engine, block, fields, index + 1, gradient, second)?;
-        determinations.push(Determined { time: noon(fields.date("date")?), at_mark: at_mark.id });
-        inputs.push((value, fields.number("correlation")));
+    for (index, fields) in fields.mappings("determinations").into_iter().enumerate() {
+        let (input, determined) = determination(engine, block, fields, index + 1, profile)?;
+        determinations.push(determined);
+        inputs.push((input, fields.number("correlation")));
     }
     correlate_determinations(engine, block, &inputs)?;
+    assume_corrections(engine, block);
     determinations.sort_by(|a, b| a.time.total_cmp(&b.time));
     let last = determinations.last()?.time;
-    let station = Station { determinations, gradient: gradient.id, second_coefficient: second.map(|second| second.id) };
+    let profile = StoredProfile::of(profile);
+    let at_balance = match fields.mapping("tie").filter(|tie| tie.get("profile").is_some()) {
+        Some(tie) => Some(profile_at_balance(engine, block, tie)?),
+        None => None,
+    };
+    let system = system(fields)?;
+    let station = Station { site, above_sea_level, system, determinations, profile, at_balance };
     engine.store(block.name(), station.clone());
     let station = GravityStation { engine, block, station: Rc::new(station) };
-    let reference = block.fields().date("reference_date").map_or(last, noon);
+    super::gravity_reference::judge(&station)?;
+    let reference = fields.date("reference_date").map_or(last, super::gravity_reference::noon);
     let gravity = station.on_day(reference)?;
     let _scope = engine.builder.scope(block.name(), Some(&gravity_transfer::METHOD.info));
     gravity.alias().result("gravity", "g_0", &format!("gravity at the mark of {}", block.label()), &unit("m/s2"));
     Some(())
 }
 
-/// Gradient and second coefficient: stated, or the gradient of free air where nobody measured one.
-fn profile<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<(Quantity<'e>, Option<Quantity<'e>>)> {
-    let name = block.name();
-    let Some(fields) = block.fields().mapping("profile") else {
-        return Some((free_air(engine, block), None));
-    };
-    let path = |field: &str| format!("{name}.profile.{field}");
-    let gradient = stated(engine, fields, "gradient", &path("gradient"), "γ_1", "change of gravity with height")?;
-    let second = stated(
-        engine,
-        fields,
-        "second_coefficient",
-        &path("second_coefficient"),
-        "γ_2",
-        "coefficient of the height squared",
-    );
-    if let (Some(second), Some(r)) = (second, fields.number("correlation")) {
-        correlate(
-            engine,
-            &path("correlation"),
-            &[path("gradient"), path("second_coefficient")],
-            r,
-            fields.place_of("correlation"),
-        )?;
-        return Some((gradient, Some(second)));
+/// Lists as an assumption what a report does not say of its gravimeter.
+fn assume_corrections(engine: &Engine, block: &Block) {
+    for (index, determination) in block.fields().mappings("determinations").into_iter().enumerate() {
+        let said = determination.texts("corrected_for");
+        let lacks = |what: &&&str| !said.iter().any(|text| text.text == **what);
+        let missing: Vec<&str> = GRAVIMETER_CORRECTIONS.iter().filter(lacks).copied().collect();
+        if !missing.is_empty() {
+            let text = format!(
+                "{}: determination {} is taken as corrected for {} of its gravimeter",
+                block.name(),
+                index + 1,
+                missing.join(", ")
+            );
+            engine.builder.assume(text, Some(determination.place()));
+        }
     }
-    Some((gradient, second))
 }
 
-/// The free-air gradient with the uncertainty that laboratories depart from it by.
-fn free_air<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Quantity<'e> {
-    let name = block.name();
-    let place = block.raw.name.place;
-    engine.builder.assume(
-        format!("{name}: the gradient of gravity was not measured; that of free air, −308.6 µGal/m, is used with a standard uncertainty of 30 µGal/m"),
-        Some(place),
-    );
-    let problem = Problem::new(
-        Code::GradientAssumed,
-        format!(
-            "{name} has no measured profile of gravity; the gradient of free air is used with a standard uncertainty of 30 µGal/m."
-        ),
-    );
-    engine.complain(problem.hint("Measure g at several heights and write `profile:`."), place);
-    let mut draft = InputDraft::new(
-        &format!("{name}.profile.gradient"),
-        "γ_1",
-        "change of gravity with height, free air",
-        Kind::Plain,
-        unit("nm s-2 m-1"),
-        Value::Scalar(-3.086e-6),
-        Origin::Assumed("gradient of gravity not measured"),
-    );
-    draft.distribution = Distribution::Normal { standard_uncertainty: 3e-7 };
-    engine.builder.input(draft)
-}
-
-/// One determination: its input, and its value referred to the mark.
-fn determination<'e>(
+/// The height of the tie, and the profile of the balance above it.
+fn profile_at_balance<'e>(
     engine: &'e Engine<'e>,
     block: &'e Block,
-    fields: Fields<'e>,
-    number: usize,
-    gradient: Quantity<'e>,
-    second: Option<Quantity<'e>>,
-) -> Option<(String, Quantity<'e>)> {
-    let own = format!("{}.determination_{number}", block.name());
-    let of = format!("of determination {number} of {}", block.label());
-    let path = format!("{own}.value");
-    let mut value = stated(engine, fields, "value", &path, &format!("g_{number}"), &format!("gravity {of}"))?;
-    let mut z = height(engine, fields, "height", &format!("{own}.height"), &format!("height {of}"))?;
-    if fields.get("effective_height").is_some() {
-        let label = format!("effective height {of}");
-        let effective = height(engine, fields, "effective_height", &format!("{own}.effective_height"), &label)?;
-        let label = format!("gradient in the report {of}");
-        let used = stated(engine, fields, "gradient", &format!("{own}.gradient"), "γ_r", &label)?;
-        value = value + used * (effective - z);
-        z = effective;
-    }
-    let zero = engine.builder.exact(Value::Scalar(0.0), z.dimension(), Kind::Plain);
-    let at_mark = value + between(gradient, second, z, zero);
-    let _scope = engine.builder.scope(&own, Some(&gravity_transfer::METHOD.info));
-    let label = format!("gravity {of}, at the mark");
-    Some((path, at_mark.alias().result("at_mark", &format!("g_0,{number}"), &label, &unit("m/s2"))))
-}
-
-/// Change of gravity from one height to another.
-pub(super) fn between<'e>(
-    gradient: Quantity<'e>,
-    second: Option<Quantity<'e>>,
-    from: Quantity<'e>,
-    to: Quantity<'e>,
-) -> Quantity<'e> {
-    plus(gradient * (to - from), second.map(|second| second * (to.squared() - from.squared())))
-}
-
-/// States the correlation of each determination with the one listed before it.
-fn correlate_determinations(engine: &Engine, block: &Block, inputs: &[(String, Option<f64>)]) -> Option<()> {
-    let coefficients: Vec<f64> = inputs.iter().map(|(_, r)| r.unwrap_or(0.0)).collect();
-    if coefficients.iter().skip(1).all(|r| *r == 0.0) {
-        return Some(());
-    }
-    let cell = |i: usize, j: usize| match i.abs_diff(j) {
-        0 => 1.0,
-        1 => coefficients[i.max(j)],
-        _ => 0.0,
-    };
-    let matrix = (0..inputs.len()).map(|i| (0..inputs.len()).map(|j| cell(i, j)).collect()).collect();
-    let paths: Vec<String> = inputs.iter().map(|(path, _)| path.clone()).collect();
-    join(engine, &format!("{}.correlation", block.name()), &paths, matrix, block.fields().place_of("determinations"))
-}
-
-fn correlate(engine: &Engine, path: &str, inputs: &[String], r: f64, place: Place) -> Option<()> {
-    join(engine, path, inputs, vec![vec![1.0, r], vec![r, 1.0]], place)
-}
-
-fn join(engine: &Engine, path: &str, inputs: &[String], matrix: Vec<Vec<f64>>, place: Place) -> Option<()> {
-    let nodes: Vec<NodeId> = inputs.iter().map(|input| engine.graph().find(input)).collect::<Option<_>>()?;
-    engine.keep(engine.builder.correlate(path, &nodes, matrix), place)
-}
-
-/// A stated number in coherent SI units; nothing for a reference.
-pub(super) fn stated_number(fields: Fields<'_>, field: &str, kind: Kind) -> Option<f64> {
-    match fields.given(field, kind)? {
-        Given::Stated { value, .. } => Some(value.value),
-        Given::Reference(_) => None,
-    }
+    tie: Fields<'e>,
+) -> Option<(NodeId, StoredProfile)> {
+    let path = format!("{}.tie", block.name());
+    let level = height(engine, tie, "height", &format!("{path}.height"), "height of the tie")?;
+    let found = profile(engine, block, tie.mapping("profile"), &format!("{path}.profile"))?;
+    Some((level.id, StoredProfile::of(found)))
 }
 
 fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {

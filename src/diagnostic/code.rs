@@ -106,6 +106,7 @@ codes! {
     UnclosedFence "unclosed_fence" Fault "A fenced block is never closed.";
     UndefinedReference "undefined_reference" Fault "A name refers to nothing.";
     UnitUnknown "unit_unknown" Fault "A unit symbol is unknown.";
+    ValueUnusual "value_unusual" Warning "A value is possible but unusual; a slip of the pen looks like that.";
     YamlForbidden "yaml_forbidden" Fault "A block uses an anchor, alias, tag, merge key or second document.";
     YamlUnreadable "yaml_unreadable" Fault "A block is no readable YAML.";
 }

@@ -102,12 +102,12 @@ static FUNCTIONS: &[Function] = &[
         usage: "corrections(D1)",
         answer: |engine, asked| part_of(engine, asked, &["determination"], parts::phases::corrections_table),
     },
+    Function { name: "correlation", usage: "correlation(W1.mass, W2.mass)", answer: correlation },
     Function {
         name: "current",
         usage: "current(WP1)",
         answer: |engine, asked| part_of(engine, asked, &["weighing-phase"], parts::phases::current_charts),
     },
-    Function { name: "correlation", usage: "correlation(W1.mass, W2.mass)", answer: correlation },
     Function {
         name: "determinations",
         usage: "determinations(C1)",
@@ -142,6 +142,16 @@ static FUNCTIONS: &[Function] = &[
         name: "expanded_uncertainty",
         usage: "expanded_uncertainty(W1.mass)",
         answer: |engine, asked| inline(&asked.figure(engine)?.expanded_uncertainty()),
+    },
+    Function {
+        name: "gravity",
+        usage: "gravity(WP1)",
+        answer: |engine, asked| gravity_part(engine, asked, parts::gravity::gravity_table),
+    },
+    Function {
+        name: "gravity_charts",
+        usage: "gravity_charts(WP1)",
+        answer: |engine, asked| gravity_part(engine, asked, parts::gravity::gravity_charts),
     },
     Function {
         name: "profile",
@@ -524,6 +534,19 @@ fn protocol(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {
         names.push(one.block_of(engine, &["realization"])?);
     }
     block(parts::protocol::protocol_table(engine, &names).ok_or_else(|| uncomputed(first))?)
+}
+
+/// A part about gravity: of a gravity station, or of a block that took gravity from one.
+fn gravity_part(
+    engine: &Engine,
+    asked: &Asked<'_>,
+    part: fn(&Engine, &str) -> Option<Markup>,
+) -> Result<Inserted, Problem> {
+    let name = asked.path()?.to_string();
+    if engine.found::<crate::block::gravity_at_mass::GravityUse>(&name).is_none() {
+        asked.block_of(engine, &["gravity-station"])?;
+    }
+    block(part(engine, &name).ok_or_else(|| uncomputed(&name))?)
 }
 
 fn relative_budget(engine: &Engine, asked: &Asked<'_>) -> Result<Inserted, Problem> {

@@ -14,6 +14,7 @@ pub mod distribution;
 pub mod excluded;
 pub mod fit;
 pub mod phases;
+pub mod gravity;
 pub mod protocol;
 pub mod readings;
 pub mod results;
