@@ -403,7 +403,10 @@ impl<'e> Model<'e> {
 /// Constants made of the defining ones, and π.
 fn is_constant(name: &str) -> bool {
     let defining = constants::CONSTANTS.iter().map(|constant| constant.symbol);
-    defining.chain(constants::DERIVED.iter().copied()).chain(["π", "pi"]).any(|constant| constant == name)
+    defining
+        .chain(constants::DERIVED.iter().map(|derived| derived.symbol))
+        .chain(["π", "pi"])
+        .any(|constant| constant == name)
 }
 
 fn call<'g>(function: &str, x: Quantity<'g>) -> Quantity<'g> {

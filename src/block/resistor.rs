@@ -297,6 +297,7 @@ impl<'e> Stated<'e> {
         };
         let (stated, measured) = match calibration.get("ratio") {
             Some(_) => {
+                let _scope = engine.builder.scope("", Some(&quantum_hall_resistance::METHOD.info));
                 let ratio = input("ratio", "r", Kind::Plain)?;
                 let bridge = self.value("bridge_error", "b", "bridge error", "1", Kind::Plain)?;
                 (ratio, quantum_hall_resistance::resistance(ratio, plateau(self.block.fields())?, bridge))
@@ -566,8 +567,9 @@ mod tests {
         let number = |path: &str| graph.number(graph.find(path).expect(path));
         assert!((number("R1.drift") * 86_400.0 / 1.353_822_353_151_215_7e-10 - 1.0).abs() < 1e-6);
         let statistical: f64 = 6.0e-10 * (7.277_903_7f64 / 2.0).sqrt();
-        let by_hand =
-            (statistical * statistical + 2.25e-18 + (5e-11f64 * -0.11).powi(2) + (2e-8f64 * 0.0015).powi(2)).sqrt();
+        let (pressure, temperature): (f64, f64) = (5e-11 * 0.11, 2e-8 * 0.0015);
+        let coefficients = pressure * pressure + temperature * temperature;
+        let by_hand = (statistical * statistical + 2.25e-18 + coefficients).sqrt();
         let u = relative_uncertainty(&engine, found);
         assert!((u / by_hand - 1.0).abs() < 0.01, "{u} {by_hand}");
     }

@@ -5,7 +5,7 @@
 //! Derived constants are computed, never typed: their decimals do not end.
 
 use super::{exact, unit};
-use crate::graph::{Builder, Quantity};
+use crate::graph::{Builder, Name, Quantity};
 use crate::quantity::Kind;
 
 /// Where the values of the defining constants are laid down.
@@ -30,23 +30,46 @@ pub static CONSTANTS: &[Constant] = &[
     Constant { symbol: "k_B", value: 1.380_649e-23, unit: "J/K", meaning: "Boltzmann constant" },
 ];
 
-/// Constants computed from the defining ones, with their formula.
-pub static DERIVED: &[&str] = &["K_J", "R", "R_K"];
+/// A constant computed from the defining ones.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Derived {
+    pub symbol: &'static str,
+    pub formula: &'static str,
+    /// The unit it is shown in.
+    pub unit: &'static str,
+    pub meaning: &'static str,
+}
 
-/// A constant by its symbol, a defining one under the path `constant.SYMBOL`; nothing for a symbol unknown here.
+/// The derived constants, in order of symbol.
+pub static DERIVED: &[Derived] = &[
+    Derived { symbol: "K_J", formula: "K_J = 2e/h", unit: "GHz/V", meaning: "Josephson constant" },
+    Derived { symbol: "R", formula: "R = N_A k_B", unit: "J mol-1 K-1", meaning: "molar gas constant" },
+    Derived { symbol: "R_K", formula: "R_K = h/e²", unit: "ohm", meaning: "von Klitzing constant" },
+];
+
+/// The paths of constants begin with this.
+pub const PREFIX: &str = "constant.";
+
+/// A constant by its symbol, under the path `constant.SYMBOL`; nothing for a symbol unknown here.
 pub fn constant<'g>(builder: &'g Builder, symbol: &str) -> Option<Quantity<'g>> {
-    let defining = |symbol: &str| {
-        let found = CONSTANTS.iter().find(|constant| constant.symbol == symbol)?;
-        let path = format!("constant.{symbol}");
-        let made = builder.constant(&path, symbol, found.meaning, found.value, &unit(found.unit), Kind::Plain, SOURCE);
-        Some(made)
-    };
-    match symbol {
-        "K_J" => Some(2.0 * defining("e")? / defining("h")?),
-        "R_K" => Some(defining("h")? / defining("e")?.squared()),
-        "R" => Some(defining("N_A")? * defining("k_B")?),
-        symbol => defining(symbol),
+    let path = format!("{PREFIX}{symbol}");
+    if let Some(found) = CONSTANTS.iter().find(|constant| constant.symbol == symbol) {
+        let unit = unit(found.unit);
+        return Some(builder.constant(&path, symbol, found.meaning, found.value, &unit, Kind::Plain, SOURCE));
     }
+    let derived = DERIVED.iter().find(|derived| derived.symbol == symbol)?;
+    let known = builder.graph().find(&path);
+    if let Some(known) = known {
+        return Some(builder.at(known));
+    }
+    let made = match symbol {
+        "K_J" => 2.0 * constant(builder, "e")? / constant(builder, "h")?,
+        "R_K" => constant(builder, "h")? / constant(builder, "e")?.squared(),
+        _ => constant(builder, "N_A")? * constant(builder, "k_B")?,
+    };
+    let unit = unit(derived.unit);
+    builder.name(made.id, Name { path, symbol: symbol.into(), label: derived.meaning.into(), unit });
+    Some(made)
 }
 
 /// A constant that the program's own formulas use; a symbol unknown here would be a fault of ours.
@@ -69,7 +92,11 @@ mod tests {
             let found = known(&builder, symbol);
             assert!((found.number() / value - 1.0).abs() < 1e-15, "{symbol}: {}", found.number());
             assert_eq!(found.dimension(), unit(text).dimension(), "{symbol}");
-            assert!(DERIVED.contains(&symbol));
+            assert!(
+                DERIVED
+                    .iter()
+                    .any(|derived| derived.symbol == symbol && unit(derived.unit).dimension() == found.dimension())
+            );
         }
         assert!(constant(&builder, "G").is_none());
     }

@@ -93,6 +93,11 @@ static FUNCTIONS: &[Function] = &[
     Function { name: "conditions", usage: "conditions(A1)", answer: conditions },
     Function { name: "consistency", usage: "consistency(R1)", answer: consistency },
     Function {
+        name: "constants",
+        usage: "constants()",
+        answer: |engine, asked| block(parts::constants::constants_table(engine, asked.results)),
+    },
+    Function {
         name: "contents",
         usage: "contents(C1)",
         answer: |engine, asked| part_of(engine, asked, &["realization"], parts::contents::contents_table),

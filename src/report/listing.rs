@@ -5,7 +5,7 @@
 use crate::block::Engine;
 use crate::graph::{Graph, NodeId, Op, Origin, Sensitivities, degrees_of_freedom, sensitivities, standard_uncertainty};
 use crate::intake::Sources;
-use crate::quantity::{Style, Unit, choose_unit};
+use crate::quantity::{Dimension, Style, Unit, choose_unit};
 use serde::Serialize;
 
 /// The version of the JSON shape of results.
@@ -114,6 +114,10 @@ fn listed(graph: &Graph, sources: &Sources, id: NodeId, style: Style) -> Listed 
     }
 }
 
+/// Decimals of an exact value that are still printed out; beyond them, and beyond six zeros before the marker, a power of ten is.
+const MOST_DECIMALS: i32 = 15;
+const MOST_ZEROS: i32 = -6;
+
 /// A quantity as text: value and standard uncertainty in its own unit, or the value alone when it is exact.
 pub fn print_quantity(graph: &Graph, id: NodeId, of: &Sensitivities, style: Style) -> String {
     let Some(name) = &graph.node(id).name else { return String::new() };
@@ -125,7 +129,18 @@ pub fn print_quantity(graph: &Graph, id: NodeId, of: &Sensitivities, style: Styl
             .unwrap_or_else(|problem| problem.message);
     }
     let decimals = exact_decimals(graph, id, value, &name.unit);
-    style.value(value, &name.unit, decimals.clamp(0, 15)).unwrap_or_else(|problem| problem.message)
+    if name.unit.dimension() != Dimension::TEMPERATURE && !(MOST_ZEROS..=MOST_DECIMALS).contains(&decimals) {
+        return print_constant(value, &name.unit, style);
+    }
+    style.value(value, &name.unit, decimals.clamp(0, MOST_DECIMALS)).unwrap_or_else(|problem| problem.message)
+}
+
+/// An exact value with the digits it has, at most fifteen, and a power of ten where it reads better.
+pub fn print_constant(value: f64, unit: &Unit, style: Style) -> String {
+    let shortest = format!("{:e}", unit.difference_decimal_from_si(value).map_or(value, |decimal| decimal.to_f64()));
+    let mantissa = shortest.split('e').next().unwrap_or_default();
+    let digits = mantissa.chars().filter(char::is_ascii_digit).count();
+    style.difference(value, unit, digits.min(15)).unwrap_or_else(|problem| problem.message)
 }
 
 /// Digits shown of a statistic.

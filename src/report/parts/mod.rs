@@ -8,6 +8,7 @@ pub mod campaign;
 pub mod charts;
 pub mod conditions;
 pub mod consistency;
+pub mod constants;
 pub mod contents;
 pub mod correlation;
 pub mod distribution;

@@ -4,7 +4,7 @@ use crate::block::{Block, Engine, Fields};
 use crate::graph::Origin;
 use crate::intake::Place;
 use crate::report::Markup;
-use crate::report::table::Table;
+use crate::report::table::{Cell, Table};
 
 /// The certificates the results rest on.
 pub fn traceability_table(engine: &Engine) -> Markup {
@@ -21,20 +21,14 @@ pub fn traceability_table(engine: &Engine) -> Markup {
     let used = engine.used_blocks();
     let mut blocks: Vec<&Block> = used.iter().filter_map(|name| engine.blocks().get(name)).collect();
     // Standards first, then what weighed them, then what measured the air.
-    blocks.sort_by_key(|block| {
-        ["mass-standard", "item", "comparator", "instrument"].iter().position(|kind| *kind == block.kind.name)
-    });
+    blocks.sort_by_key(|block| ORDER.iter().position(|kind| *kind == block.kind.name));
     for block in blocks {
         match block.kind.name {
-            "mass-standard" | "instrument" | "item" => {
-                for calibration in block
-                    .fields()
-                    .mappings("calibrations")
-                    .into_iter()
-                    .filter(|calibration| is_used(engine, calibration.place()))
-                {
-                    table.rows.push(row(engine, block, calibration));
-                }
+            "mass-standard" | "instrument" | "item" | "resistor" | "voltage-standard" | "laser" | "time-base" => {
+                let calibrations = block.fields().mappings("calibrations");
+                let used = calibrations.into_iter().filter(|calibration| is_used(engine, calibration.place()));
+                table.rows.extend(used.map(|calibration| row(engine, block, calibration)));
+                table.rows.extend(row_of_stated(engine, block));
             }
             "comparator" => table.rows.push(vec![
                 title(block).into(),
@@ -50,7 +44,29 @@ pub fn traceability_table(engine: &Engine) -> Markup {
     table.markup()
 }
 
-fn row(engine: &Engine, block: &Block, calibration: Fields<'_>) -> Vec<crate::report::table::Cell> {
+/// Standards first, then what compared them, then what measured beside.
+const ORDER: &[&str] =
+    &["mass-standard", "item", "comparator", "instrument", "voltage-standard", "resistor", "laser", "time-base"];
+
+/// The row of a block that states its value by itself, or realizes it.
+fn row_of_stated(engine: &Engine, block: &Block) -> Option<Vec<Cell>> {
+    let fields = block.fields();
+    let typed = |name: &str| dressed(engine, fields, name);
+    let value = match block.kind.name {
+        _ if fields.get("calibrations").is_some() => return None,
+        "time-base" => format!("relative offset {}", typed("offset")),
+        "laser" => format!("frequency {}", typed("frequency")),
+        "voltage-standard" => {
+            format!("f/K_J at {}, time base {}, K_J = 2e/h exact", typed("frequency"), fields.words("time_base"))
+        }
+        _ => return None,
+    };
+    let source = fields.words("source");
+    let source = if source.is_empty() { "—".to_string() } else { source };
+    Some(vec![title(block).into(), "—".into(), source.into(), "—".into(), "—".into(), value.into()])
+}
+
+fn row(engine: &Engine, block: &Block, calibration: Fields<'_>) -> Vec<Cell> {
     let text = |name: &str| {
         let words = calibration.words(name);
         if words.is_empty() { "—".to_string() } else { words }
@@ -75,7 +91,10 @@ fn title(block: &Block) -> String {
 }
 
 fn value_used(engine: &Engine, calibration: Fields<'_>) -> String {
-    let typed = |name: &str| crate::report::prose_text::dress(&calibration.words(name), engine.laboratory.style);
+    let typed = |name: &str| dressed(engine, calibration, name);
+    if let Some(words) = electric_value(calibration, &typed) {
+        return words;
+    }
     let basis = calibration.words("basis");
     let basis = if basis.is_empty() {
         String::new()
@@ -92,6 +111,30 @@ fn value_used(engine: &Engine, calibration: Fields<'_>) -> String {
         Some(_) => format!("correction {}", typed("correction")),
         None => format!("table of {} corrections", calibration.mappings("table").len()),
     }
+}
+
+/// The value of a certificate of a frequency, voltage or resistance.
+fn electric_value(calibration: Fields<'_>, typed: &dyn Fn(&str) -> String) -> Option<String> {
+    let (name, words) = [
+        ("ratio", "ratio"),
+        ("resistance", "resistance"),
+        ("step_voltage", "step"),
+        ("frequency", "frequency"),
+        ("offset", "relative offset"),
+    ]
+    .into_iter()
+    .find(|(name, _)| calibration.get(name).is_some())?;
+    let relative = match calibration.get("relative_uncertainty") {
+        Some(_) => format!(", relative standard uncertainty {}", typed("relative_uncertainty")),
+        None => String::new(),
+    };
+    let converted = if calibration.get("conversion").is_some() { "; units of 1990, carried to the SI" } else { "" };
+    Some(format!("{words} {}{relative}{converted}", typed(name)))
+}
+
+/// A value as typed, in the style of the laboratory.
+fn dressed(engine: &Engine, fields: Fields<'_>, name: &str) -> String {
+    crate::report::prose_text::dress(&fields.words(name), engine.laboratory.style)
 }
 
 fn comparator_words(block: &Block) -> String {
