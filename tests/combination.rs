@@ -126,7 +126,8 @@ fn between_components_enter_as_type_a_with_n_minus_one() {
             let of = sensitivities(&graph, graph.find("C.value").expect("a result"));
             let budget = libripens::graph::budget(&graph, of.measurand);
             let line = budget.lines.iter().find(|line| line.path == "C.between_component").expect("a line");
-            assert_eq!((line.evaluation.letter(), line.degrees_of_freedom), ("A", 5.0));
+            assert_eq!((line.evaluation.letter(), line.degrees_of_freedom, line.symbol.as_str()), ("A", 5.0, "δ"));
+            assert_eq!(line.unit.text(), "µg");
             near(degrees_of_freedom(&graph, &of), 5.0 / line.share.powi(2), 1e-9);
             assert!(coverage(&graph, &of, engine.laboratory.settings).factor > 2.0);
             // Asked for, so not complained of.

@@ -139,8 +139,8 @@ fn several_budgets_are_followed_by_what_they_share() {
         let u = number(&budget["standard_uncertainty"]);
         assert!((cell("covariance", row, row) / (u * u) - 1.0).abs() < 1e-12);
         assert_eq!(cell("correlation", row, row), 1.0);
-        for column in 0..row {
-            let scale = u * number(&budgets[column]["standard_uncertainty"]);
+        for (column, other) in budgets.iter().enumerate().take(row) {
+            let scale = u * number(&other["standard_uncertainty"]);
             assert!((cell("covariance", row, column) / scale - cell("correlation", row, column)).abs() < 1e-12);
             assert_eq!(cell("correlation", row, column), cell("correlation", column, row));
         }

@@ -61,6 +61,11 @@ pub static KIND: BlockKind = BlockKind {
             unit: "1",
         },
         Output {
+            path: "departure",
+            meaning: "a departure of zero that carries what was added for disagreement, where that was asked for",
+            unit: "",
+        },
+        Output {
             path: "with_excluded.mass",
             meaning: "the same with the excluded results kept, where any was left out; so each output above",
             unit: "kg",
@@ -314,6 +319,7 @@ impl<'e> Work<'e> {
             _ => format!("expansion for the disagreement of the results of {}", block.name()),
         };
         let path = format!("{}.{prefix}{what}", block.name());
+        let added = rule.added_variance.sqrt();
         let made = engine.builder.estimator(Arc::new(rule), results, &outputs, &path, &label);
         let made = engine.keep(made, block.raw.name.place)?;
         let _scope = engine.builder.scope(block.name(), Some(&consistency::METHOD.info));
@@ -335,7 +341,12 @@ impl<'e> Work<'e> {
             let words = format!("expansion factor of {}", block.name());
             factor.result(&format!("{prefix}expansion_factor"), "f", &words, &Unit::one());
         }
-        made.first().copied()
+        let departure = made.first().copied()?;
+        if choices.between != Between::None || choices.expansion != Expansion::None {
+            let shown = choose_unit(added, shown);
+            departure.result(&format!("{prefix}departure"), "δ", &label, &shown);
+        }
+        Some(departure)
     }
 
     /// The unit of differences between these results.

@@ -5,8 +5,8 @@
 use super::{Stopped, terminal};
 use crate::block::Engine;
 use crate::graph::{
-    Coverage, Distributed, NodeId, Validation, coverage, distributed, propagate_distributions, propagate_until_stable,
-    sensitivities,
+    Coverage, Distributed, NodeId, Validation, budget, coverage, distributed, propagate_distributions,
+    propagate_until_stable, sensitivities,
 };
 use crate::quantity::{Style, Unit, choose_unit};
 use crate::report::figures::fixed;
@@ -37,6 +37,8 @@ pub struct Tried {
     digits: usize,
     /// For an adaptive run, whether it became stable.
     stable: Option<bool>,
+    /// A contribution with so few degrees of freedom that its t distribution has no variance; it is drawn as normal.
+    few: Option<String>,
 }
 
 impl Amount {
@@ -63,7 +65,8 @@ impl Amount {
             let found = distributed(&mut values, probability);
             let (estimate, u) = (graph.number(*id), coverage.standard_uncertainty);
             let validation = Validation::new(estimate, coverage.expanded_uncertainty, found.symmetric, u, digits);
-            Tried { found, validation, coverage, estimate, digits, stable }
+            let few = budget(&graph, *id).lines.into_iter().find(|line| line.degrees_of_freedom <= 2.0);
+            Tried { found, validation, coverage, estimate, digits, stable, few: few.map(|line| line.path) }
         };
         Ok(Some(results.iter().zip(values).map(one).collect()))
     }
@@ -93,10 +96,16 @@ impl Tried {
         let ends = [amount(validation.low_difference), amount(validation.high_difference)];
         rows.push([["  difference of the ends".to_string(), blank(), blank()].to_vec(), ends.to_vec()].concat());
         rows.push(vec!["  numerical tolerance δ".into(), blank(), blank(), amount(validation.tolerance)]);
+        let no_verdict = |path: &String| {
+            format!(
+                "Nothing is validated: {path} has two degrees of freedom or fewer and was drawn as normal, so state the interval of first order"
+            )
+        };
         let verdict = match validation.is_valid() {
             true => "First-order propagation is validated: both ends agree within δ",
             false => "First-order propagation is not validated: the valid interval is that of the trials",
         };
+        let verdict = self.few.as_ref().map_or_else(|| verdict.to_string(), no_verdict);
         let steady = match self.stable {
             None => String::new(),
             Some(true) => format!(", stable to {}", terminal::counted(self.digits, "significant digit")),
@@ -123,7 +132,8 @@ impl Tried {
             first_order_interval: pair(self.validation.first_order),
             digits: self.digits,
             numerical_tolerance: self.validation.tolerance,
-            is_validated: self.validation.is_valid(),
+            is_validated: self.few.is_none() && self.validation.is_valid(),
+            drawn_as_normal: self.few.clone(),
             is_stable: self.stable,
         }
     }
@@ -141,5 +151,6 @@ pub struct JsonTrials {
     digits: usize,
     numerical_tolerance: f64,
     is_validated: bool,
+    drawn_as_normal: Option<String>,
     is_stable: Option<bool>,
 }
