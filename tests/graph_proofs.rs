@@ -251,10 +251,11 @@ fn moving_phase() -> MovingPhase {
     let rule = ProfileFit {
         sweeps: columns[0].iter().map(|sweep| *sweep as i64).collect(),
         positions: columns[3].iter().map(|z| (z - z_w) * 1e-3).collect(),
-        hours: columns[2].iter().map(|t| (t - 35_779.81) / 3600.0).collect(),
+        times: columns[2].iter().map(|t| t - 35_779.81).collect(),
         gate: given("gate").0,
         order: 4,
         drift: true,
+        decisions: Vec::new(),
     };
     let outputs = vec![(Dimension::ONE, Kind::Plain); 8];
     let made = b.estimator(Arc::new(rule), &[v, u], &outputs, "profile", "scatter of the gates").expect("fits");
@@ -273,7 +274,7 @@ fn the_profile_fit_of_a_moving_phase() {
     assert!((graph.number(b0) - expected("Bl0")).abs() < 0.05 * expected("u_Bl0"), "b_0 {} ", graph.number(b0));
     assert!((own / expected("u_Bl0") - 1.0).abs() < 0.03, "u(b_0) {own}");
     assert_eq!(estimate.degrees_of_freedom, expected("dof"));
-    let drift = estimate.values[5] / estimate.values[0];
+    let drift = estimate.values[5] / estimate.values[0] * 3600.0;
     assert!((drift / expected("drift_rel_per_h") - 1.0).abs() < 1e-3, "drift {drift}");
     assert!((estimate.values[6] * 1e6 - expected("emf0_uV")).abs() < 1e-4, "thermal voltage {}", estimate.values[6]);
     let rss: f64 = estimate.residuals.iter().map(|r| r * r).sum();

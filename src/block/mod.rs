@@ -25,6 +25,7 @@ pub mod comparator;
 pub mod comparison;
 pub mod correction;
 pub mod correlation;
+pub mod determination;
 pub mod engine;
 pub mod equation;
 pub mod field;
@@ -38,7 +39,10 @@ pub mod instrument;
 pub mod laboratory;
 pub mod laser;
 pub mod measurement_model;
+pub mod moving_checks;
+pub mod moving_phase;
 pub mod particulars;
+pub mod phase;
 pub mod raw_data;
 pub mod realization;
 pub mod resistor;
@@ -47,6 +51,7 @@ pub mod time_base;
 pub mod units_of_1990;
 pub mod voltage_standard;
 pub mod weighing;
+pub mod weighing_phase;
 pub mod weight;
 
 pub use engine::{Block, Engine};
@@ -89,6 +94,7 @@ pub static KINDS: &[&BlockKind] = &[
     &correction::KIND,
     &correlation::KIND,
     &particulars::CUSTOMER,
+    &determination::KIND,
     &fit::KIND,
     &gravity_station::KIND,
     &instrument::KIND,
@@ -96,6 +102,7 @@ pub static KINDS: &[&BlockKind] = &[
     &laser::KIND,
     &weight::MASS_STANDARD,
     &measurement_model::KIND,
+    &moving_phase::KIND,
     &particulars::PERSON,
     &raw_data::KIND,
     &realization::KIND,
@@ -104,6 +111,7 @@ pub static KINDS: &[&BlockKind] = &[
     &series_in_time::KIND,
     &time_base::KIND,
     &voltage_standard::KIND,
+    &weighing_phase::KIND,
 ];
 
 /// The kind with this name.

@@ -122,6 +122,11 @@ impl RawData {
         found
     }
 
+    /// Where the record declares a column; the block's name when it does not.
+    pub fn column_place(&self, name: &str) -> Place {
+        self.columns.iter().find(|column| column.name.text == name).map_or(self.place, |column| column.name.place)
+    }
+
     /// A column of numbers in coherent SI units (temperatures in K); units of other dimensions than `kind` are refused.
     pub fn numbers(&self, engine: &Engine, name: &str, kind: Kind) -> Option<(Vec<f64>, Unit)> {
         let column = self.column(engine, name)?;

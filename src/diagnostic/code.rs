@@ -41,6 +41,7 @@ codes! {
     CheckOverdue "check_overdue" Warning "A check between realizations had run out when the campaign began.";
     CircularReference "circular_reference" Fault "Values refer to each other in a circle.";
     ClockBehind "clock_behind" Fault "The clock stands before the last entry of the register.";
+    ColumnImplausible "column_implausible" Fault "A column holds what its meaning does not allow: exchanged columns, or another unit.";
     ColumnUnknown "column_unknown" Fault "A raw data file has no column with this head, or has it twice.";
     ConditionsOutOfSpan "conditions_out_of_span" Fault "Conditions are asked for at a time outside the logged span.";
     ContentMissing "content_missing" Fault "A report lacks content it must have, and no reason is recorded.";
@@ -57,12 +58,14 @@ codes! {
     ElectricBasis "electric_basis" Fault "A voltage or resistance is in the electric units of 1990 without a stated conversion.";
     ExclusionWithoutReason "exclusion_without_reason" Fault "An excluded cycle or run lacks a rule or a reason.";
     Extrapolated "extrapolated" Warning "A fit is asked for outside the range of its points.";
+    Extrapolated "extrapolated" Warning "A fit is used outside of what it was fitted to, or close to its ends.";
     FewReadings "few_readings" Warning "A Type A evaluation rests on so few readings that its variance is unknown.";
     FieldMissing "field_missing" Fault "A block lacks a field it needs.";
     FieldUnknown "field_unknown" Fault "A block has a field its kind does not know.";
     FigureMissing "figure_missing" Fault "A report cites a result that does not exist or could not be computed.";
     FileMissing "file_missing" Fault "A file named in a record cannot be read.";
     FormatUnsupported "format_unsupported" Fault "The laboratory folder asks for another record format.";
+    FringeFactor "fringe_factor" Fault "Fringes and positions disagree by a factor of two.";
     GradientAssumed "gradient_assumed" Warning "The gradient of gravity was not measured; that of free air stands in.";
     KindMismatch "kind_mismatch" Fault "Two kinds of quantity that must not be mixed meet.";
     KindUnknown "kind_unknown" Fault "A measurement block is of a kind nobody knows.";
@@ -88,10 +91,14 @@ codes! {
     RunUnexplained "run_unexplained" Fault "A run of the same item is not used by a report, and no reason is recorded.";
     SameValueTwice "same_value_twice" Warning "The same value and uncertainty stand in two blocks: one input or two?";
     ShapeMismatch "shape_mismatch" Fault "A field holds a list, a mapping or text where another is expected.";
+    SignContradicts "sign_contradicts" Fault "Signs in one row contradict each other: direction, fringes and steps, or state and current.";
     SilentComment "silent_comment" Fault "A # after a value would start a comment nobody sees.";
     StateMismatch "state_mismatch" Fault "A value in vacuum meets a value in air without a stated link.";
+    StepMiscount "step_miscount" Fault "The steps of a sweep or gate are off by about one.";
     SubmittedValueChanged "submitted_value_changed" Fault "A result no longer prints the value that was handed in.";
+    SweepsOneWay "sweeps_one_way" Fault "All sweeps go one way.";
     TemplateFaulty "template_faulty" Fault "A template or an expression in double braces cannot be evaluated.";
+    TimeGap "time_gap" Warning "Rows are missing inside a sweep.";
     TimeUnreadable "time_unreadable" Fault "A date or time is unreadable, lacks its zone, or does not follow.";
     TypesettingFailed "typesetting_failed" Fault "The typesetter could not make the page.";
     UncertaintyIncomplete "uncertainty_incomplete" Fault "An uncertainty lacks its coverage factor or distribution.";

@@ -7,17 +7,21 @@
 //!     U_i   voltage of the coil in gate i                         V
 //!     v_i   velocity in gate i                                    m/s
 //!     ζ_i   position from the weighing position at mid gate       m
-//!     τ_i   time from the middle of the weighing                  h
+//!     τ_i   time from the middle of the weighing                  s
 //!     b_0   geometric factor at the weighing position and time    T m
 //!     E_0   thermal voltage                                       V
+//! Order K by a rule: K rises while F = (RSS_(K−1) − RSS_K)/s_K² of an added term is significant; since a profile may be
+//! nearly symmetric, the search ends only when two terms in a row are not.
 //! Multiplying by v leaves the thermal voltage an additive term: sweeps up and down tell it from b_0.
 //! # Valid for sweeps in both directions that enclose the weighing position.
 
+use super::statistic::brief;
 use super::{Method, WorkedExample, scaled};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
 use crate::numeric::elementary::powi;
-use crate::numeric::{self, least_squares::fit};
+use crate::numeric::distribution::f_upper;
+use crate::numeric::least_squares::{Fit, fit};
 
 /// The registry's line.
 pub static METHOD: Method = Method {
@@ -45,24 +49,38 @@ pub static METHOD: Method = Method {
     }],
 };
 
-/// The rule: columns v and U; outputs b_0 … b_K, b_d (per hour), E_0, E_1 (per hour).
+/// The rule: columns v and U; outputs b_0 … b_K, b_d, E_0, E_1, all in coherent SI units.
 #[derive(Debug, Clone)]
 pub struct ProfileFit {
     /// Sweep of each gate; serial correlation is looked for inside a sweep only.
     pub sweeps: Vec<i64>,
     /// ζ at mid gate, m.
     pub positions: Vec<f64>,
-    /// τ at mid gate, h.
-    pub hours: Vec<f64>,
+    /// τ at mid gate, s.
+    pub times: Vec<f64>,
     /// Length of a gate, s.
     pub gate: f64,
     /// Order K of the polynomial.
     pub order: usize,
     /// Whether drift of b and of the thermal voltage are fitted.
     pub drift: bool,
+    /// How the order was chosen.
+    pub decisions: Vec<Decision>,
 }
 
 impl ProfileFit {
+    /// The same rule for some of the rows.
+    pub fn of_rows(&self, rows: &[usize]) -> ProfileFit {
+        let part = |column: &[f64]| rows.iter().filter_map(|row| column.get(*row).copied()).collect();
+        ProfileFit {
+            sweeps: rows.iter().filter_map(|row| self.sweeps.get(*row).copied()).collect(),
+            positions: part(&self.positions),
+            times: part(&self.times),
+            decisions: self.decisions.clone(),
+            ..*self
+        }
+    }
+
     /// The regressors that multiply v, and those that stand alone. Positions are scaled to centimetres inside.
     fn design(&self, v: &[f64]) -> (Vec<Vec<f64>>, Vec<Vec<f64>>) {
         let mut shaped: Vec<Vec<f64>> = (0..=self.order)
@@ -70,10 +88,22 @@ impl ProfileFit {
             .collect();
         let mut alone = vec![vec![1.0; v.len()]];
         if self.drift {
-            shaped.push(self.hours.clone());
-            alone.push(self.hours.clone());
+            shaped.push(self.times.clone());
+            alone.push(self.times.clone());
         }
         (shaped, alone)
+    }
+
+    /// The fit, and the regressors that multiply v.
+    fn solve(&self, v: &[f64], u: &[f64]) -> Result<(Fit, Vec<Vec<f64>>), Problem> {
+        let (shaped, alone) = self.design(v);
+        let regressors: Vec<Vec<f64>> = shaped
+            .iter()
+            .map(|shape| shape.iter().zip(v).map(|(shape, v)| shape * v).collect())
+            .chain(alone)
+            .collect();
+        let references: Vec<&[f64]> = regressors.iter().map(Vec::as_slice).collect();
+        Ok((fit(&references, u, None)?, shaped))
     }
 
     /// Lag-1 autocorrelation of residuals, averaged over sweeps.
@@ -89,6 +119,42 @@ impl ProfileFit {
     }
 }
 
+/// Raises the order from one while the F test of an added term is significant at `confidence`; ends when two terms in a
+/// row are not.
+///
+/// # Errors
+/// Those of the fits.
+pub fn choose_order(
+    rule: &ProfileFit,
+    v: &[f64],
+    u: &[f64],
+    largest: usize,
+    confidence: f64,
+) -> Result<ProfileFit, Problem> {
+    let mut decisions = Vec::new();
+    let (mut order, mut idle) = (1, 0);
+    let mut before = ProfileFit { order, ..rule.clone() }.solve(v, u)?.0.residual_sum_of_squares;
+    for next in 2..=largest {
+        let found = ProfileFit { order: next, ..rule.clone() }.solve(v, u)?.0;
+        let freedom = found.degrees_of_freedom;
+        let statistic = (before - found.residual_sum_of_squares).max(0.0) / (found.residual_sum_of_squares / freedom);
+        let taken = f_upper(statistic, 1.0, freedom) < 1.0 - confidence;
+        let verdict = if taken { "significant, taken" } else { "not significant, not taken" };
+        decisions.push(Decision {
+            what: format!("order {next} of the profile against {}", next - 1),
+            decided: format!("F(1, {freedom}) = {}; {verdict}", brief(statistic)),
+        });
+        (order, idle) = if taken { (next, 0) } else { (order, idle + 1) };
+        if idle == 2 {
+            break;
+        }
+        before = found.residual_sum_of_squares;
+    }
+    let decided = format!("by F tests at the level {}, {largest} at most", brief(confidence));
+    decisions.push(Decision { what: "rule for the order of the profile".into(), decided });
+    Ok(ProfileFit { order, decisions, ..rule.clone() })
+}
+
 impl Estimator for ProfileFit {
     fn outputs(&self) -> usize {
         self.order + 2 + if self.drift { 2 } else { 0 }
@@ -100,7 +166,7 @@ impl Estimator for ProfileFit {
         };
         if v.len() != self.positions.len()
             || u.len() != v.len()
-            || self.hours.len() != v.len()
+            || self.times.len() != v.len()
             || self.sweeps.len() != v.len()
         {
             return Err(Problem::new(
@@ -108,28 +174,22 @@ impl Estimator for ProfileFit {
                 "The columns of a moving phase have unlike numbers of gates.",
             ));
         }
-        let (shaped, alone) = self.design(v);
-        let regressors: Vec<Vec<f64>> = shaped
-            .iter()
-            .map(|shape| shape.iter().zip(*v).map(|(shape, v)| shape * v).collect())
-            .chain(alone.iter().cloned())
-            .collect();
-        let references: Vec<&[f64]> = regressors.iter().map(Vec::as_slice).collect();
-        let found = fit(&references, u, None)?;
+        let (found, shaped) = self.solve(v, u)?;
         let r1 = self.autocorrelation(&found.residuals);
         let inflation = if r1 > 0.0 { (1.0 + r1) / (1.0 - r1) } else { 1.0 };
         let variance = inflation * found.residual_sum_of_squares / found.degrees_of_freedom;
         let by_velocity = velocity_response(&found, &shaped);
+        let described = [
+            Decision { what: "order of the profile".into(), decided: format!("{}", self.order) },
+            Decision {
+                what: "lag-1 autocorrelation of residuals".into(),
+                decided: format!("{r1:.3}, variance × {inflation:.3}"),
+            },
+        ];
         Ok(Estimate {
             own_covariance: scaled(&found.unscaled_covariance, variance),
             degrees_of_freedom: found.degrees_of_freedom,
-            decisions: vec![
-                Decision { what: "order of the profile".into(), decided: format!("{}", self.order) },
-                Decision {
-                    what: "lag-1 autocorrelation of residuals".into(),
-                    decided: format!("{r1:.3}, variance × {inflation:.3}"),
-                },
-            ],
+            decisions: self.decisions.iter().cloned().chain(described).collect(),
             residuals: found.residuals.clone(),
             values: found.coefficients.clone(),
             jacobian: vec![by_velocity, found.jacobian],
@@ -138,7 +198,7 @@ impl Estimator for ProfileFit {
 }
 
 /// d coefficient / d v_i: v_i shapes every regressor it multiplies.
-fn velocity_response(found: &numeric::least_squares::Fit, shaped: &[Vec<f64>]) -> Vec<Vec<f64>> {
+fn velocity_response(found: &Fit, shaped: &[Vec<f64>]) -> Vec<Vec<f64>> {
     let mut response = vec![vec![0.0; shaped[0].len()]; found.coefficients.len()];
     for (column, shape) in shaped.iter().enumerate() {
         for (row, by_entry) in response.iter_mut().zip(found.design_response(column)) {
@@ -161,7 +221,7 @@ fn gate_average(zeta: f64, d: f64, k: usize) -> f64 {
 fn noiseless_example() -> f64 {
     let gates = 41;
     let position = |index: usize| (index as f64 - 20.0) * 1e-3;
-    let mut rule = ProfileFit { sweeps: vec![], positions: vec![], hours: vec![], gate: 0.1, order: 2, drift: false };
+    let mut rule = ProfileFit { sweeps: vec![], positions: vec![], times: vec![], gate: 0.1, order: 2, drift: false, decisions: vec![] };
     let (mut v, mut u) = (Vec::new(), Vec::new());
     for sweep in [1i64, -1] {
         for index in 0..gates {
@@ -169,7 +229,7 @@ fn noiseless_example() -> f64 {
             let zeta = position(index);
             rule.sweeps.push(sweep);
             rule.positions.push(zeta);
-            rule.hours.push(0.0);
+            rule.times.push(0.0);
             v.push(speed);
             u.push(speed * (540.0 + 3.0 * zeta - 200.0 * gate_average(zeta, 2e-4, 2)) + 0.2e-6);
         }
