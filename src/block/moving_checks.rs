@@ -3,6 +3,7 @@
 use super::phase::PhaseData;
 use crate::diagnostic::{Code, Problem};
 use crate::numeric::sum::{mean, sum};
+use std::ops::Range;
 
 /// The rows of a moving phase, in coherent SI units.
 pub struct Gates {
@@ -21,8 +22,8 @@ const MOST: usize = 5;
 
 impl Gates {
     /// The first and last row of each sweep.
-    pub fn spans(&self) -> Vec<std::ops::Range<usize>> {
-        let mut spans: Vec<std::ops::Range<usize>> = Vec::new();
+    pub fn spans(&self) -> Vec<Range<usize>> {
+        let mut spans: Vec<Range<usize>> = Vec::new();
         for row in 0..self.sweeps.len() {
             match spans.last_mut() {
                 Some(span) if self.sweeps[span.start] == self.sweeps[row] => span.end = row + 1,
@@ -106,8 +107,7 @@ impl Gates {
     /// A null reading is a rest, not a voltage of its own.
     fn check_null(&self, data: &PhaseData<'_>, step_voltage: f64) -> Option<()> {
         let whole = mean(&self.steps.iter().map(|n| n.abs() * step_voltage).collect::<Vec<_>>())?;
-        let row = (0..self.null.len()).find(|row| self.null[*row].abs() > 0.05 * whole)?;
-        // The first row beyond: `None` above means there is none.
+        let Some(row) = (0..self.null.len()).find(|row| self.null[*row].abs() > 0.05 * whole) else { return Some(()) };
         let message = format!(
             "The null meter reads {:.4e} V here, beside {whole:.4e} V of the array.",
             self.null[row]
@@ -171,31 +171,41 @@ impl Gates {
         Some(())
     }
 
-    /// A sweep whose residuals stand off by about a step was measured on another step than written.
-    pub fn check_steps(&self, data: &PhaseData<'_>, residuals: &[f64], step_voltage: f64) -> Option<()> {
-        let off = |span: &std::ops::Range<usize>| sum(residuals[span.clone()].iter().copied()) / span.len() as f64;
+    /// A sweep or a gate that stands off the others by about a step was measured on another step than written.
+    ///
+    /// `rest` is the voltage less the shape of the profile, which leaves v times one geometric factor; thermal voltages and
+    /// drift are far below a step.
+    pub fn check_steps(&self, data: &PhaseData<'_>, velocity: &[f64], rest: &[f64], step_voltage: f64) -> Option<()> {
         let spans = self.spans();
-        let worst = spans.iter().max_by(|a, b| off(a).abs().total_cmp(&off(b).abs()))?;
-        if off(worst).abs() > 0.3 * step_voltage {
+        let over = |span: &Range<usize>, term: &dyn Fn(usize) -> f64| sum(span.clone().map(term));
+        let factor = |span: &Range<usize>| {
+            over(span, &|row| rest[row] * velocity[row]) / over(span, &|row| velocity[row] * velocity[row])
+        };
+        let factors: Vec<f64> = spans.iter().map(factor).collect();
+        let mut sorted = factors.clone();
+        sorted.sort_by(f64::total_cmp);
+        let middle = (sorted.get((sorted.len() - 1) / 2)? + sorted.get(sorted.len() / 2)?) / 2.0;
+        let speed = |span: &Range<usize>| over(span, &|row| velocity[row].abs()) / span.len() as f64;
+        let offs: Vec<f64> =
+            spans.iter().zip(&factors).map(|(span, factor)| (factor - middle) * speed(span)).collect();
+        let hint = "Correct the number of steps by an entry of its own, or leave the sweep out by a rule.";
+        let complain = |what: String, off: f64, row: usize| {
             let message = format!(
-                "Sweep {} lies {:.1} µV off the profile of the others, where one step is {:.1} µV: its steps are miscounted.",
-                self.sweeps[worst.start],
-                off(worst) * 1e6,
+                "{what} lies {:.1} µV off the others, where one step is {:.1} µV: its steps are miscounted.",
+                off * 1e6,
                 step_voltage * 1e6
             );
-            let hint = "Correct the number of steps by an entry of its own, or leave the sweep out by a rule.";
-            data.engine.complain(Problem::new(Code::StepMiscount, message).hint(hint), data.line(worst.start));
+            data.engine.complain(Problem::new(Code::StepMiscount, message).hint(hint), data.line(row));
+        };
+        let worst = (0..spans.len()).max_by(|a, b| offs[*a].abs().total_cmp(&offs[*b].abs()))?;
+        if offs[worst].abs() > 0.3 * step_voltage {
+            let first = spans[worst].start;
+            complain(format!("Sweep {}", self.sweeps[first]), offs[worst], first);
             return None;
         }
-        let single = (0..residuals.len()).find(|row| residuals[*row].abs() > 0.5 * step_voltage);
-        if let Some(row) = single {
-            let message = format!(
-                "This row lies {:.1} µV off the profile, where one step is {:.1} µV: its steps are miscounted.",
-                residuals[row] * 1e6,
-                step_voltage * 1e6
-            );
-            let hint = "Correct the number of steps in this row, or leave its sweep out by a rule.";
-            data.engine.complain(Problem::new(Code::StepMiscount, message).hint(hint), data.line(row));
+        let off = |row: usize| (rest[row] - velocity[row] * middle) * self.directions[row];
+        if let Some(row) = (0..rest.len()).find(|row| off(*row).abs() > 0.5 * step_voltage) {
+            complain("This gate".into(), off(row), row);
             return None;
         }
         Some(())

@@ -10,7 +10,7 @@ use super::phase::{PhaseData, WantedColumn, shorten};
 use super::time_base::TimeBase;
 use super::voltage_standard::VoltageStandard;
 use super::weighing_phase::WeighingPhase;
-use super::{BlockKind, Output, no_check};
+use super::{BlockKind, Output};
 use crate::diagnostic::{Code, Complaints, Problem};
 use crate::graph::{Decision, Distribution, Estimator, NodeId, Quantity};
 use crate::intake::Place;
@@ -224,8 +224,9 @@ impl<'e> Work<'e> {
         let effects = self.effects()?;
         let (velocity, voltage) = (self.velocity(&effects)?, self.voltage(&effects)?);
         let rule = self.rule(&velocity.rows(), &voltage.rows())?;
-        let all = self.keep(rule.estimate(&[&velocity.rows(), &voltage.rows()]))?;
-        self.gates.check_steps(&self.data, &all.residuals, step)?;
+        let (v, u) = (velocity.rows(), voltage.rows());
+        let all = self.keep(rule.estimate(&[&v, &u]))?;
+        self.gates.check_steps(&self.data, &v, &rule.without_shape(&v, &u, &all.values), step)?;
         let left_out = self.outliers(&all)?;
         let kept: Vec<usize> = (0..self.gates.times.len()).filter(|row| !left_out.contains(row)).collect();
         let (rule, velocity, voltage) = match left_out.is_empty() {
@@ -270,6 +271,7 @@ impl<'e> Work<'e> {
         let lengthening = {
             let _scope = builder.scope(name, Some(&laser_alignment::METHOD.info));
             let lengthening = laser_alignment::lengthening(a.beam_tilt_x, a.beam_tilt_y);
+            self.note_tilts();
             (lengthening - 1.0).result("alignment", "θ²/2", "effect of the tilt of the beam on the velocity", &one);
             lengthening
         };
@@ -303,6 +305,21 @@ impl<'e> Work<'e> {
                 &one,
             );
         Some(Effects { lengthening, abbe_error, parasitic_power, refractive_index })
+    }
+
+    /// What first order leaves out of the cosine is said: the expectation of θ² is θ_0² + u².
+    fn note_tilts(&self) {
+        let graph = self.engine.graph();
+        let p = &self.apparatus.properties;
+        let of = |id| graph.input(id).map_or(0.0, |input| input.distribution.standard_uncertainty());
+        let left = (of(p.beam_tilt_x.id) * of(p.beam_tilt_x.id) + of(p.beam_tilt_y.id) * of(p.beam_tilt_y.id)) / 2.0;
+        drop(graph);
+        if left > 0.0 {
+            let text = format!(
+                "tilt of the laser beam: corrected at its estimate; the expectation of its square would add {left:.1e} to the relative correction"
+            );
+            self.engine.builder.assume(text, None);
+        }
     }
 
     /// True pressure and temperature of the residual gas.
@@ -462,7 +479,7 @@ impl<'e> Work<'e> {
         coefficients[0] = factor.result("geometric_factor", "Bl", &label, &unit("T m"));
         let order = rule.order;
         for (k, coefficient) in coefficients.iter().enumerate().take(order + 1).skip(1) {
-            let shown = unit(if k == 1 { "T" } else { &format!("T/m{}", k - 1) }.to_string().as_str());
+            let shown = if k == 1 { unit("T") } else { unit(&format!("T/m{}", k - 1)) };
             let label = format!("coefficient of power {k} of the profile in {name}");
             coefficient.result(&format!("coefficient_{k}"), &format!("b_{k}"), &label, &shown);
         }

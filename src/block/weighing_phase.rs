@@ -144,7 +144,7 @@ fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
             .result("voltage", "V", &format!("voltage across the resistor in {name}"), &unit("V"))
     };
     let resistance = resistor.at(engine, mean_time, temperature, pressure, voltage)?;
-    let gravity = station.at(engine, height, &times, Some(pressure), name)?;
+    let gravity = station.at(height, &times, Some(pressure), name)?;
     let _scope = engine.builder.scope(name, Some(&coil_current::METHOD.info));
     let current = coil_current::current(voltage, resistance, apparatus.properties.leakage).result(
         "current",

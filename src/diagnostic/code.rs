@@ -57,8 +57,7 @@ codes! {
     DuplicateName "duplicate_name" Fault "Two blocks carry the same name.";
     ElectricBasis "electric_basis" Fault "A voltage or resistance is in the electric units of 1990 without a stated conversion.";
     ExclusionWithoutReason "exclusion_without_reason" Fault "An excluded cycle or run lacks a rule or a reason.";
-    Extrapolated "extrapolated" Warning "A fit is asked for outside the range of its points.";
-    Extrapolated "extrapolated" Warning "A fit is used outside of what it was fitted to, or close to its ends.";
+    Extrapolated "extrapolated" Warning "A fit is asked for outside the range of its points, or close to its ends.";
     FewReadings "few_readings" Warning "A Type A evaluation rests on so few readings that its variance is unknown.";
     FieldMissing "field_missing" Fault "A block lacks a field it needs.";
     FieldUnknown "field_unknown" Fault "A block has a field its kind does not know.";

@@ -94,6 +94,15 @@ impl ProfileFit {
         (shaped, alone)
     }
 
+    /// U less what the shape of a profile gives: U_i − v_i Σ_(k≥1) b_k <ζ^k>_i, with b_k from `coefficients`.
+    pub fn without_shape(&self, v: &[f64], u: &[f64], coefficients: &[f64]) -> Vec<f64> {
+        let shape = |row: usize| -> f64 {
+            let term = |k: usize| coefficients[k] * gate_average(self.positions[row], v[row].abs() * self.gate, k);
+            (1..=self.order).map(term).sum()
+        };
+        (0..v.len()).map(|row| u[row] - v[row] * shape(row)).collect()
+    }
+
     /// The fit, and the regressors that multiply v.
     fn solve(&self, v: &[f64], u: &[f64]) -> Result<(Fit, Vec<Vec<f64>>), Problem> {
         let (shaped, alone) = self.design(v);
