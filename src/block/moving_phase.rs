@@ -223,30 +223,29 @@ impl<'e> Work<'e> {
         self.gates.check_weighing(&self.data, self.position, self.weighing.as_ref().map(|found| found.mean_time))?;
         let effects = self.effects()?;
         let (velocity, voltage) = (self.velocity(&effects)?, self.voltage(&effects)?);
-        let rule = self.rule(&velocity.rows(), &voltage.rows())?;
         let (v, u) = (velocity.rows(), voltage.rows());
-        let all = self.keep(rule.estimate(&[&v, &u]))?;
-        self.gates.check_steps(&self.data, &v, &rule.without_shape(&v, &u, &all.values), step)?;
-        let left_out = self.outliers(&all)?;
-        let kept: Vec<usize> = (0..self.gates.times.len()).filter(|row| !left_out.contains(row)).collect();
-        let (rule, velocity, voltage) = match left_out.is_empty() {
-            true => (rule, velocity, voltage),
-            false => {
-                let with_all = self.fit(&rule, velocity, voltage, ".with_all")?[0];
-                let _scope = self.engine.builder.scope(self.block.name(), Some(&profile_fit::METHOD.info));
-                with_all.result(
-                    "geometric_factor_with_all",
-                    "Bl_all",
-                    "geometric factor with the rows left out kept",
-                    &unit("T m"),
-                );
-                let single = |column: Quantity<'e>| column.mix(kept.iter().map(|row| vec![(*row as u32, 1.0)]).collect());
-                (rule.of_rows(&kept), single(velocity), single(voltage))
-            }
-        };
+        let rule = self.rule(&v, &u)?;
         let coefficients = self.fit(&rule, velocity, voltage, "")?;
+        let fitted: Vec<f64> = coefficients.iter().map(|coefficient| coefficient.number()).collect();
+        self.gates.check_steps(&self.data, &v, &rule.without_shape(&v, &u, &fitted), step)?;
+        let left_out = self.outliers()?;
+        if left_out.is_empty() {
+            let spread = self.spread(&rule, &v, &u)?;
+            return self.name_results(&rule, coefficients, spread, effects, &left_out);
+        }
+        self.name_with_all(coefficients[0]);
+        let kept: Vec<usize> = (0..v.len()).filter(|row| left_out.binary_search(row).is_err()).collect();
+        let single = |column: Quantity<'e>| column.mix(kept.iter().map(|row| vec![(*row as u32, 1.0)]).collect());
+        let (rule, velocity, voltage) = (rule.of_rows(&kept), single(velocity), single(voltage));
+        let coefficients = self.fit(&rule, velocity, voltage, ".kept")?;
         let spread = self.spread(&rule, &velocity.rows(), &voltage.rows())?;
         self.name_results(&rule, coefficients, spread, effects, &left_out)
+    }
+
+    fn name_with_all(&self, factor: Quantity<'e>) {
+        let _scope = self.engine.builder.scope(self.block.name(), Some(&profile_fit::METHOD.info));
+        let label = "geometric factor with the rows left out kept";
+        factor.result("geometric_factor_with_all", "Bl_all", label, &unit("T m"));
     }
 
     fn keep<T>(&self, result: Result<T, Problem>) -> Option<T> {
@@ -384,8 +383,8 @@ impl<'e> Work<'e> {
         }
     }
 
-    /// The rows that the rule for outliers leaves out.
-    fn outliers(&self, all: &crate::graph::Estimate) -> Option<Vec<usize>> {
+    /// The rows that the rule for outliers leaves out, by the residuals of the fit just made.
+    fn outliers(&self) -> Option<Vec<usize>> {
         let Some(outliers) = self.block.fields().mapping("outliers") else { return Some(Vec::new()) };
         let (rule, limit) = (outliers.text("rule")?, outliers.number("limit")?);
         let laid_down = self.engine.block(&rule, &["rule"])?.fields().date("date")?;
@@ -396,6 +395,8 @@ impl<'e> Work<'e> {
             self.engine.complain(problem.hint("Rows are left out only by a rule laid down before the data."), rule.place);
             return None;
         }
+        let graph = self.engine.graph();
+        let all = &graph.estimators.last()?.estimate;
         let squares = crate::numeric::sum::sum(all.residuals.iter().map(|r| r * r));
         let deviation = (squares / all.degrees_of_freedom).sqrt();
         Some((0..all.residuals.len()).filter(|row| all.residuals[*row].abs() > limit * deviation).collect())

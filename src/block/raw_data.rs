@@ -42,12 +42,13 @@ pub static KIND: BlockKind = BlockKind {
     },
 };
 
-/// A raw data file read.
+/// A raw data file read; its columns are shared by its copies.
+#[derive(Clone)]
 pub struct RawData {
     pub name: String,
     pub file: FileId,
     pub lines: Arc<[u32]>,
-    columns: Vec<Column>,
+    columns: Arc<[Column]>,
     zero_time: Option<DateTime<FixedOffset>>,
     place: Place,
 }
@@ -62,7 +63,11 @@ struct Column {
 impl RawData {
     /// The raw data with this name, read; complaints go to the engine.
     pub fn find(engine: &Engine, name: &Text) -> Option<RawData> {
-        Self::read(engine, engine.block(name, &["raw-data"])?)
+        let block = engine.block(name, &["raw-data"])?;
+        match engine.found::<RawData>(block.name()) {
+            Some(known) => Some((*known).clone()),
+            None => Self::read(engine, block),
+        }
     }
 
     fn read(engine: &Engine, block: &Block) -> Option<RawData> {
@@ -96,14 +101,16 @@ impl RawData {
         }
         let columns =
             named.into_iter().zip(read.columns).map(|((name, head, unit), data)| Column { name, head, unit, data });
-        Some(RawData {
+        let made = RawData {
             name: block.name().into(),
             file,
             lines: read.rows.into(),
             columns: columns.collect(),
             zero_time: fields.instant("zero_time"),
             place: block.raw.name.place,
-        })
+        };
+        engine.store(block.name(), made.clone());
+        Some(made)
     }
 
     /// Whether a column of this name is declared.

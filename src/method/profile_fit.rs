@@ -19,7 +19,6 @@ use super::statistic::brief;
 use super::{Method, WorkedExample, scaled};
 use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
-use crate::numeric::elementary::powi;
 use crate::numeric::distribution::f_upper;
 use crate::numeric::least_squares::{Fit, fit};
 
@@ -84,7 +83,10 @@ impl ProfileFit {
     /// The regressors that multiply v, and those that stand alone. Positions are scaled to centimetres inside.
     fn design(&self, v: &[f64]) -> (Vec<Vec<f64>>, Vec<Vec<f64>>) {
         let mut shaped: Vec<Vec<f64>> = (0..=self.order)
-            .map(|k| self.positions.iter().zip(v).map(|(z, v)| gate_average(*z, v.abs() * self.gate, k)).collect())
+            .map(|k| {
+                let average = GateAverage::new(k);
+                self.positions.iter().zip(v).map(|(z, v)| average.of(*z, v.abs() * self.gate)).collect()
+            })
             .collect();
         let mut alone = vec![vec![1.0; v.len()]];
         if self.drift {
@@ -96,11 +98,14 @@ impl ProfileFit {
 
     /// U less what the shape of a profile gives: U_i − v_i Σ_(k≥1) b_k <ζ^k>_i, with b_k from `coefficients`.
     pub fn without_shape(&self, v: &[f64], u: &[f64], coefficients: &[f64]) -> Vec<f64> {
-        let shape = |row: usize| -> f64 {
-            let term = |k: usize| coefficients[k] * gate_average(self.positions[row], v[row].abs() * self.gate, k);
-            (1..=self.order).map(term).sum()
-        };
-        (0..v.len()).map(|row| u[row] - v[row] * shape(row)).collect()
+        let mut rest = u.to_vec();
+        for (k, coefficient) in coefficients.iter().enumerate().take(self.order + 1).skip(1) {
+            let average = GateAverage::new(k);
+            for (row, rest) in rest.iter_mut().enumerate() {
+                *rest -= v[row] * coefficient * average.of(self.positions[row], v[row].abs() * self.gate);
+            }
+        }
+        rest
     }
 
     /// The fit, and the regressors that multiply v.
@@ -207,29 +212,60 @@ impl Estimator for ProfileFit {
 }
 
 /// d coefficient / d v_i: v_i shapes every regressor it multiplies.
+///
+/// From d β_k / d A_ic = C_kc r_i − J_ki β_c, summed over the regressors c that v_i multiplies by their shapes.
 fn velocity_response(found: &Fit, shaped: &[Vec<f64>]) -> Vec<Vec<f64>> {
-    let mut response = vec![vec![0.0; shaped[0].len()]; found.coefficients.len()];
-    for (column, shape) in shaped.iter().enumerate() {
-        for (row, by_entry) in response.iter_mut().zip(found.design_response(column)) {
-            row.iter_mut().zip(by_entry).zip(shape).for_each(|((cell, derivative), shape)| *cell += derivative * shape);
-        }
+    let mut factor = vec![0.0; found.residuals.len()];
+    for (shape, coefficient) in shaped.iter().zip(&found.coefficients) {
+        factor.iter_mut().zip(shape).for_each(|(sum, shape)| *sum += coefficient * shape);
     }
-    response
+    let respond = |(row, covariance): (&Vec<f64>, &Vec<f64>)| {
+        let mut response = vec![0.0; factor.len()];
+        for (shape, shared) in shaped.iter().zip(covariance) {
+            response.iter_mut().zip(shape).for_each(|(sum, shape)| *sum += shared * shape);
+        }
+        let parts = found.residuals.iter().zip(row.iter().zip(&factor));
+        response.iter_mut().zip(parts).for_each(|(cell, (r, (j, factor)))| *cell = *cell * r - j * factor);
+        response
+    };
+    found.jacobian.iter().zip(&found.unscaled_covariance).map(respond).collect()
 }
 
-/// Mean of ζ^k over a gate of length `d` about `zeta`.
-fn gate_average(zeta: f64, d: f64, k: usize) -> f64 {
-    let exponent = k as i32;
-    if d == 0.0 || k < 2 {
-        return powi(zeta, exponent);
+/// The mean of ζ^k over a gate of length D: Σ_i C(k, 2i)/(2i + 1) ζ^(k − 2i) (D/2)^(2i), which cancels no digits.
+struct GateAverage {
+    odd: bool,
+    weights: Vec<f64>,
+}
+
+impl GateAverage {
+    fn new(k: usize) -> GateAverage {
+        let (mut binomial, mut weights) = (1.0, vec![1.0]);
+        for j in 1..=k {
+            binomial = binomial * (k + 1 - j) as f64 / j as f64;
+            if j % 2 == 0 {
+                weights.push(binomial / (j + 1) as f64);
+            }
+        }
+        GateAverage { odd: k % 2 == 1, weights }
     }
-    let (upper, lower) = (zeta + d / 2.0, zeta - d / 2.0);
-    (powi(upper, exponent + 1) - powi(lower, exponent + 1)) / (f64::from(exponent + 1) * d)
+
+    fn of(&self, zeta: f64, d: f64) -> f64 {
+        let (square, quarter) = (zeta * zeta, d * d / 4.0);
+        let (mut total, mut power) = (0.0, 1.0);
+        for weight in &self.weights {
+            total = total * square + weight * power;
+            power *= quarter;
+        }
+        if self.odd { total * zeta } else { total }
+    }
 }
 
 fn noiseless_example() -> f64 {
     let gates = 41;
     let position = |index: usize| (index as f64 - 20.0) * 1e-3;
+    // By exact integration over the gate.
+    let cube = |z: f64| z * z * z;
+    let average = |z: f64| (cube(z + 1e-4) - cube(z - 1e-4)) / (3.0 * 2e-4);
     let mut rule = ProfileFit { sweeps: vec![], positions: vec![], times: vec![], gate: 0.1, order: 2, drift: false, decisions: vec![] };
     let (mut v, mut u) = (Vec::new(), Vec::new());
     for sweep in [1i64, -1] {
@@ -240,7 +276,7 @@ fn noiseless_example() -> f64 {
             rule.positions.push(zeta);
             rule.times.push(0.0);
             v.push(speed);
-            u.push(speed * (540.0 + 3.0 * zeta - 200.0 * gate_average(zeta, 2e-4, 2)) + 0.2e-6);
+            u.push(speed * (540.0 + 3.0 * zeta - 200.0 * average(zeta)) + 0.2e-6);
         }
     }
     rule.estimate(&[&v, &u]).map_or(f64::NAN, |estimate| estimate.values[0])

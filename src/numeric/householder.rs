@@ -91,6 +91,23 @@ impl Triangular {
         }
         x.iter().zip(&self.scales).map(|(x, scale)| x * scale).collect()
     }
+
+    /// [`Triangular::solve`] for every row of these columns at once; the digits are the same.
+    pub fn solve_rows(&self, mut columns: Vec<Vec<f64>>) -> Vec<Vec<f64>> {
+        for (j, column) in self.columns.iter().enumerate().rev() {
+            let count = columns.len();
+            let (before, rest) = columns.split_at_mut(j.min(count));
+            let (Some(values), Some(diagonal)) = (rest.first_mut(), column.last()) else { continue };
+            values.iter_mut().for_each(|value| *value /= diagonal);
+            for (entries, r) in before.iter_mut().zip(column) {
+                entries.iter_mut().zip(values.iter()).for_each(|(x, value)| *x -= r * value);
+            }
+        }
+        for (column, scale) in columns.iter_mut().zip(&self.scales) {
+            column.iter_mut().for_each(|x| *x *= scale);
+        }
+        columns
+    }
 }
 
 /// v - 2 r (r . v), from row `start` on.

@@ -80,8 +80,8 @@ pub fn fit(columns: &[&[f64]], y: &[f64], weights: Option<&[f64]>) -> Result<Fit
         unscaled_covariance: unscaled_covariance(&triangular, columns.len()),
         residual_sum_of_squares: sum(residuals.iter().zip(&weights).map(|(r, w)| w * r * r)),
         degrees_of_freedom: (y.len() - columns.len()) as f64,
-        jacobian: jacobian(&triangular, &orthonormal, &roots),
         leverages: (0..y.len()).map(|i| orthonormal.iter().map(|q| q[i] * q[i]).fold(0.0, |a, b| a + b)).collect(),
+        jacobian: jacobian(&triangular, orthonormal, &roots),
         coefficients,
         residuals,
         weights,
@@ -94,14 +94,10 @@ fn residuals(columns: &[&[f64]], y: &[f64], coefficients: &[f64]) -> Vec<f64> {
     y.iter().enumerate().map(|(i, y)| sum(std::iter::once(*y).chain(fitted(i)))).collect()
 }
 
-/// D R^-1 Q' W^1/2, column by column of Q'.
-fn jacobian(triangular: &Triangular, orthonormal: &[Vec<f64>], roots: &[f64]) -> Vec<Vec<f64>> {
-    let mut rows = vec![Vec::with_capacity(roots.len()); orthonormal.len()];
-    for (i, root) in roots.iter().enumerate() {
-        let across: Vec<f64> = orthonormal.iter().map(|column| column[i]).collect();
-        let solved = triangular.solve(&across);
-        rows.iter_mut().zip(solved).for_each(|(row, value)| row.push(value * root));
-    }
+/// D R^-1 Q' W^1/2.
+fn jacobian(triangular: &Triangular, orthonormal: Vec<Vec<f64>>, roots: &[f64]) -> Vec<Vec<f64>> {
+    let mut rows = triangular.solve_rows(orthonormal);
+    rows.iter_mut().for_each(|row| row.iter_mut().zip(roots).for_each(|(entry, root)| *entry *= root));
     rows
 }
 
