@@ -7,7 +7,7 @@
 
 use libripens::block::Engine;
 use libripens::graph::{
-    NodeId, linearity_departure, propagate_distributions, sensitivities, standard_uncertainty, unshared_variances,
+    NodeId, covariance, linearity_departure, propagate_distributions, sensitivities, standard_uncertainty, unshared_variances,
 };
 use libripens::intake::MemoryIntake;
 use serde_json::Value;
@@ -112,28 +112,33 @@ fn each_determination_agrees_with_an_independent_reduction() {
     }
 }
 
-/// What the six share is u of the campaign less its statistical part; what they do not share is each one's own scatter.
+/// The mean with the weights of the parts that are each one's own: value, u with all that the six share, and those parts.
 #[test]
-fn shared_and_own_parts_are_those_of_the_reference() {
+fn the_six_together_are_those_of_the_reference() {
     let intake = MemoryIntake::with(files().clone());
     let engine = reduced(&intake);
     let reference = reference();
     let graph = engine.graph();
-    let sweeps: Vec<_> =
-        (1..=6).map(|k| sensitivities(&graph, graph.find(&format!("DET{k}.mass")).expect("a mass"))).collect();
+    let ids: Vec<NodeId> = (1..=6).map(|k| graph.find(&format!("DET{k}.mass")).expect("a mass")).collect();
+    let sweeps: Vec<_> = ids.iter().map(|id| sensitivities(&graph, *id)).collect();
     let unshared = unshared_variances(&graph, &sweeps);
-    let mut weights = 0.0;
     for (k, expected) in reference["determinations"].as_array().expect("a list").iter().enumerate() {
         let u = expected["u_own"].as_f64().expect("a number");
         assert!((unshared[k].sqrt() / u - 1.0).abs() < 0.03, "DET{}: own part {}", k + 1, unshared[k].sqrt());
-        weights += 1.0 / (u * u);
     }
-    let whole = reference["mass"]["u"].as_f64().expect("a number");
-    let shared = (whole * whole - 1.0 / weights).sqrt();
-    for (k, sweep) in sweeps.iter().enumerate() {
-        let found = (standard_uncertainty(&graph, sweep).powi(2) - unshared[k]).sqrt();
-        assert!((found / shared - 1.0).abs() < 0.04, "DET{}: shared part {found}, expected {shared}", k + 1);
+    let total: f64 = unshared.iter().map(|variance| 1.0 / variance).sum();
+    let weights: Vec<f64> = unshared.iter().map(|variance| 1.0 / variance / total).collect();
+    let mean: f64 = weights.iter().zip(&ids).map(|(weight, id)| weight * graph.number(*id)).sum();
+    let mut variance = 0.0;
+    for (a, first) in weights.iter().zip(&sweeps) {
+        for (b, second) in weights.iter().zip(&sweeps) {
+            variance += a * b * covariance(&graph, first, second);
+        }
     }
+    let of = |key: &str| reference["mass"][key].as_f64().expect("a number");
+    assert!((mean - of("value")).abs() < 0.1 * of("u"), "mean {mean}");
+    assert!((variance.sqrt() / of("u") - 1.0).abs() < 0.03, "u {}", variance.sqrt());
+    assert!((mean - of("truth")).abs() < 3.0 * variance.sqrt());
 }
 
 const KIBBLE: &str = "instruments/apparatus.md";

@@ -143,7 +143,7 @@ fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
         compensated_voltage::compensated_voltage(steps, standard.step_voltage, apparatus.properties.null_gain_weighing, null)
             .result("voltage", "V", &format!("voltage across the resistor in {name}"), &unit("V"))
     };
-    let resistance = resistor.at(engine, mean_time, temperature, pressure, voltage)?;
+    let resistance = resistor.at(mean_time, temperature, pressure, voltage)?;
     let gravity = station.at(height, &times, Some(pressure), name)?;
     let _scope = engine.builder.scope(name, Some(&coil_current::METHOD.info));
     let current = coil_current::current(voltage, resistance, apparatus.properties.leakage).result(
