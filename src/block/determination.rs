@@ -101,7 +101,7 @@ impl<'e> Work<'e> {
         let buoyancy = self.buoyancy()?;
         let _scope = engine.builder.scope(name, Some(&kibble_mass::METHOD.info));
         let label = self.weight.block.label();
-        let apparent = tare[0].result("apparent_mass", "M", &format!("apparent mass of {label} in {name}"), &unit("kg"));
+        let apparent = tare[0];
         let further = self.further();
         let ideal = kibble_mass::mass(apparent, buoyancy, self.apparatus.properties.magnetic_force);
         let corrected = further.iter().fold(ideal, |mass, (_, relative)| mass * (1.0 + *relative));
@@ -181,6 +181,8 @@ impl<'e> Work<'e> {
         );
         let made = engine.keep(made, place)?;
         let _scope = engine.builder.scope(name, Some(&tare_fit::METHOD.info));
+        let apparent = format!("apparent mass of {} in {name}", self.weight.block.label());
+        made[0].result("apparent_mass", "M", &apparent, &unit("kg"));
         made[1].result("tare", "c_0", &format!("tare at the middle of {name}"), &unit("kg"));
         Some((rule, made))
     }
