@@ -7,7 +7,8 @@
 
 use libripens::block::Engine;
 use libripens::graph::{
-    NodeId, covariance, linearity_departure, propagate_distributions, sensitivities, standard_uncertainty, unshared_variances,
+    NodeId, covariance, linearity_departure, propagate_distributions, sensitivities, standard_uncertainty,
+    unshared_variances,
 };
 use libripens::intake::MemoryIntake;
 use serde_json::Value;
@@ -99,16 +100,16 @@ fn each_determination_agrees_with_an_independent_reduction() {
         assert!((drift / of("drift_per_hour") - 1.0).abs() < 1e-3, "MP{k}: drift {drift}");
         let thermal = number(&engine, &format!("MP{k}.thermal_voltage")) * 1e6;
         assert!((thermal - of("thermal_voltage_uV")).abs() < 1e-3, "MP{k}: thermal voltage {thermal}");
-        let mass = number(&engine, &format!("DET{k}.mass"));
+        let mass = number(&engine, &format!("KD{k}.mass"));
         let off = (mass - of("mass")).abs() / of("u_own");
-        assert!(off < 0.1, "DET{k}: {mass} is {off} u off");
-        let u = own(&engine, &format!("DET{k}.scatter"));
-        assert!((u / of("u_weighing") - 1.0).abs() < 0.03, "DET{k}: u {u}");
-        let buoyancy = number(&engine, &format!("DET{k}.buoyancy"));
-        assert!((buoyancy / of("buoyancy") - 1.0).abs() < 1e-6, "DET{k}: buoyancy {buoyancy}");
-        let combined = uncertainty(&engine, &format!("DET{k}.mass"));
+        assert!(off < 0.1, "KD{k}: {mass} is {off} u off");
+        let u = own(&engine, &format!("KD{k}.scatter"));
+        assert!((u / of("u_weighing") - 1.0).abs() < 0.03, "KD{k}: u {u}");
+        let buoyancy = number(&engine, &format!("KD{k}.buoyancy"));
+        assert!((buoyancy / of("buoyancy") - 1.0).abs() < 1e-6, "KD{k}: buoyancy {buoyancy}");
+        let combined = uncertainty(&engine, &format!("KD{k}.mass"));
         let from_truth = (mass - of("true_mass")).abs() / combined;
-        assert!(from_truth < 3.0, "DET{k}: {from_truth} u from the truth");
+        assert!(from_truth < 3.0, "KD{k}: {from_truth} u from the truth");
     }
 }
 
@@ -119,12 +120,12 @@ fn the_six_together_are_those_of_the_reference() {
     let engine = reduced(&intake);
     let reference = reference();
     let graph = engine.graph();
-    let ids: Vec<NodeId> = (1..=6).map(|k| graph.find(&format!("DET{k}.mass")).expect("a mass")).collect();
+    let ids: Vec<NodeId> = (1..=6).map(|k| graph.find(&format!("KD{k}.mass")).expect("a mass")).collect();
     let sweeps: Vec<_> = ids.iter().map(|id| sensitivities(&graph, *id)).collect();
     let unshared = unshared_variances(&graph, &sweeps);
     for (k, expected) in reference["determinations"].as_array().expect("a list").iter().enumerate() {
         let u = expected["u_own"].as_f64().expect("a number");
-        assert!((unshared[k].sqrt() / u - 1.0).abs() < 0.03, "DET{}: own part {}", k + 1, unshared[k].sqrt());
+        assert!((unshared[k].sqrt() / u - 1.0).abs() < 0.03, "KD{}: own part {}", k + 1, unshared[k].sqrt());
     }
     let total: f64 = unshared.iter().map(|variance| 1.0 / variance).sum();
     let weights: Vec<f64> = unshared.iter().map(|variance| 1.0 / variance / total).collect();
@@ -151,12 +152,33 @@ const OMISSIONS: &[(&str, &str, &str, &str, f64, f64)] = &[
     ("tide", GRAVITY, "scale: 1.00223(300)", "scale: 0.0", 55.019, 0.02),
     ("height of the artefact", DAY, "mass_centre: 1384.59(1.50) mm", "mass_centre: 0.00(1.50) mm", -420.22, 0.05),
     ("pillar tie", GRAVITY, "value: -418.6(10.0)", "value: 0.0(10.0)", -42.7, 0.1),
-    ("first current coefficient", KIBBLE, "current_coefficient: 4.725(260)e-3", "current_coefficient: 0.0(2)e-3", 2.787, 0.01),
+    (
+        "first current coefficient",
+        KIBBLE,
+        "current_coefficient: 4.725(260)e-3",
+        "current_coefficient: 0.0(2)e-3",
+        2.787,
+        0.01,
+    ),
     ("second current coefficient", KIBBLE, "140.1(31.5)e-6", "0.0(31.5)e-6", -11.497, 0.01),
     ("load coefficient", RESISTOR, "load_coefficient: 0.558(300)e-9", "load_coefficient: 0.0(3)e-9", 3.184, 0.01),
-    ("pressure coefficient", RESISTOR, "pressure_coefficient: -0.7577(500)e-9", "pressure_coefficient: 0.0(5)e-9", 34.55, 0.05),
+    (
+        "pressure coefficient",
+        RESISTOR,
+        "pressure_coefficient: -0.7577(500)e-9",
+        "pressure_coefficient: 0.0(5)e-9",
+        34.55,
+        0.05,
+    ),
     ("order of the profile", DAY, "order: 4", "order: 3", 3144.55, 0.1),
-    ("Abbe offset", KIBBLE, "optical_offset_x: 6.1(10.0) µm\noptical_offset_y: -17.3(10.0) µm", "optical_offset_x: 0.0(10.0) µm\noptical_offset_y: 0.0(10.0) µm", -3.6, 0.1),
+    (
+        "Abbe offset",
+        KIBBLE,
+        "optical_offset_x: 6.1(10.0) µm\noptical_offset_y: -17.3(10.0) µm",
+        "optical_offset_x: 0.0(10.0) µm\noptical_offset_y: 0.0(10.0) µm",
+        -3.6,
+        0.1,
+    ),
     ("tilt of the laser beam", KIBBLE, "beam_tilt_x: 78.1(25.0)", "beam_tilt_x: 0.0(25.0)", 3.05, 0.1),
     ("magnetic force", KIBBLE, "magnetic_force: 1.875(800)e-9", "magnetic_force: 0.0(8)e-9", 1.875, 0.01),
 ];
@@ -165,12 +187,12 @@ const OMISSIONS: &[(&str, &str, &str, &str, f64, f64)] = &[
 fn an_effect_left_out_moves_the_result_as_expected() {
     let whole = MemoryIntake::with(files().clone());
     let engine = reduced(&whole);
-    let mass = number(&engine, "DET1.mass");
+    let mass = number(&engine, "KD1.mass");
     for (what, path, from, to, expected, tolerance) in OMISSIONS {
         let intake = changed(path, from, to);
         let engine = Engine::read(&intake, Some(CAMPAIGN)).expect("readable");
-        engine.build("DET1", engine.blocks()["DET1"].raw.name.place);
-        let moved = (number(&engine, "DET1.mass") - mass) * 1e9;
+        engine.build("KD1", engine.blocks()["KD1"].raw.name.place);
+        let moved = (number(&engine, "KD1.mass") - mass) * 1e9;
         assert!((moved - expected).abs() <= *tolerance, "{what}: {moved}e-9, expected {expected}e-9");
     }
 }
@@ -187,7 +209,7 @@ fn the_order_by_rule_is_the_stated_one_and_its_spread_is_carried() {
     // The three orders of the independent reduction: 541.3004057674, …7368, …6686.
     let spread = uncertainty(&engine, "MP1.profile_spread") * factor;
     assert!((spread - 5.39e-7).abs() < 0.05e-7, "spread {spread}");
-    assert!(uncertainty(&engine, "DET1.mass") > uncertainty(&stated, "DET1.mass"));
+    assert!(uncertainty(&engine, "KD1.mass") > uncertainty(&stated, "KD1.mass"));
 }
 
 #[test]
@@ -203,16 +225,16 @@ fn corrections_stand_as_lines_of_their_own() {
         ("geometric_factor_change", 0.0),
         ("leakage", 0.0),
     ] {
-        let found = number(&engine, &format!("DET1.correction.{name}"));
+        let found = number(&engine, &format!("KD1.correction.{name}"));
         assert!((found - expected).abs() < 2e-12, "{name}: {found}");
-        let mass = number(&engine, &format!("DET1.correction_mass.{name}"));
+        let mass = number(&engine, &format!("KD1.correction_mass.{name}"));
         assert!((mass - found).abs() < 1e-14, "{name}: {mass} kg");
     }
     // A bound of zero is no correction, but an uncertainty.
-    let change = uncertainty(&engine, "DET1.correction.geometric_factor_change");
+    let change = uncertainty(&engine, "KD1.correction.geometric_factor_change");
     assert!((change - 4e-9).abs() < 1e-15, "{change}");
     let graph = engine.graph();
-    let sweep = sensitivities(&graph, graph.find("DET1.mass").expect("a mass"));
+    let sweep = sensitivities(&graph, graph.find("KD1.mass").expect("a mass"));
     let number = match graph.node(graph.find("KB1.geometric_factor_change").expect("an input")).op {
         libripens::graph::Op::Input(number) => number,
         _ => panic!("an input"),
@@ -224,8 +246,8 @@ fn corrections_stand_as_lines_of_their_own() {
 fn trials_run_on_whole_columns_and_agree() {
     let intake = MemoryIntake::with(files().clone());
     let engine = reduced(&intake);
-    let id = node(&engine, "DET1.mass");
-    let first_order = uncertainty(&engine, "DET1.mass");
+    let id = node(&engine, "KD1.mass");
+    let first_order = uncertainty(&engine, "KD1.mass");
     let graph = engine.graph();
     // Scalars by the thousand would be rows that became nodes.
     assert!(graph.nodes.len() < 6000, "{} nodes", graph.nodes.len());
@@ -244,7 +266,7 @@ const WEIGHING: &str = "campaigns/realization/raw/weighing-1.csv";
 /// The complaints about determination 1: code, file, line.
 fn complaints_of(intake: &MemoryIntake) -> Vec<(String, String, usize)> {
     let engine = Engine::read(intake, Some(CAMPAIGN)).expect("readable");
-    engine.build("DET1", engine.blocks()["DET1"].raw.name.place);
+    engine.build("KD1", engine.blocks()["KD1"].raw.name.place);
     let sources = engine.sources();
     let found = engine.complaints().list.into_iter().map(|complaint| {
         assert!(!complaint.hints.is_empty(), "{complaint:?}");
@@ -292,12 +314,14 @@ fn mistakes_of_a_day_are_found_where_they_stand() {
     assert!(complaints_of(&volts).iter().all(|(code, ..)| code == "column_implausible"));
     let lengths = changed(DAY, "position: {head: z_mm, unit: mm}", "position: {head: z_mm, unit: s}");
     assert!(complaints_of(&lengths).iter().any(|(code, path, _)| code == "dimension_mismatch" && path == DAY));
-    let state = with_rows(WEIGHING, |line, row| Some(if line == 40 { row.replace(",on,", ",off,") } else { row.into() }));
+    let state =
+        with_rows(WEIGHING, |line, row| Some(if line == 40 { row.replace(",on,", ",off,") } else { row.into() }));
     assert_eq!(complaints_of(&state), one("sign_contradicts", WEIGHING, 40));
     let word =
         with_rows(WEIGHING, |line, row| Some(if line == 11 { row.replace(",off,", ",of,") } else { row.into() }));
     assert_eq!(complaints_of(&word), one("cell_unreadable", WEIGHING, 11));
-    let backwards = with_rows(MOVING, |line, row| Some(if line == 30 { row.replace(",3419", ",3418") } else { row.into() }));
+    let backwards =
+        with_rows(MOVING, |line, row| Some(if line == 30 { row.replace(",3419", ",3418") } else { row.into() }));
     assert_eq!(complaints_of(&backwards), one("time_unreadable", MOVING, 30));
     let halved = changed(DAY, "gate: 0.1 s", "gate: 0.05 s");
     assert!(complaints_of(&halved).iter().all(|(code, ..)| code == "fringe_factor"));

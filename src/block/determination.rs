@@ -106,11 +106,12 @@ impl<'e> Work<'e> {
         let ideal = kibble_mass::mass(apparent, buoyancy, self.apparatus.properties.magnetic_force);
         let corrected = further.iter().fold(ideal, |mass, (_, relative)| mass * (1.0 + *relative));
         let basis = self.block.fields().text("basis").map_or_else(|| "own realization".into(), |basis| basis.text);
-        let mass = corrected
-            .as_kind(Kind::Mass)
-            .in_state(Some(State::Vacuum))
-            .on_basis(Some(basis.into()))
-            .result("mass", &format!("m_{}", self.weight.block.name()), &format!("mass of {label} in vacuum, {name}"), &unit("kg"));
+        let mass = corrected.as_kind(Kind::Mass).in_state(Some(State::Vacuum)).on_basis(Some(basis.into())).result(
+            "mass",
+            &format!("m_{}", self.weight.block.name()),
+            &format!("mass of {label} in vacuum, {name}"),
+            &unit("kg"),
+        );
         let corrections = self.corrections(apparent, buoyancy, beam_force, &rule, &further)?;
         self.store(mass, &rule, corrections);
         Some(())
@@ -201,7 +202,11 @@ impl<'e> Work<'e> {
 
     /// Further stated corrections of the apparatus.
     fn further(&self) -> Vec<(String, Quantity<'e>)> {
-        self.apparatus.corrections.iter().map(|(label, relative)| (label.clone(), relative.as_kind(Kind::Plain))).collect()
+        self.apparatus
+            .corrections
+            .iter()
+            .map(|(label, relative)| (label.clone(), relative.as_kind(Kind::Plain)))
+            .collect()
     }
 
     /// Each correction that the model makes, as a line of its own: relative and as a mass, to first order.
@@ -225,11 +230,19 @@ impl<'e> Work<'e> {
             ("alignment".into(), "tilt of the laser beam", 1.0 - engine.at(moving.alignment)),
             ("abbe_offset".into(), "Abbe error of the velocity", engine.at(moving.abbe_error)),
             ("parasitic_motion".into(), "parasitic motion of the coil", -engine.at(moving.parasitic_power)),
-            ("refractive_index".into(), "refractive index of the residual gas", engine.at(moving.refractive_index) - 1.0),
+            (
+                "refractive_index".into(),
+                "refractive index of the residual gas",
+                engine.at(moving.refractive_index) - 1.0,
+            ),
             ("beam_force".into(), "tilt of the balance beam", beam_force),
             ("current".into(), "first current coefficient", alpha),
             ("second_current".into(), "second current coefficient", beta),
-            ("geometric_factor_change".into(), "change of the geometric factor between the phases", p.geometric_factor_change),
+            (
+                "geometric_factor_change".into(),
+                "change of the geometric factor between the phases",
+                p.geometric_factor_change,
+            ),
             ("leakage".into(), "leakage", -p.leakage),
             ("magnetic_force".into(), "magnetic force on the artefact", -p.magnetic_force),
             ("buoyancy".into(), "buoyancy in the residual gas", buoyancy / apparent),
@@ -251,9 +264,15 @@ impl<'e> Work<'e> {
             };
             let relative = relative.as_kind(Kind::Plain);
             let symbol = format!("δ_{}", name.replace('_', " "));
-            let shown = relative.result(&format!("correction.{name}"), &symbol, &format!("correction for {label}"), &unit("1"));
+            let shown =
+                relative.result(&format!("correction.{name}"), &symbol, &format!("correction for {label}"), &unit("1"));
             let mass = (shown * apparent).as_kind(Kind::MassDifference);
-            mass.result(&format!("correction_mass.{name}"), &symbol, &format!("correction for {label}, as a mass"), &unit("µg"));
+            mass.result(
+                &format!("correction_mass.{name}"),
+                &symbol,
+                &format!("correction for {label}, as a mass"),
+                &unit("µg"),
+            );
         }
         Some(lines.into_iter().map(|(name, ..)| name).collect())
     }

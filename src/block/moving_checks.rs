@@ -93,7 +93,8 @@ impl Gates {
         }
         let place = data.column("fringes");
         if near(2.0) || near(0.5) {
-            let message = format!("The velocity from fringes is {ratio:.3} times that from positions: a factor of two.");
+            let message =
+                format!("The velocity from fringes is {ratio:.3} times that from positions: a factor of two.");
             let hint = "Fringes count half wavelengths; check what the counter counts, and the gate.";
             data.engine.complain(Problem::new(Code::FringeFactor, message).hint(hint), place);
         } else {
@@ -108,10 +109,7 @@ impl Gates {
     fn check_null(&self, data: &PhaseData<'_>, step_voltage: f64) -> Option<()> {
         let whole = mean(&self.steps.iter().map(|n| n.abs() * step_voltage).collect::<Vec<_>>())?;
         let Some(row) = (0..self.null.len()).find(|row| self.null[*row].abs() > 0.05 * whole) else { return Some(()) };
-        let message = format!(
-            "The null meter reads {:.4e} V here, beside {whole:.4e} V of the array.",
-            self.null[row]
-        );
+        let message = format!("The null meter reads {:.4e} V here, beside {whole:.4e} V of the array.", self.null[row]);
         let hint = "Look whether two columns are exchanged, and at the unit of the null reading.";
         data.engine.complain(Problem::new(Code::ColumnImplausible, message).hint(hint), data.line(row));
         None
@@ -129,7 +127,8 @@ impl Gates {
                 "Between this row and the one above pass {:.3} s, but {usual:.3} s is usual in a sweep.",
                 interval(row)
             );
-            let hint = "Say in the record what happened; the fit goes on, its serial correlation is that of neighbours.";
+            let hint =
+                "Say in the record what happened; the fit goes on, its serial correlation is that of neighbours.";
             data.engine.complain(Problem::new(Code::TimeGap, message).hint(hint), data.line(row));
         }
     }
@@ -142,8 +141,10 @@ impl Gates {
         let largest = self.positions.iter().copied().fold(f64::NEG_INFINITY, f64::max);
         let span = format!("{:.3} mm to {:.3} mm", least * 1e3, largest * 1e3);
         if !(least..=largest).contains(&position) {
-            let message =
-                format!("The weighing position {:.3} mm lies outside the sweeps, which go from {span}.", position * 1e3);
+            let message = format!(
+                "The weighing position {:.3} mm lies outside the sweeps, which go from {span}.",
+                position * 1e3
+            );
             let hint = "Sweep across the weighing position; a profile is not extrapolated.";
             data.engine.complain(Problem::new(Code::OutOfValidity, message).hint(hint), data.place);
             return None;
@@ -186,8 +187,7 @@ impl Gates {
         sorted.sort_by(f64::total_cmp);
         let middle = (sorted.get((sorted.len() - 1) / 2)? + sorted.get(sorted.len() / 2)?) / 2.0;
         let speed = |span: &Range<usize>| over(span, &|row| velocity[row].abs()) / span.len() as f64;
-        let offs: Vec<f64> =
-            spans.iter().zip(&factors).map(|(span, factor)| (factor - middle) * speed(span)).collect();
+        let offs: Vec<f64> = spans.iter().zip(&factors).map(|(span, factor)| (factor - middle) * speed(span)).collect();
         let hint = "Correct the number of steps by an entry of its own, or leave the sweep out by a rule.";
         let complain = |what: String, off: f64, row: usize| {
             let message = format!(

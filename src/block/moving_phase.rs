@@ -17,8 +17,8 @@ use crate::intake::Place;
 use crate::method::parasitic_motion::{Parasitic, parasitic_power};
 use crate::method::profile_fit::{self, ProfileFit, choose_order};
 use crate::method::{
-    abbe_offset, compensated_voltage, interferometer_velocity, laser_alignment, parasitic_motion, residual_gas_buoyancy,
-    unit,
+    abbe_offset, compensated_voltage, interferometer_velocity, laser_alignment, parasitic_motion,
+    residual_gas_buoyancy, unit,
 };
 use crate::quantity::{Dimension, Kind};
 use crate::record::{Node, Text};
@@ -296,13 +296,12 @@ impl<'e> Work<'e> {
         };
         let (pressure, temperature) = self.residual_gas()?;
         let _scope = builder.scope(name, Some(&residual_gas_buoyancy::METHOD.info));
-        let refractive_index =
-            residual_gas_buoyancy::refractive_index(pressure, temperature, a.residual_gas_refractivity).result(
-                "refractive_index",
-                "n",
-                "refractive index of the residual gas",
-                &one,
-            );
+        let refractive_index = residual_gas_buoyancy::refractive_index(
+            pressure,
+            temperature,
+            a.residual_gas_refractivity,
+        )
+        .result("refractive_index", "n", "refractive index of the residual gas", &one);
         Some(Effects { lengthening, abbe_error, parasitic_power, refractive_index })
     }
 
@@ -330,7 +329,10 @@ impl<'e> Work<'e> {
                 engine.given(&gas.given(field, kind)?, &path, symbol, &format!("{field} of the residual gas"), kind)
             };
             let indicated = given("pressure", "p_v", Kind::Pressure)?;
-            return Some((self.apparatus.properties.vacuum_gauge_factor * indicated, given("temperature", "T_v", Kind::Temperature)?));
+            return Some((
+                self.apparatus.properties.vacuum_gauge_factor * indicated,
+                given("temperature", "T_v", Kind::Temperature)?,
+            ));
         }
         let weighing = self.weighing.as_ref()?;
         Some((engine.at(weighing.gas_pressure), engine.at(weighing.gas_temperature)))
@@ -356,8 +358,12 @@ impl<'e> Work<'e> {
     fn voltage(&self, effects: &Effects<'e>) -> Option<Quantity<'e>> {
         let (steps, null) = (self.data.input(&STEPS)?, self.data.input(&NULL)?);
         let _scope = self.engine.builder.scope(self.block.name(), Some(&compensated_voltage::METHOD.info));
-        let whole =
-            compensated_voltage::compensated_voltage(steps, self.step_voltage, self.apparatus.properties.null_gain_moving, null);
+        let whole = compensated_voltage::compensated_voltage(
+            steps,
+            self.step_voltage,
+            self.apparatus.properties.null_gain_moving,
+            null,
+        );
         let label = format!("voltage that belongs to the vertical force, gate by gate, in {}", self.block.name());
         Some((whole / (1.0 + effects.parasitic_power)).result("coil_voltage", "U", &label, &unit("V")))
     }
@@ -392,7 +398,8 @@ impl<'e> Work<'e> {
         if laid_down > first.date_naive() {
             let message = format!("The rule {} is dated {laid_down}, after the data it judges.", rule.text);
             let problem = Problem::new(Code::RuleDated, message);
-            self.engine.complain(problem.hint("Rows are left out only by a rule laid down before the data."), rule.place);
+            self.engine
+                .complain(problem.hint("Rows are left out only by a rule laid down before the data."), rule.place);
             return None;
         }
         let graph = self.engine.graph();

@@ -52,7 +52,8 @@ impl<'e> PhaseData<'e> {
                 wanted.unit
             );
             let problem = Problem::new(Code::DimensionMismatch, message);
-            self.engine.complain(problem.hint("Correct its unit, or the head it is read from."), self.column(wanted.name));
+            self.engine
+                .complain(problem.hint("Correct its unit, or the head it is read from."), self.column(wanted.name));
             return None;
         }
         let (least, largest) = wanted.plausible;
@@ -99,7 +100,8 @@ impl<'e> PhaseData<'e> {
     pub fn times(&self) -> Option<Vec<f64>> {
         let times = self.raw.times(self.engine)?;
         if let Some(row) = (1..times.len()).find(|row| times[*row] <= times[row - 1]) {
-            let message = format!("The time of this row is {:.3} s before that of the row above.", times[row - 1] - times[row]);
+            let message =
+                format!("The time of this row is {:.3} s before that of the row above.", times[row - 1] - times[row]);
             let problem = Problem::new(Code::TimeUnreadable, message);
             self.engine.complain(problem.hint("Rows stand in the order in which they were taken."), self.line(row));
             return None;

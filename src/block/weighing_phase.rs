@@ -31,7 +31,11 @@ const FIELDS: &[Field] = &[
     needed("apparatus", Shape::Name, "the apparatus"),
     needed("gravity", Shape::Name, "the gravity station"),
     needed("mass_centre", Shape::Value(Kind::Height), "mass centre of the artefact above the mark"),
-    optional("position", Shape::Value(Kind::Length), "the weighing position of the coil; the mean position unless written"),
+    optional(
+        "position",
+        Shape::Value(Kind::Length),
+        "the weighing position of the coil; the mean position unless written",
+    ),
 ];
 
 /// A weighing phase.
@@ -44,7 +48,11 @@ pub static KIND: BlockKind = BlockKind {
         Output { path: "current_off", meaning: "mean current without the artefact", unit: "mA" },
         Output { path: "current_on", meaning: "mean current with the artefact", unit: "mA" },
         Output { path: "asymmetry", meaning: "sum of both, zero for balanced currents", unit: "µA" },
-        Output { path: "gravity.mean", meaning: "gravitational acceleration at the artefact, mean; its effects beside it", unit: "m s⁻²" },
+        Output {
+            path: "gravity.mean",
+            meaning: "gravitational acceleration at the artefact, mean; its effects beside it",
+            unit: "m s⁻²",
+        },
         Output { path: "mean_resistance", meaning: "resistance in use, mean", unit: "Ω" },
         Output { path: "residual_pressure", meaning: "pressure of the residual gas, mean", unit: "Pa" },
         Output { path: "residual_temperature", meaning: "temperature of the residual gas, mean", unit: "°C" },
@@ -140,8 +148,13 @@ fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
     let mean_time = sum(times.iter().copied()) / times.len() as f64;
     let voltage = {
         let _scope = engine.builder.scope(name, Some(&compensated_voltage::METHOD.info));
-        compensated_voltage::compensated_voltage(steps, standard.step_voltage, apparatus.properties.null_gain_weighing, null)
-            .result("voltage", "V", &format!("voltage across the resistor in {name}"), &unit("V"))
+        compensated_voltage::compensated_voltage(
+            steps,
+            standard.step_voltage,
+            apparatus.properties.null_gain_weighing,
+            null,
+        )
+        .result("voltage", "V", &format!("voltage across the resistor in {name}"), &unit("V"))
     };
     let resistance = resistor.at(mean_time, temperature, pressure, voltage)?;
     let gravity = station.at(height, &times, Some(pressure), name)?;
@@ -156,7 +169,8 @@ fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
         let chosen = states.states.iter().zip(&states.rows).filter(|(state, _)| state.on == on);
         chosen.flat_map(|(_, rows)| rows.iter().copied()).collect()
     };
-    let off = mean_of(current, &of(false)).result("current_off", "I_off", "mean current without the artefact", &unit("mA"));
+    let off =
+        mean_of(current, &of(false)).result("current_off", "I_off", "mean current without the artefact", &unit("mA"));
     let on = mean_of(current, &of(true)).result("current_on", "I_on", "mean current with the artefact", &unit("mA"));
     (off + on).result("asymmetry", "I_off + I_on", "asymmetry of the currents", &unit("µA"));
     resistance.mean().result("mean_resistance", "R", &format!("resistance in use, mean of {name}"), &unit("ohm"));
@@ -178,7 +192,8 @@ fn build<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<()> {
             .number(),
         None => {
             let mean = sum(positions.iter().copied()) / positions.len() as f64;
-            let text = format!("{name}: the weighing position is the mean position of its samples, {:.4} mm", mean * 1e3);
+            let text =
+                format!("{name}: the weighing position is the mean position of its samples, {:.4} mm", mean * 1e3);
             engine.builder.assume(text, Some(block.raw.name.place));
             mean
         }
@@ -220,7 +235,8 @@ impl States {
         if let Some(row) = words.iter().position(|word| word != "on" && word != "off") {
             let message = format!("The state “{}” is neither on nor off.", words[row]);
             let problem = Problem::new(Code::CellUnreadable, message);
-            data.engine.complain(problem.hint("Write on with the artefact on the pan, off without it."), data.line(row));
+            data.engine
+                .complain(problem.hint("Write on with the artefact on the pan, off without it."), data.line(row));
             return None;
         }
         let steps = data.rows(&STEPS)?;
@@ -254,17 +270,21 @@ fn check_reversal(data: &PhaseData<'_>, words: &[String], steps: &[f64]) -> Opti
     if balance("on") * balance("off") >= 0.0 {
         let message = "The number of steps has one sign with and without the artefact: the current is not reversed.";
         let problem = Problem::new(Code::SignContradicts, message);
-        data.engine.complain(problem.hint("Check the column of states and the sign of the steps."), data.column("steps"));
+        data.engine
+            .complain(problem.hint("Check the column of states and the sign of the steps."), data.column("steps"));
         return None;
     }
     let mut sound = Some(());
     for row in 0..steps.len() {
         let expected = if words[row] == "off" { sign_off } else { -sign_off };
         if steps[row] * expected <= 0.0 {
-            let message =
-                format!("The state is {}, but the number of steps is {}: its sign is that of the other state.", words[row], steps[row]);
+            let message = format!(
+                "The state is {}, but the number of steps is {}: its sign is that of the other state.",
+                words[row], steps[row]
+            );
             let problem = Problem::new(Code::SignContradicts, message);
-            data.engine.complain(problem.hint("Correct the state or the sign of the steps in this row."), data.line(row));
+            data.engine
+                .complain(problem.hint("Correct the state or the sign of the steps in this row."), data.line(row));
             sound = None;
         }
     }

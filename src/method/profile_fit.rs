@@ -111,11 +111,8 @@ impl ProfileFit {
     /// The fit, and the regressors that multiply v.
     fn solve(&self, v: &[f64], u: &[f64]) -> Result<(Fit, Vec<Vec<f64>>), Problem> {
         let (shaped, alone) = self.design(v);
-        let regressors: Vec<Vec<f64>> = shaped
-            .iter()
-            .map(|shape| shape.iter().zip(v).map(|(shape, v)| shape * v).collect())
-            .chain(alone)
-            .collect();
+        let regressors: Vec<Vec<f64>> =
+            shaped.iter().map(|shape| shape.iter().zip(v).map(|(shape, v)| shape * v).collect()).chain(alone).collect();
         let references: Vec<&[f64]> = regressors.iter().map(Vec::as_slice).collect();
         Ok((fit(&references, u, None)?, shaped))
     }
@@ -266,7 +263,15 @@ fn noiseless_example() -> f64 {
     // By exact integration over the gate.
     let cube = |z: f64| z * z * z;
     let average = |z: f64| (cube(z + 1e-4) - cube(z - 1e-4)) / (3.0 * 2e-4);
-    let mut rule = ProfileFit { sweeps: vec![], positions: vec![], times: vec![], gate: 0.1, order: 2, drift: false, decisions: vec![] };
+    let mut rule = ProfileFit {
+        sweeps: vec![],
+        positions: vec![],
+        times: vec![],
+        gate: 0.1,
+        order: 2,
+        drift: false,
+        decisions: vec![],
+    };
     let (mut v, mut u) = (Vec::new(), Vec::new());
     for sweep in [1i64, -1] {
         for index in 0..gates {
