@@ -2,6 +2,9 @@
 
 use crate::block::Engine;
 use crate::graph::trail;
+use crate::quantity::choose_unit;
+use crate::report::change::printed_ratio;
+pub use crate::report::change::{InputChange, ValueChange};
 use crate::report::listing::list_results;
 use serde::{Deserialize, Serialize};
 use std::collections::{BTreeMap, BTreeSet};
@@ -44,37 +47,6 @@ pub fn read_results(bytes: &[u8]) -> Option<Quantities> {
 /// The quantities an engine has built so far.
 pub fn present_results(engine: &Engine) -> Quantities {
     read_results(list_results(engine).json().as_bytes()).unwrap_or_default()
-}
-
-/// A stated value, reading, constant or column that changed.
-#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
-pub struct InputChange {
-    pub name: String,
-    pub label: String,
-    pub old: String,
-    pub new: String,
-    /// File and line of the new one, else of the old.
-    pub place: String,
-}
-
-/// A computed value that changed.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct ValueChange {
-    pub name: String,
-    pub label: String,
-    /// As printed, value and standard uncertainty.
-    pub old: String,
-    pub new: String,
-    /// New less old, in the unit of `si_unit`; none where one of them is missing.
-    pub difference: Option<f64>,
-    pub si_unit: String,
-    /// The difference in old standard uncertainties.
-    pub relative_to_uncertainty: Option<f64>,
-    /// New standard uncertainty over old.
-    pub uncertainty_ratio: Option<f64>,
-    pub printed_digits_change: bool,
-    /// Changed inputs it rests on.
-    pub because_of: Vec<String>,
 }
 
 /// What changed.
@@ -132,7 +104,7 @@ impl Difference {
                 }
                 continue;
             }
-            let change = value_change(old, new, because_of(engine, name, &inputs));
+            let change = value_change(engine, old, new, because_of(engine, name, &inputs));
             match is_result {
                 true => reported.push(change),
                 false if change.printed_digits_change => others.push(change),
@@ -141,6 +113,37 @@ impl Difference {
         }
         (difference.results, difference.others) = (reported, others);
         difference
+    }
+
+    /// Results that one of two reports states and the other does not.
+    pub fn note_reported(&mut self, then: (&[String], &Quantities), now: (&[String], &Quantities)) {
+        let added = now.0.iter().filter(|name| !then.0.contains(name)).filter_map(|name| now.1.get(name));
+        let added = added.map(|one| stated_in_one(one, "not reported".into(), one.printed.clone()));
+        let dropped = then.0.iter().filter(|name| !now.0.contains(name)).filter_map(|name| then.1.get(name));
+        let dropped = dropped.map(|one| stated_in_one(one, one.printed.clone(), "not reported".into()));
+        let all: Vec<ValueChange> = added.chain(dropped).collect();
+        for list in [&mut self.results, &mut self.others] {
+            list.retain(|one| !all.iter().any(|other| other.name == one.name));
+        }
+        self.unchanged.retain(|name| !all.iter().any(|other| other.name == *name));
+        self.results.extend(all);
+    }
+}
+
+fn stated_in_one(one: &Listed, old: String, new: String) -> ValueChange {
+    ValueChange {
+        name: one.name.clone(),
+        label: one.label.clone(),
+        old,
+        new,
+        difference: None,
+        si_unit: one.si_unit.clone(),
+        printed_difference: "—".into(),
+        relative_to_uncertainty: None,
+        printed_relative: "—".into(),
+        uncertainty_ratio: None,
+        printed_digits_change: true,
+        because_of: Vec::new(),
     }
 }
 
@@ -204,7 +207,19 @@ fn input_change(old: &Listed, new: Option<&Listed>) -> InputChange {
     }
 }
 
-fn value_change(old: &Listed, new: Option<&Listed>, because_of: Vec<String>) -> ValueChange {
+/// A difference in a unit that suits it, to two digits.
+fn printed(engine: &Engine, name: &str, difference: f64) -> String {
+    let graph = engine.graph();
+    let unit = graph.find(name).and_then(|id| graph.node(id).name.as_ref()).map(|name| name.unit.clone());
+    let Some(unit) = unit else { return "—".into() };
+    if difference == 0.0 {
+        return format!("0 {}", unit.text()).trim_end().to_string();
+    }
+    let unit = choose_unit(difference.abs(), &unit);
+    engine.laboratory.style.difference(difference, &unit, 2).unwrap_or_else(|_| "—".into())
+}
+
+fn value_change(engine: &Engine, old: &Listed, new: Option<&Listed>, because_of: Vec<String>) -> ValueChange {
     let difference = new.and_then(|new| Some(new.value? - old.value?));
     let old_uncertainty = old.standard_uncertainty.filter(|u| *u > 0.0);
     ValueChange {
@@ -212,8 +227,10 @@ fn value_change(old: &Listed, new: Option<&Listed>, because_of: Vec<String>) -> 
         label: old.label.clone(),
         old: old.printed.clone(),
         new: new.map_or_else(|| "none".into(), |new| new.printed.clone()),
+        printed_difference: difference.map_or_else(|| "—".into(), |one| printed(engine, &old.name, one)),
         difference,
         si_unit: old.si_unit.clone(),
+        printed_relative: printed_ratio(difference.zip(old_uncertainty).map(|(difference, u)| difference / u)),
         relative_to_uncertainty: difference.zip(old_uncertainty).map(|(difference, u)| difference / u),
         uncertainty_ratio: new
             .and_then(|new| new.standard_uncertainty)
