@@ -812,11 +812,11 @@ fn states(folder: &Path) -> Vec<String> {
 }
 
 /// Corrects, lodges, and has the report authorised as it then stands.
-fn corrected(folder: &Path, home: &str, name: &str, record: &str, old: &str, new: &str) {
-    correct(folder, home, name, record, old, new);
-    printed(&mut program(folder, "2041-05-26", &["lodge", "--as", "duty metrologist"]));
+fn corrected(folder: &Path, day: &str, home: &str, name: &str, old: &str, new: &str) {
+    correct(folder, home, name, RAW, old, new);
+    printed(&mut program(folder, day, &["lodge", "--as", "duty metrologist"]));
     for who in ["second metrologist", "technical manager"] {
-        printed(&mut program(folder, "2041-05-26", &["authorise", REPORT, "--as", who]));
+        printed(&mut program(folder, day, &["authorise", REPORT, "--as", who]));
     }
 }
 
@@ -831,7 +831,7 @@ fn an_amendment_and_a_replacement_state_every_value_that_changed() {
     let (status, said) = told(&mut follow("amend", "0001"));
     assert!(status == Some(1) && said.contains("already_issued"), "{said}");
 
-    corrected(&folder, "campaigns/two-kilograms/corrections.md", "C1", RAW, MISREAD.0, MISREAD.1);
+    corrected(&folder, "2041-05-26", "campaigns/two-kilograms/corrections.md", "C1", MISREAD.0, MISREAD.1);
     let (status, said) = told(&mut program(&folder, "2041-05-27", &["issue", REPORT, "--as", "technical manager"]));
     assert!(
         status == Some(1) && said.contains("already_issued") && said.contains("amendment or a replacement"),
@@ -866,7 +866,7 @@ fn an_amendment_and_a_replacement_state_every_value_that_changed() {
     let (status, said) = told(&mut follow("amend", "0001"));
     assert!(status == Some(1) && said.contains("report_unknown") && said.contains("name 0002"), "{said}");
 
-    corrected(&folder, "campaigns/two-kilograms/more-corrections.md", "C2", RAW, "-147.68257", "-147.68275");
+    corrected(&folder, "2041-05-27", "campaigns/two-kilograms/more-corrections.md", "C2", "-147.68257", "-147.68275");
     printed(&mut follow("replace", "0002"));
     assert_eq!(states(&folder), ["0001 replaced 0003", "0002 replaced 0003", "0003 issued null"]);
     let (status, found) = audit(&folder, "register/reports/0003.pdf");
