@@ -853,7 +853,8 @@ fn an_amendment_and_a_replacement_state_every_value_that_changed() {
             .iter()
             .all(|name| then[name.as_str().expect("text")] == now[name.as_str().expect("text")])
     );
-    assert!(texts(&change["inputs"], "name").contains(&"W1.indications".to_string()), "{change}");
+    assert_eq!(texts(&change["inputs"], "name"), ["W1.indications"], "{change}");
+    assert_eq!((&change["inputs"][0]["old"], &change["inputs"][0]["new"]), (&MISREAD.0.into(), &MISREAD.1.into()));
     for number in ["0001", "0002"] {
         let (_, found) = audit(&folder, &format!("register/reports/{number}.pdf"));
         assert_eq!(

@@ -1,6 +1,7 @@
 //! What changed between two lists of results: inputs, values, printed digits, and what did not.
 
 use crate::block::Engine;
+use crate::block::correction::Correction;
 use crate::graph::trail;
 use crate::quantity::choose_unit;
 use crate::report::change::printed_ratio;
@@ -49,6 +50,26 @@ pub fn present_results(engine: &Engine) -> Quantities {
     read_results(list_results(engine).json().as_bytes()).unwrap_or_default()
 }
 
+/// What is known to have been touched since.
+#[derive(Debug, Clone, Default)]
+pub struct Touched {
+    /// Files whose bytes are others.
+    pub files: BTreeSet<String>,
+    /// Names of corrections made since.
+    pub corrections: BTreeSet<String>,
+}
+
+impl Touched {
+    /// The corrections made since that touch a quantity.
+    fn corrections_of<'e>(&self, engine: &'e Engine, name: &str) -> Vec<&'e Correction> {
+        let graph = engine.graph();
+        let Some(id) = graph.find(name) else { return Vec::new() };
+        let mut found = engine.corrections_of(&graph.node(id).origin);
+        found.retain(|one| self.corrections.contains(&one.name));
+        found
+    }
+}
+
 /// What changed.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
 pub struct Difference {
@@ -69,22 +90,22 @@ impl Difference {
         self.inputs.is_empty() && self.superseded.is_empty() && self.results.is_empty() && self.others.is_empty()
     }
 
-    /// Takes out of `then` and `now` what differs. `results` are the reported ones; `changed_files` are raw data and
-    /// records whose text that is read changed; `engine` has built what `now` lists.
+    /// Takes out of `then` and `now` what differs. `results` are the reported ones; `engine` has built what `now` lists.
     pub fn between(
         then: &Quantities,
         now: &Quantities,
         results: &[String],
-        changed_files: &BTreeSet<String>,
+        touched: &Touched,
         engine: &Engine,
     ) -> Difference {
         let mut difference = Difference::default();
         for (name, old) in then.iter().filter(|(_, old)| old.origin.what != "computed") {
             let new = now.get(name);
-            if is_same_input(old, new, changed_files) {
+            let corrections = touched.corrections_of(engine, name);
+            if is_same_input(old, new, touched) && (old.value.is_some() || corrections.is_empty()) {
                 continue;
             }
-            let change = input_change(old, new);
+            let change = input_change(old, new, &corrections);
             match is_superseded(old, engine) {
                 true => difference.superseded.push(change),
                 false => difference.inputs.push(change),
@@ -175,10 +196,10 @@ fn same_numbers(old: &Listed, new: &Listed) -> bool {
     bits(old.value) == bits(new.value) && bits(old.standard_uncertainty) == bits(new.standard_uncertainty)
 }
 
-fn is_same_input(old: &Listed, new: Option<&Listed>, changed_files: &BTreeSet<String>) -> bool {
+fn is_same_input(old: &Listed, new: Option<&Listed>, touched: &Touched) -> bool {
     let Some(new) = new else { return false };
     let is_column = old.value.is_none();
-    let file_changed = old.origin.file.as_ref().is_some_and(|file| changed_files.contains(file));
+    let file_changed = old.origin.file.as_ref().is_some_and(|file| touched.files.contains(file));
     same_numbers(old, new) && old.printed == new.printed && !(is_column && file_changed)
 }
 
@@ -195,8 +216,20 @@ fn words(one: &Listed) -> String {
     one.typed.clone().unwrap_or_else(|| one.printed.clone())
 }
 
-fn input_change(old: &Listed, new: Option<&Listed>) -> InputChange {
+fn input_change(old: &Listed, new: Option<&Listed>, corrections: &[&Correction]) -> InputChange {
     let origin = new.map_or(&old.origin, |new| &new.origin);
+    if let (None, [first, ..]) = (old.value, corrections) {
+        let join =
+            |text: fn(&Correction) -> &str| corrections.iter().map(|one| text(one)).collect::<Vec<_>>().join("; ");
+        let lines: Vec<String> = corrections.iter().map(|one| one.line.to_string()).collect();
+        return InputChange {
+            name: old.name.clone(),
+            label: old.label.clone(),
+            old: join(|one| &one.old),
+            new: join(|one| &one.new),
+            place: format!("{}, line {}, by {}", first.record, lines.join(", "), join(|one| &one.name)),
+        };
+    }
     let (was, is) = (words(old), new.map_or_else(|| "none".into(), words));
     InputChange {
         name: old.name.clone(),
@@ -208,11 +241,13 @@ fn input_change(old: &Listed, new: Option<&Listed>) -> InputChange {
 }
 
 /// A difference in a unit that suits it, to two digits.
-fn printed(engine: &Engine, name: &str, difference: f64) -> String {
+fn printed(engine: &Engine, name: &str, difference: f64, uncertainty: Option<f64>) -> String {
+    // Sums taken in another order differ in their last bits.
+    let is_rounding = uncertainty.is_some_and(|u| difference.abs() < 1e-9 * u);
     let graph = engine.graph();
     let unit = graph.find(name).and_then(|id| graph.node(id).name.as_ref()).map(|name| name.unit.clone());
     let Some(unit) = unit else { return "—".into() };
-    if difference == 0.0 {
+    if difference == 0.0 || is_rounding {
         return format!("0 {}", unit.text()).trim_end().to_string();
     }
     let unit = choose_unit(difference.abs(), &unit);
@@ -227,7 +262,8 @@ fn value_change(engine: &Engine, old: &Listed, new: Option<&Listed>, because_of:
         label: old.label.clone(),
         old: old.printed.clone(),
         new: new.map_or_else(|| "none".into(), |new| new.printed.clone()),
-        printed_difference: difference.map_or_else(|| "—".into(), |one| printed(engine, &old.name, one)),
+        printed_difference: difference
+            .map_or_else(|| "—".into(), |one| printed(engine, &old.name, one, old_uncertainty)),
         difference,
         si_unit: old.si_unit.clone(),
         printed_relative: printed_ratio(difference.zip(old_uncertainty).map(|(difference, u)| difference / u)),

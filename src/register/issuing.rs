@@ -6,6 +6,7 @@
 
 use super::audit::attached;
 use super::authorise::{Duties, authorisations};
+use super::consequences::touched;
 use super::difference::{Difference, read_results};
 use super::entry::{Act, Entry, FileHash, IssuedReport, UsedBlock, written_time};
 use super::ledger::{Ledger, archive_path, staged_path};
@@ -155,7 +156,7 @@ fn change(
     let then = read_results(&attached(&archived, RESULTS)?).ok_or_else(unreadable)?;
     let now = dossier.files.get(RESULTS).and_then(|bytes| read_results(bytes)).ok_or_else(unreadable)?;
     let files = changed_files(issued, dossier);
-    let touched = files.iter().cloned().chain(corrected(engine, issued)).collect();
+    let touched = touched(engine, issued);
     let mut difference = Difference::between(&then, &now, &issued.results, &touched, engine);
     difference.note_reported((&issued.results, &then), (&duties.results, &now));
     Ok(Change {
@@ -176,12 +177,6 @@ fn changed_files(issued: &IssuedReport, dossier: &Dossier) -> Vec<String> {
         dossier.contents.files.iter().filter_map(|file| Some((file.path.as_deref()?, file.sha256.as_str()))).collect();
     let all: BTreeSet<&str> = then.keys().chain(now.keys()).copied().collect();
     all.into_iter().filter(|path| then.get(path) != now.get(path)).map(String::from).collect()
-}
-
-/// Files that a correction touches which the earlier report did not rest on.
-fn corrected(engine: &Engine, issued: &IssuedReport) -> Vec<String> {
-    let is_new = |path: &str| !issued.files.iter().any(|file| file.path == path);
-    engine.corrections().iter().filter(|one| is_new(&one.stated_in)).map(|one| one.record.clone()).collect()
 }
 
 fn issued_act(
