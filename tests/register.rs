@@ -929,3 +929,97 @@ fn what_is_done_to_register_archive_and_report_is_named_by_the_audit() {
     std::fs::write(&pdf, &report).expect("written");
     assert_eq!(audit(&folder, "client.pdf").0, Some(0));
 }
+
+/// The example with every step up to the issue made in memory: its files, and the store with register and archive.
+fn issued_in_memory() -> (std::collections::BTreeMap<String, Vec<u8>>, MemoryStore, Register) {
+    use libripens::register::issuing::{Order, issue};
+    use libripens::register::lodge::{files_to_lodge, lodge};
+    let files = example_files();
+    let intake = libripens::intake::MemoryIntake::with(files.clone());
+    let engine = libripens::block::Engine::read(&intake, Some(example::CAMPAIGN)).expect("a folder in memory");
+    let store = MemoryStore::at(at(0));
+    let mut ledger = Ledger::open(&store).expect("an empty register");
+    let all = files_to_lodge(&engine, "").expect("files");
+    lodge(&mut ledger, &all, &[], "duty metrologist", "as made").expect("lodged");
+    let seal = example::example_report().dossier.seal.clone();
+    for (duty, who) in [(Duty::Review, "second metrologist"), (Duty::Authorisation, "technical manager")] {
+        let act = Act::Authorised { report: REPORT.into(), seal: seal.clone(), duty };
+        ledger.enter(act, who, "").expect("an entry");
+    }
+    let order = Order { report: REPORT, who: "technical manager", why: "", kind: ReportKind::Original, of: None };
+    issue(&mut ledger, &engine, &order).unwrap_or_else(|| panic!("{:#?}", engine.complaints().list));
+    let register = ledger.register.clone();
+    (files, store, register)
+}
+
+/// The text with the last digit of its first number made another one.
+fn other_number(text: &str) -> Option<String> {
+    let start = text.find(|c: char| c.is_ascii_digit())?;
+    let end = text[start..].find(|c: char| !c.is_ascii_digit() && c != '.').map_or(text.len(), |length| start + length);
+    let at = text[start..end].rfind(|c: char| c.is_ascii_digit())? + start;
+    let digit = text[at..=at].parse::<u32>().ok()?;
+    Some(format!("{}{}{}", &text[..at], (digit + 1) % 10, &text[at + 1..]))
+}
+
+#[test]
+fn every_input_changed_once_is_found_by_consequences() {
+    use libripens::register::consequences::consequences;
+    use libripens::register::store::Store;
+    let (files, store, register) = issued_in_memory();
+    let archived = |issued: &IssuedReport, name: &str| {
+        let path = libripens::register::ledger::archive_path(&issued.number);
+        let bytes = store.read(&path).expect("the archive").expect("the report");
+        libripens::register::audit::attached(&bytes, name)
+    };
+    let finding = |files: std::collections::BTreeMap<String, Vec<u8>>| {
+        let intake = libripens::intake::MemoryIntake::with(files);
+        let mut found = consequences(&intake, &register, &archived, &mut |_, _| {}).expect("a folder in memory");
+        assert_eq!(found.len(), 1);
+        found.remove(0)
+    };
+    let untouched = finding(files.clone());
+    assert!(untouched.proven_by_hash && untouched.is_unchanged(), "{untouched:#?}");
+
+    let results = &example::example_report().dossier.files["results.json"];
+    let results: serde_json::Value = serde_json::from_slice(results).expect("JSON");
+    let (mut changed, mut left_out) = (0, Vec::new());
+    for one in results["quantities"].as_array().expect("a list") {
+        let (Some(typed), Some(file), Some(line)) =
+            (one["typed"].as_str(), one["origin"]["file"].as_str(), one["origin"]["line"].as_u64())
+        else {
+            continue;
+        };
+        let name = one["name"].as_str().expect("a name");
+        let text = String::from_utf8(files[file].clone()).expect("text");
+        let mut lines: Vec<String> = text.split('\n').map(String::from).collect();
+        let stands = &mut lines[line as usize - 1];
+        let Some(other) = other_number(typed).filter(|_| stands.contains(typed)) else {
+            left_out.push(name.to_string());
+            continue;
+        };
+        *stands = stands.replacen(typed, &other, 1);
+        let mut with = files.clone();
+        with.insert(file.into(), lines.join("\n").into_bytes());
+        let found = finding(with);
+        assert!(!found.is_unchanged() && found.is_open(), "{name}: {typed} to {other} was missed");
+        assert_eq!(found.files_changed, [file], "{name}");
+        assert!(
+            found.difference.inputs.iter().any(|input| input.name == name),
+            "{name}: {typed} to {other}\n{found:#?}"
+        );
+        changed += 1;
+    }
+    assert!(changed >= 20 && left_out.len() * 5 < changed, "{changed} changed, left out {left_out:?}");
+    for (path, bytes) in files.iter().filter(|(path, _)| path.contains("/raw/day-")) {
+        let text = String::from_utf8(bytes.clone()).expect("text");
+        let row = text.lines().nth(20).expect("a row");
+        let mut with = files.clone();
+        let other = other_number(&row[row.find('-').expect("a reading")..]).expect("a number");
+        let start = row.find('-').expect("a reading");
+        with.insert(path.clone(), text.replacen(row, &format!("{}{other}", &row[..start]), 1).into_bytes());
+        if with[path] != *bytes {
+            let found = finding(with);
+            assert!(found.files_changed == [path.clone()] && found.is_open(), "{path}: {found:#?}");
+        }
+    }
+}
