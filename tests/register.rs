@@ -788,3 +788,238 @@ fn a_run_added_since_is_found() {
     assert_eq!((status, &found[0]["runs_added"]), (Some(1), &serde_json::json!(["W8"])), "{found}");
     assert!(found[0]["difference"]["results"].as_array().expect("a list").is_empty(), "{found}");
 }
+
+/// A file attached to an archived report.
+fn attached(folder: &Path, number: &str, name: &str) -> serde_json::Value {
+    let pdf = std::fs::read(folder.join(format!("register/reports/{number}.pdf"))).expect("the archived report");
+    let bytes = libripens::register::audit::attached(&pdf, name).expect("an attached file");
+    serde_json::from_slice(&bytes).expect("JSON")
+}
+
+/// Printed values of everything computed, by name.
+fn printed_values(folder: &Path, number: &str) -> std::collections::BTreeMap<String, String> {
+    let results = attached(folder, number, "results.json");
+    let list = results["quantities"].as_array().expect("a list").iter();
+    let computed = list.filter(|one| one["origin"]["what"] == "computed");
+    let text = |value: &serde_json::Value| value.as_str().expect("text").to_string();
+    computed.map(|one| (text(&one["name"]), text(&one["printed"]))).collect()
+}
+
+fn states(folder: &Path) -> Vec<String> {
+    let listed = reports(folder);
+    let state = |one: &serde_json::Value| format!("{} {} {}", one["number"], one["state"], one["by"]).replace('"', "");
+    listed.as_array().expect("a list").iter().map(state).collect()
+}
+
+/// Corrects, lodges, and has the report authorised as it then stands.
+fn corrected(folder: &Path, day: &str, home: &str, name: &str, old: &str, new: &str) {
+    correct(folder, home, name, RAW, old, new);
+    printed(&mut program(folder, day, &["lodge", "--as", "duty metrologist"]));
+    for who in ["second metrologist", "technical manager"] {
+        printed(&mut program(folder, day, &["authorise", REPORT, "--as", who]));
+    }
+}
+
+#[test]
+fn an_amendment_and_a_replacement_state_every_value_that_changed() {
+    let folder = authorised("follow");
+    printed(&mut issue(&folder, REPORT));
+    let follow = |how: &str, number: &str| {
+        let why = "a reading of the first day was written down with exchanged digits";
+        program(&folder, "2041-05-27", &[how, number, "--as", "technical manager", "--why", why])
+    };
+    let (status, said) = told(&mut follow("amend", "0001"));
+    assert!(status == Some(1) && said.contains("already_issued"), "{said}");
+
+    corrected(&folder, "2041-05-26", "campaigns/two-kilograms/corrections.md", "C1", MISREAD.0, MISREAD.1);
+    let (status, said) = told(&mut program(&folder, "2041-05-27", &["issue", REPORT, "--as", "technical manager"]));
+    assert!(
+        status == Some(1) && said.contains("already_issued") && said.contains("amendment or a replacement"),
+        "{said}"
+    );
+    printed(&mut follow("amend", "0001"));
+    assert_eq!(states(&folder), ["0001 amended 0002", "0002 issued null"]);
+    let (then, now) = (printed_values(&folder, "0001"), printed_values(&folder, "0002"));
+    let change = attached(&folder, "0002", "issue.json")["change"].clone();
+    let stated: Vec<String> = ["results", "others"].iter().flat_map(|list| texts(&change[list], "name")).collect();
+    let changed: Vec<&String> =
+        now.iter().filter(|(name, value)| then.get(*name) != Some(*value)).map(|(name, _)| name).collect();
+    assert!(changed.len() > 3, "{changed:?}");
+    assert!(changed.iter().all(|name| stated.contains(name)), "{changed:?} are not all among {stated:?}");
+    assert!(
+        change["unchanged"]
+            .as_array()
+            .expect("a list")
+            .iter()
+            .all(|name| then[name.as_str().expect("text")] == now[name.as_str().expect("text")])
+    );
+    assert_eq!(texts(&change["inputs"], "name"), ["W1.indications"], "{change}");
+    assert_eq!((&change["inputs"][0]["old"], &change["inputs"][0]["new"]), (&MISREAD.0.into(), &MISREAD.1.into()));
+    for number in ["0001", "0002"] {
+        let (_, found) = audit(&folder, &format!("register/reports/{number}.pdf"));
+        assert_eq!(
+            (check(&found, "register").0, check(&found, "status").0, check(&found, "pages").0),
+            ("passed", "passed", "passed"),
+            "{found}"
+        );
+    }
+    // Of the report amended already, another amendment would be a second present one.
+    let (status, said) = told(&mut follow("amend", "0001"));
+    assert!(status == Some(1) && said.contains("report_unknown") && said.contains("name 0002"), "{said}");
+
+    corrected(&folder, "2041-05-27", "campaigns/two-kilograms/more-corrections.md", "C2", "-147.68257", "-147.68275");
+    printed(&mut follow("replace", "0002"));
+    assert_eq!(states(&folder), ["0001 replaced 0003", "0002 replaced 0003", "0003 issued null"]);
+    let (status, found) = audit(&folder, "register/reports/0003.pdf");
+    assert_eq!(status, Some(0), "{found}");
+    let (status, found) = audit(&folder, "register/reports/0001.pdf");
+    assert_eq!((status, check(&found, "status").0), (Some(1), "failed"), "{found}");
+    assert!(check(&found, "status").1.contains("replaced by 0003"));
+    assert_eq!(findings(&folder).0, Some(0));
+    printed(&mut program(&folder, "2041-06-01", &["register", "--verify"]));
+}
+
+/// The end of the report's own words about the register, changed by one who has the folder and the report.
+#[test]
+fn what_is_done_to_register_archive_and_report_is_named_by_the_audit() {
+    let folder = authorised("tampered");
+    printed(&mut issue(&folder, REPORT));
+    let register = folder.join(REGISTER);
+    let whole = std::fs::read_to_string(&register).expect("the register");
+    let pdf = folder.join("register/reports/0001.pdf");
+    let report = std::fs::read(&pdf).expect("the report");
+    std::fs::write(folder.join("client.pdf"), &report).expect("written");
+    let failed = |what: &str, says: &str| {
+        let (status, found) = audit(&folder, "client.pdf");
+        assert_eq!((status, check(&found, what).0), (Some(1), "failed"), "{says}: {found}");
+        assert!(check(&found, what).1.contains(says), "{says}: {found}");
+    };
+    let lines: Vec<&str> = whole.lines().collect();
+    // The entry of the issue cut off; the register is short of what the report saw; the time of the issue changed.
+    std::fs::write(&register, lines[..lines.len() - 1].join("\n") + "\n").expect("written");
+    failed("register", "No report 0001 was ever issued");
+    let (status, said) = told(&mut program(&folder, "2041-06-01", &["register", "--verify"]));
+    assert!(status == Some(1) && said.contains("its end was cut off"), "{said}");
+    std::fs::write(&register, lines[..1].join("\n") + "\n").expect("written");
+    failed("register", "at its end are missing");
+    let redated = whole.replace("2041-05-21T10:00:00Z", "2041-05-21T10:00:01Z");
+    std::fs::write(&register, redated).expect("written");
+    failed("register", "has the time 2041-05-21T10:00:01Z, the report 2041-05-21T10:00:00Z");
+    // Another file under the number, with the register made to fit.
+    let hash = libripens::report::dossier::sha256(&report);
+    std::fs::write(&register, whole.replace(&hash, &"0".repeat(64))).expect("written");
+    failed("register", "is bound to the file 0000000000000000");
+    std::fs::write(&register, &whole).expect("written");
+    // A record of the folder changed behind the report's back.
+    let order = folder.join("campaigns/two-kilograms/order.md");
+    let text = std::fs::read_to_string(&order).expect("a record");
+    std::fs::write(&order, text.replace("Market Hill", "Market Lane")).expect("written");
+    failed("records", "order.md was changed since");
+    std::fs::write(&order, &text).expect("written");
+    // The archived file itself.
+    let mut other = report.clone();
+    let middle = other.len() / 2;
+    other[middle] ^= 1;
+    std::fs::write(&pdf, &other).expect("written");
+    let (status, said) = told(&mut program(&folder, "2041-06-01", &["register", "--verify"]));
+    assert!(status == Some(1) && said.contains("0001.pdf is not the file that was issued"), "{said}");
+    let send = ["send", "0001", "--to", "HARROWDALE", "--as", "duty metrologist"];
+    let (status, said) = told(&mut program(&folder, "2041-06-01", &send));
+    assert!(status == Some(2) && said.contains("it is not sent"), "{said}");
+    std::fs::write(&pdf, &report).expect("written");
+    assert_eq!(audit(&folder, "client.pdf").0, Some(0));
+}
+
+/// The example with every step up to the issue made in memory: its files, and the store with register and archive.
+fn issued_in_memory() -> (std::collections::BTreeMap<String, Vec<u8>>, MemoryStore, Register) {
+    use libripens::register::issuing::{Order, issue};
+    use libripens::register::lodge::{files_to_lodge, lodge};
+    let files = example_files();
+    let intake = libripens::intake::MemoryIntake::with(files.clone());
+    let engine = libripens::block::Engine::read(&intake, Some(example::CAMPAIGN)).expect("a folder in memory");
+    let store = MemoryStore::at(at(0));
+    let mut ledger = Ledger::open(&store).expect("an empty register");
+    let all = files_to_lodge(&engine, "").expect("files");
+    lodge(&mut ledger, &all, &[], "duty metrologist", "as made").expect("lodged");
+    let seal = example::example_report().dossier.seal.clone();
+    for (duty, who) in [(Duty::Review, "second metrologist"), (Duty::Authorisation, "technical manager")] {
+        let act = Act::Authorised { report: REPORT.into(), seal: seal.clone(), duty };
+        ledger.enter(act, who, "").expect("an entry");
+    }
+    let order = Order { report: REPORT, who: "technical manager", why: "", kind: ReportKind::Original, of: None };
+    issue(&mut ledger, &engine, &order).unwrap_or_else(|| panic!("{:#?}", engine.complaints().list));
+    let register = ledger.register.clone();
+    (files, store, register)
+}
+
+/// The text with the last digit of its first number made another one.
+fn other_number(text: &str) -> Option<String> {
+    let start = text.find(|c: char| c.is_ascii_digit())?;
+    let end = text[start..].find(|c: char| !c.is_ascii_digit() && c != '.').map_or(text.len(), |length| start + length);
+    let at = text[start..end].rfind(|c: char| c.is_ascii_digit())? + start;
+    let digit = text[at..=at].parse::<u32>().ok()?;
+    Some(format!("{}{}{}", &text[..at], (digit + 1) % 10, &text[at + 1..]))
+}
+
+#[test]
+fn every_input_changed_once_is_found_by_consequences() {
+    use libripens::register::consequences::consequences;
+    use libripens::register::store::Store;
+    let (files, store, register) = issued_in_memory();
+    let archived = |issued: &IssuedReport, name: &str| {
+        let path = libripens::register::ledger::archive_path(&issued.number);
+        let bytes = store.read(&path).expect("the archive").expect("the report");
+        libripens::register::audit::attached(&bytes, name)
+    };
+    let finding = |files: std::collections::BTreeMap<String, Vec<u8>>| {
+        let intake = libripens::intake::MemoryIntake::with(files);
+        let mut found = consequences(&intake, &register, &archived, &mut |_, _| {}).expect("a folder in memory");
+        assert_eq!(found.len(), 1);
+        found.remove(0)
+    };
+    let untouched = finding(files.clone());
+    assert!(untouched.proven_by_hash && untouched.is_unchanged(), "{untouched:#?}");
+
+    let results = &example::example_report().dossier.files["results.json"];
+    let results: serde_json::Value = serde_json::from_slice(results).expect("JSON");
+    let (mut changed, mut left_out) = (0, Vec::new());
+    for one in results["quantities"].as_array().expect("a list") {
+        let (Some(typed), Some(file), Some(line)) =
+            (one["typed"].as_str(), one["origin"]["file"].as_str(), one["origin"]["line"].as_u64())
+        else {
+            continue;
+        };
+        let name = one["name"].as_str().expect("a name");
+        let text = String::from_utf8(files[file].clone()).expect("text");
+        let mut lines: Vec<String> = text.split('\n').map(String::from).collect();
+        let stands = &mut lines[line as usize - 1];
+        let Some(other) = other_number(typed).filter(|_| stands.contains(typed)) else {
+            left_out.push(name.to_string());
+            continue;
+        };
+        *stands = stands.replacen(typed, &other, 1);
+        let mut with = files.clone();
+        with.insert(file.into(), lines.join("\n").into_bytes());
+        let found = finding(with);
+        assert!(!found.is_unchanged() && found.is_open(), "{name}: {typed} to {other} was missed");
+        assert_eq!(found.files_changed, [file], "{name}");
+        assert!(
+            found.difference.inputs.iter().any(|input| input.name == name),
+            "{name}: {typed} to {other}\n{found:#?}"
+        );
+        changed += 1;
+    }
+    assert!(changed >= 20 && left_out.len() * 5 < changed, "{changed} changed, left out {left_out:?}");
+    for (path, bytes) in files.iter().filter(|(path, _)| path.contains("/raw/day-")) {
+        let text = String::from_utf8(bytes.clone()).expect("text");
+        let row = text.lines().nth(20).expect("a row");
+        let mut with = files.clone();
+        let other = other_number(&row[row.find('-').expect("a reading")..]).expect("a number");
+        let start = row.find('-').expect("a reading");
+        with.insert(path.clone(), text.replacen(row, &format!("{}{other}", &row[..start]), 1).into_bytes());
+        if with[path] != *bytes {
+            let found = finding(with);
+            assert!(found.files_changed == [path.clone()] && found.is_open(), "{path}: {found:#?}");
+        }
+    }
+}

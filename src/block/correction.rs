@@ -53,6 +53,20 @@ pub struct Correction {
 }
 
 impl Correction {
+    /// Whether the corrected text stands under this head of a file of columns; also where the heads cannot be told.
+    pub fn is_in_column(&self, text: &[u8], head: &str) -> bool {
+        let text = String::from_utf8_lossy(text);
+        let delimiter = |c: char| matches!(c, ',' | ';' | '\t');
+        let mut lines = text.lines().filter(|line| !line.starts_with('#'));
+        let heads: Vec<&str> = lines.next().unwrap_or_default().split(delimiter).map(str::trim).collect();
+        let Some(wanted) = heads.iter().position(|one| *one == head) else { return true };
+        let line = text.get(self.range.0..self.range.1).unwrap_or_default();
+        let Some(start) = line.find(&self.new) else { return true };
+        let first = line[..start].matches(delimiter).count();
+        let last = first + self.new.matches(delimiter).count();
+        (first..=last).contains(&wanted)
+    }
+
     /// Both texts, with who, when and why.
     pub fn words(&self) -> String {
         let date = self.date.map(|date| date.to_string()).unwrap_or_default();

@@ -242,7 +242,9 @@ impl<'i> Engine<'i> {
                 let sources = self.sources.borrow();
                 let file = sources.file(column.file);
                 let touches = |one: &&Correction| {
-                    one.record == file.path && column.lines.contains(&(file.line_of(one.range.0 as u32) as u32))
+                    one.record == file.path
+                        && column.lines.contains(&(file.line_of(one.range.0 as u32) as u32))
+                        && one.is_in_column(&file.bytes, &column.column)
                 };
                 self.corrections().iter().filter(touches).collect()
             }

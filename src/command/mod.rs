@@ -11,6 +11,7 @@ mod decide;
 mod disk;
 mod examine;
 mod folder;
+mod follow;
 mod issue;
 mod lodge;
 mod reduce;
@@ -73,6 +74,10 @@ enum Command {
     Issue(issue::Issue),
     /// Record to whom an issued report went
     Send(send::Send),
+    /// Issue an amendment to a report: what changed, valid together with it
+    Amend(follow::Amend),
+    /// Issue a complete new report in place of another
+    Replace(follow::Replace),
     /// Withdraw an issued report
     Withdraw(withdraw::Withdraw),
     /// Find which issued reports the present records would change
@@ -127,6 +132,8 @@ pub fn run() -> ExitCode {
         Command::Authorise(command) => command.run(),
         Command::Issue(command) => command.run(),
         Command::Send(command) => command.run(),
+        Command::Amend(command) => command.run(),
+        Command::Replace(command) => command.run(),
         Command::Withdraw(command) => command.run(),
         Command::Consequences(command) => command.run(),
         Command::Decide(command) => command.run(),

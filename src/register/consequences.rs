@@ -1,7 +1,7 @@
 //! Which issued reports the present records would change, and by how much.
 
 use super::chain::Register;
-use super::difference::{Difference, Quantities, present_results, read_results};
+use super::difference::{Difference, Quantities, Touched, present_results, read_results};
 use super::entry::{Act, Decision, Entry, IssuedReport};
 use super::issuing::seen;
 use super::requirements::runs_of;
@@ -98,8 +98,8 @@ pub fn consequences(
             finding.runs_added = runs_added(&engine, issued);
             match then {
                 Ok(then) => {
-                    let files = finding.files_changed.iter().cloned().collect();
-                    finding.difference = Difference::between(&then, &now, &issued.results, &files, &engine);
+                    let touched = touched(&engine, issued);
+                    finding.difference = Difference::between(&then, &now, &issued.results, &touched, &engine);
                 }
                 Err(reason) => finding.failed = Some(reason),
             }
@@ -135,22 +135,30 @@ fn blank(one: &Standing<'_>) -> Finding {
     }
 }
 
-/// Files whose bytes are others, or which a correction touches that the report did not rest on.
+/// Files whose bytes are others, or which a correction made since touches.
 fn files_changed(engine: &Engine, issued: &IssuedReport) -> Vec<String> {
+    let touched = touched(engine, issued);
+    let corrected = engine.corrections().iter().filter(|one| touched.corrections.contains(&one.name));
+    let corrected =
+        corrected.map(|one| one.record.clone()).filter(|path| issued.files.iter().any(|file| file.path == *path));
+    let all: BTreeSet<String> = corrected.chain(touched.files.iter().cloned()).collect();
+    all.into_iter().collect()
+}
+
+/// What was touched of the files a report rests on since it was issued.
+pub fn touched(engine: &Engine, issued: &IssuedReport) -> Touched {
     let paths: BTreeSet<&str> = issued.files.iter().map(|file| file.path.as_str()).collect();
-    let is_corrected = |path: &str| {
-        engine.corrections().iter().any(|one| one.record == path && !paths.contains(one.stated_in.as_str()))
-    };
     let is_same = |path: &str, hash: &str| match engine.original(path) {
         Ok(bytes) => sha256(&bytes) == hash,
         // The program's own templates are attached although no folder holds them.
         Err(_) => path.starts_with("templates/"),
     };
-    let changed = issued
-        .files
-        .iter()
-        .filter(|file| file.path != issued.report && (!is_same(&file.path, &file.sha256) || is_corrected(&file.path)));
-    changed.map(|file| file.path.clone()).collect()
+    let others = issued.files.iter().filter(|file| file.path != issued.report && !is_same(&file.path, &file.sha256));
+    let new = engine.corrections().iter().filter(|one| !paths.contains(one.stated_in.as_str()));
+    Touched {
+        files: others.map(|file| file.path.clone()).collect(),
+        corrections: new.map(|one| one.name.clone()).collect(),
+    }
 }
 
 fn then(

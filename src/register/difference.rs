@@ -1,7 +1,11 @@
 //! What changed between two lists of results: inputs, values, printed digits, and what did not.
 
 use crate::block::Engine;
+use crate::block::correction::Correction;
 use crate::graph::trail;
+use crate::quantity::choose_unit;
+use crate::report::change::printed_ratio;
+pub use crate::report::change::{InputChange, ValueChange};
 use crate::report::listing::list_results;
 use serde::{Deserialize, Serialize};
 use std::collections::{BTreeMap, BTreeSet};
@@ -46,35 +50,24 @@ pub fn present_results(engine: &Engine) -> Quantities {
     read_results(list_results(engine).json().as_bytes()).unwrap_or_default()
 }
 
-/// A stated value, reading, constant or column that changed.
-#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
-pub struct InputChange {
-    pub name: String,
-    pub label: String,
-    pub old: String,
-    pub new: String,
-    /// File and line of the new one, else of the old.
-    pub place: String,
+/// What is known to have been touched since.
+#[derive(Debug, Clone, Default)]
+pub struct Touched {
+    /// Files whose bytes are others.
+    pub files: BTreeSet<String>,
+    /// Names of corrections made since.
+    pub corrections: BTreeSet<String>,
 }
 
-/// A computed value that changed.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct ValueChange {
-    pub name: String,
-    pub label: String,
-    /// As printed, value and standard uncertainty.
-    pub old: String,
-    pub new: String,
-    /// New less old, in the unit of `si_unit`; none where one of them is missing.
-    pub difference: Option<f64>,
-    pub si_unit: String,
-    /// The difference in old standard uncertainties.
-    pub relative_to_uncertainty: Option<f64>,
-    /// New standard uncertainty over old.
-    pub uncertainty_ratio: Option<f64>,
-    pub printed_digits_change: bool,
-    /// Changed inputs it rests on.
-    pub because_of: Vec<String>,
+impl Touched {
+    /// The corrections made since that touch a quantity.
+    fn corrections_of<'e>(&self, engine: &'e Engine, name: &str) -> Vec<&'e Correction> {
+        let graph = engine.graph();
+        let Some(id) = graph.find(name) else { return Vec::new() };
+        let mut found = engine.corrections_of(&graph.node(id).origin);
+        found.retain(|one| self.corrections.contains(&one.name));
+        found
+    }
 }
 
 /// What changed.
@@ -97,22 +90,22 @@ impl Difference {
         self.inputs.is_empty() && self.superseded.is_empty() && self.results.is_empty() && self.others.is_empty()
     }
 
-    /// Takes out of `then` and `now` what differs. `results` are the reported ones; `changed_files` are raw data and
-    /// records whose text that is read changed; `engine` has built what `now` lists.
+    /// Takes out of `then` and `now` what differs. `results` are the reported ones; `engine` has built what `now` lists.
     pub fn between(
         then: &Quantities,
         now: &Quantities,
         results: &[String],
-        changed_files: &BTreeSet<String>,
+        touched: &Touched,
         engine: &Engine,
     ) -> Difference {
         let mut difference = Difference::default();
         for (name, old) in then.iter().filter(|(_, old)| old.origin.what != "computed") {
             let new = now.get(name);
-            if is_same_input(old, new, changed_files) {
+            let corrections = touched.corrections_of(engine, name);
+            if is_same_input(old, new, touched) && (old.value.is_some() || corrections.is_empty()) {
                 continue;
             }
-            let change = input_change(old, new);
+            let change = input_change(old, new, &corrections);
             match is_superseded(old, engine) {
                 true => difference.superseded.push(change),
                 false => difference.inputs.push(change),
@@ -132,7 +125,7 @@ impl Difference {
                 }
                 continue;
             }
-            let change = value_change(old, new, because_of(engine, name, &inputs));
+            let change = value_change(engine, old, new, because_of(engine, name, &inputs));
             match is_result {
                 true => reported.push(change),
                 false if change.printed_digits_change => others.push(change),
@@ -141,6 +134,37 @@ impl Difference {
         }
         (difference.results, difference.others) = (reported, others);
         difference
+    }
+
+    /// Results that one of two reports states and the other does not.
+    pub fn note_reported(&mut self, then: (&[String], &Quantities), now: (&[String], &Quantities)) {
+        let added = now.0.iter().filter(|name| !then.0.contains(name)).filter_map(|name| now.1.get(name));
+        let added = added.map(|one| stated_in_one(one, "not reported".into(), one.printed.clone()));
+        let dropped = then.0.iter().filter(|name| !now.0.contains(name)).filter_map(|name| then.1.get(name));
+        let dropped = dropped.map(|one| stated_in_one(one, one.printed.clone(), "not reported".into()));
+        let all: Vec<ValueChange> = added.chain(dropped).collect();
+        for list in [&mut self.results, &mut self.others] {
+            list.retain(|one| !all.iter().any(|other| other.name == one.name));
+        }
+        self.unchanged.retain(|name| !all.iter().any(|other| other.name == *name));
+        self.results.extend(all);
+    }
+}
+
+fn stated_in_one(one: &Listed, old: String, new: String) -> ValueChange {
+    ValueChange {
+        name: one.name.clone(),
+        label: one.label.clone(),
+        old,
+        new,
+        difference: None,
+        si_unit: one.si_unit.clone(),
+        printed_difference: "—".into(),
+        relative_to_uncertainty: None,
+        printed_relative: "—".into(),
+        uncertainty_ratio: None,
+        printed_digits_change: true,
+        because_of: Vec::new(),
     }
 }
 
@@ -172,10 +196,10 @@ fn same_numbers(old: &Listed, new: &Listed) -> bool {
     bits(old.value) == bits(new.value) && bits(old.standard_uncertainty) == bits(new.standard_uncertainty)
 }
 
-fn is_same_input(old: &Listed, new: Option<&Listed>, changed_files: &BTreeSet<String>) -> bool {
+fn is_same_input(old: &Listed, new: Option<&Listed>, touched: &Touched) -> bool {
     let Some(new) = new else { return false };
     let is_column = old.value.is_none();
-    let file_changed = old.origin.file.as_ref().is_some_and(|file| changed_files.contains(file));
+    let file_changed = old.origin.file.as_ref().is_some_and(|file| touched.files.contains(file));
     same_numbers(old, new) && old.printed == new.printed && !(is_column && file_changed)
 }
 
@@ -192,8 +216,20 @@ fn words(one: &Listed) -> String {
     one.typed.clone().unwrap_or_else(|| one.printed.clone())
 }
 
-fn input_change(old: &Listed, new: Option<&Listed>) -> InputChange {
+fn input_change(old: &Listed, new: Option<&Listed>, corrections: &[&Correction]) -> InputChange {
     let origin = new.map_or(&old.origin, |new| &new.origin);
+    if let (None, [first, ..]) = (old.value, corrections) {
+        let join =
+            |text: fn(&Correction) -> &str| corrections.iter().map(|one| text(one)).collect::<Vec<_>>().join("; ");
+        let lines: Vec<String> = corrections.iter().map(|one| one.line.to_string()).collect();
+        return InputChange {
+            name: old.name.clone(),
+            label: old.label.clone(),
+            old: join(|one| &one.old),
+            new: join(|one| &one.new),
+            place: format!("{}, line {}, by {}", first.record, lines.join(", "), join(|one| &one.name)),
+        };
+    }
     let (was, is) = (words(old), new.map_or_else(|| "none".into(), words));
     InputChange {
         name: old.name.clone(),
@@ -204,7 +240,21 @@ fn input_change(old: &Listed, new: Option<&Listed>) -> InputChange {
     }
 }
 
-fn value_change(old: &Listed, new: Option<&Listed>, because_of: Vec<String>) -> ValueChange {
+/// A difference in a unit that suits it, to two digits.
+fn printed(engine: &Engine, name: &str, difference: f64, uncertainty: Option<f64>) -> String {
+    // Sums taken in another order differ in their last bits.
+    let is_rounding = uncertainty.is_some_and(|u| difference.abs() < 1e-9 * u);
+    let graph = engine.graph();
+    let unit = graph.find(name).and_then(|id| graph.node(id).name.as_ref()).map(|name| name.unit.clone());
+    let Some(unit) = unit else { return "—".into() };
+    if difference == 0.0 || is_rounding {
+        return format!("0 {}", unit.text()).trim_end().to_string();
+    }
+    let unit = choose_unit(difference.abs(), &unit);
+    engine.laboratory.style.difference(difference, &unit, 2).unwrap_or_else(|_| "—".into())
+}
+
+fn value_change(engine: &Engine, old: &Listed, new: Option<&Listed>, because_of: Vec<String>) -> ValueChange {
     let difference = new.and_then(|new| Some(new.value? - old.value?));
     let old_uncertainty = old.standard_uncertainty.filter(|u| *u > 0.0);
     ValueChange {
@@ -212,8 +262,11 @@ fn value_change(old: &Listed, new: Option<&Listed>, because_of: Vec<String>) -> 
         label: old.label.clone(),
         old: old.printed.clone(),
         new: new.map_or_else(|| "none".into(), |new| new.printed.clone()),
+        printed_difference: difference
+            .map_or_else(|| "—".into(), |one| printed(engine, &old.name, one, old_uncertainty)),
         difference,
         si_unit: old.si_unit.clone(),
+        printed_relative: printed_ratio(difference.zip(old_uncertainty).map(|(difference, u)| difference / u)),
         relative_to_uncertainty: difference.zip(old_uncertainty).map(|(difference, u)| difference / u),
         uncertainty_ratio: new
             .and_then(|new| new.standard_uncertainty)

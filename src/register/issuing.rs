@@ -4,17 +4,22 @@
 //! the PDF takes its name in the archive. A process that dies leaves no entry and no number used, or an entry whose PDF
 //! the next one that opens the register gives its name.
 
+use super::audit::attached;
 use super::authorise::{Duties, authorisations};
+use super::consequences::touched;
+use super::difference::{Difference, read_results};
 use super::entry::{Act, Entry, FileHash, IssuedReport, UsedBlock, written_time};
 use super::ledger::{Ledger, archive_path, staged_path};
 use super::lodge::{check_lodged, is_report};
 use super::requirements::check_requirements;
-use super::state::standings;
+use super::state::{State, find_report, standings};
 use crate::block::Engine;
 use crate::diagnostic::{Code, Problem};
-use crate::report::dossier::{Dossier, sha256};
+use crate::report::change::{Change, ValueChange};
+use crate::report::dossier::{Dossier, RESULTS, sha256};
 use crate::report::issue::{ISSUE_FORMAT, Issue, ReportKind, Witness};
 use crate::report::make_issued;
+use std::collections::{BTreeMap, BTreeSet};
 
 /// What is to be issued.
 #[derive(Debug, Clone)]
@@ -98,6 +103,8 @@ fn prepare(
     }
     let found = authorisations(&ledger.register, duties, order.report, &dossier.seal);
     let found = found.map_err(complain).ok();
+    let change = order.of.map(|of| change(ledger, engine, order, of, duties, dossier));
+    let change = change.transpose().map_err(complain).ok().flatten();
     if engine.complaints().has_faults() {
         return None;
     }
@@ -115,8 +122,61 @@ fn prepare(
         issued_by: order.who.into(),
         authorisations: found?,
         register: Witness { size: head.size, head: head.head },
+        change,
         engine: crate::VERSION.into(),
     })
+}
+
+/// The statement of change against the report that is amended or replaced.
+fn change(
+    ledger: &Ledger<'_>,
+    engine: &Engine,
+    order: &Order<'_>,
+    of: &str,
+    duties: &Duties,
+    dossier: &Dossier,
+) -> Result<Change, Problem> {
+    let standing = find_report(&ledger.register, of)?;
+    if standing.state != State::Issued {
+        let by = standing.by.map(|by| format!(" by {by}")).unwrap_or_default();
+        let problem = Problem::new(Code::ReportUnknown, format!("The report {of} was {}{by}.", standing.state.word()));
+        return Err(match standing.by {
+            Some(by) => problem.hint(format!("What holds at present is amended or replaced: name {by}.")),
+            None => problem.hint("A withdrawn report is followed by a new one: `libripens issue`."),
+        });
+    }
+    let issued = standing.issued;
+    let path = archive_path(of);
+    let archived = ledger.store.read(&path)?.filter(|bytes| sha256(bytes) == issued.pdf);
+    let archived = archived.ok_or_else(|| {
+        Problem::new(Code::RegisterDamaged, format!("The archived file {path} is not the one that was issued as {of}."))
+            .hint("Put it back from a copy that was sent or saved.")
+    })?;
+    let unreadable = || Problem::new(Code::PdfUnreadable, format!("The results attached to {path} cannot be read."));
+    let then = read_results(&attached(&archived, RESULTS)?).ok_or_else(unreadable)?;
+    let now = dossier.files.get(RESULTS).and_then(|bytes| read_results(bytes)).ok_or_else(unreadable)?;
+    let files = changed_files(issued, dossier);
+    let touched = touched(engine, issued);
+    let mut difference = Difference::between(&then, &now, &issued.results, &touched, engine);
+    difference.note_reported((&issued.results, &then), (&duties.results, &now));
+    Ok(Change {
+        reason: order.why.into(),
+        files,
+        inputs: difference.inputs.into_iter().chain(difference.superseded).collect(),
+        results: difference.results.into_iter().map(ValueChange::in_words).collect(),
+        others: difference.others.into_iter().map(ValueChange::in_words).collect(),
+        unchanged: difference.unchanged,
+    })
+}
+
+/// Files of the folder attached to one of the two and not, or not the same, to the other.
+fn changed_files(issued: &IssuedReport, dossier: &Dossier) -> Vec<String> {
+    let then: BTreeMap<&str, &str> =
+        issued.files.iter().map(|file| (file.path.as_str(), file.sha256.as_str())).collect();
+    let now: BTreeMap<&str, &str> =
+        dossier.contents.files.iter().filter_map(|file| Some((file.path.as_deref()?, file.sha256.as_str()))).collect();
+    let all: BTreeSet<&str> = then.keys().chain(now.keys()).copied().collect();
+    all.into_iter().filter(|path| then.get(path) != now.get(path)).map(String::from).collect()
 }
 
 fn issued_act(

@@ -1,5 +1,6 @@
 //! The front matter of a report record, and the particulars it puts on the first page.
 
+use super::change::statement_of_change;
 use super::dossier::{Dossier, short_seal};
 use super::issue::{Clock, Duty, Issue, ReportKind, Witness, day_of};
 use super::markup::Markup;
@@ -112,17 +113,25 @@ impl Front {
     ) -> Page {
         Page {
             language: "en".into(),
-            title: self.title.clone(),
+            title: self.full_title(issue),
             laboratory_name: engine.laboratory.name.clone(),
             laboratory_address: engine.laboratory.address.split(',').map(|line| line.trim().to_string()).collect(),
             draft: issue.is_none(),
             number: issue.map(|issue| issue.number.clone()),
             seal: short_seal(&dossier.seal),
             particulars: self.particulars(engine, issue),
-            body,
+            body: full_body(body, issue),
             statements: statements(issue),
             signatures: self.duties.iter().map(|(duty, person)| signature(duty, person, issue)).collect(),
             annex: Some(annex(engine, results, dossier)),
+        }
+    }
+
+    /// The title, which names what an amendment amends.
+    fn full_title(&self, issue: Option<&Issue>) -> String {
+        match issue.map(|issue| (issue.kind, issue.of.as_deref())) {
+            Some((ReportKind::Amendment, Some(of))) => format!("Amendment to report {of}: {}", self.title),
+            _ => self.title.clone(),
         }
     }
 
@@ -160,6 +169,17 @@ impl Front {
         }
         rows
     }
+}
+
+/// An amendment states what changed alone; a replacement states it before the whole.
+fn full_body(body: Markup, issue: Option<&Issue>) -> Markup {
+    let Some(issue) = issue else { return body };
+    let (Some(change), Some(of)) = (&issue.change, &issue.of) else { return body };
+    let mut made = statement_of_change(change, of);
+    if issue.kind == ReportKind::Replacement {
+        made.push(&body);
+    }
+    made
 }
 
 /// One field of the area of authorisation: of an issued report with who did it and when.

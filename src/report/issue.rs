@@ -1,12 +1,13 @@
 //! What an issued report carries outside its seal: number, time, authorisations and the head of the register.
 
+use super::change::Change;
 use serde::{Deserialize, Serialize};
 
 /// The version of the shape of `issue.json`.
 pub const ISSUE_FORMAT: u32 = 1;
 
 /// The issue of a report; kept beside the dossier, not in it.
-#[derive(Debug, Clone, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Issue {
     pub format: u32,
     pub number: String,
@@ -24,6 +25,9 @@ pub struct Issue {
     pub authorisations: Vec<Authorisation>,
     /// The register as it stood just before the entry of this issue.
     pub register: Witness,
+    /// Of an amendment or replacement, what changed.
+    #[serde(default, skip_serializing_if = "Option::is_none")]
+    pub change: Option<Change>,
     /// Version of the program.
     pub engine: String,
 }

@@ -3,6 +3,7 @@
 //! Prose becomes Typst markup ([`prose`]), a template arranges it ([`template`]), the typesetter makes the pages and
 //! the PDF ([`typeset`]).
 
+pub mod change;
 pub mod chart;
 pub mod compile;
 pub mod derivation;
