@@ -13,6 +13,9 @@ use crate::report::dossier::{RESULTS, sha256};
 use serde::Serialize;
 use std::collections::{BTreeMap, BTreeSet};
 
+/// Reads an archived report again: its PDF, or the file of this name attached to it.
+type Archived<'a> = dyn Fn(&IssuedReport, &str) -> Result<Vec<u8>, Problem> + 'a;
+
 /// What became of one issued report.
 #[derive(Debug, Clone, Serialize)]
 pub struct Finding {
@@ -69,7 +72,7 @@ pub fn present(register: &Register) -> Vec<Standing<'_>> {
 pub fn consequences(
     intake: &dyn Intake,
     register: &Register,
-    archived: &dyn Fn(&IssuedReport, &str) -> Result<Vec<u8>, Problem>,
+    archived: &Archived<'_>,
     progress: &mut dyn FnMut(usize, usize),
 ) -> Result<Vec<Finding>, IntakeError> {
     let reports = present(register);
@@ -124,7 +127,7 @@ fn blank(one: &Standing<'_>) -> Finding {
         number: one.issued.number.clone(),
         title: one.issued.title.clone(),
         issued: one.entry.time.clone(),
-        sent_to: one.sent.iter().filter_map(|entry| recipient(entry)).collect(),
+        sent_to: one.sent.iter().filter_map(recipient).collect(),
         proven_by_hash: false,
         files_changed: Vec::new(),
         runs_added: Vec::new(),
@@ -161,10 +164,7 @@ pub fn touched(engine: &Engine, issued: &IssuedReport) -> Touched {
     }
 }
 
-fn then(
-    archived: &dyn Fn(&IssuedReport, &str) -> Result<Vec<u8>, Problem>,
-    issued: &IssuedReport,
-) -> Result<Quantities, String> {
+fn then(archived: &Archived<'_>, issued: &IssuedReport) -> Result<Quantities, String> {
     let bytes = archived(issued, RESULTS).map_err(|problem| problem.message)?;
     read_results(&bytes).ok_or_else(|| format!("{RESULTS} of {} cannot be read", issued.number))
 }
