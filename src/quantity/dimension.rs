@@ -168,7 +168,7 @@ pub(super) fn superscript(exponent: i32) -> String {
 }
 
 /// A whole number in raised digits.
-pub(super) fn raised(number: i32) -> String {
+pub fn raised(number: i32) -> String {
     number.to_string().chars().map(raise).collect()
 }
 

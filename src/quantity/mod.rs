@@ -28,7 +28,7 @@ mod unit_text;
 
 pub use coordinate::{Axis, Coordinate, parse_coordinate};
 pub use decimal::Decimal;
-pub use dimension::Dimension;
+pub use dimension::{Dimension, raised};
 pub use factor::Factor;
 pub use kind::Kind;
 pub use notation::{parse_plain_value, parse_value};

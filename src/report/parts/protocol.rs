@@ -50,10 +50,8 @@ fn column(engine: &Engine, name: &str) -> Option<Vec<(String, String)>> {
     let micrograms = |value: f64| significant(style, value * 1e9, 2);
     let used: Vec<_> = campaign.determinations.iter().filter(|run| run.excluded.is_none()).collect();
     let measurand = fields.mapping("measurand")?;
-    let held = ["temperature", "pressure", "after"]
-        .iter()
-        .map(|field| measurand.words(field))
-        .filter(|words| !words.is_empty());
+    let values = ["temperature", "pressure"].iter().map(|field| dressed(&measurand.words(field)));
+    let held = values.chain([measurand.words("after")]).filter(|words| !words.is_empty());
     let own = used.iter().map(|run| run.own_uncertainty).fold(0.0, f64::max);
     let mut rows = vec![
         ("participant", format!("{}, {}", engine.laboratory.name, engine.laboratory.address)),
@@ -62,12 +60,7 @@ fn column(engine: &Engine, name: &str) -> Option<Vec<(String, String)>> {
         ("determinations used, of all", format!("{} of {}", used.len(), campaign.determinations.len())),
         (
             "measurand",
-            dressed(
-                &std::iter::once(format!("mass in {}", measurand.words("state")))
-                    .chain(held)
-                    .collect::<Vec<_>>()
-                    .join("; "),
-            ),
+            std::iter::once(format!("mass in {}", measurand.words("state"))).chain(held).collect::<Vec<_>>().join("; "),
         ),
         ("value", figure.standard()),
         ("standard uncertainty/µg", micrograms(u)),

@@ -30,6 +30,11 @@ pub fn traceability_table(engine: &Engine) -> Markup {
                 table.rows.extend(used.map(|calibration| row(engine, block, calibration)));
                 table.rows.extend(row_of_stated(engine, block));
             }
+            "gravity-station" => {
+                let determinations = block.fields().mappings("determinations");
+                let used = determinations.into_iter().filter(|one| is_used(engine, one.place()));
+                table.rows.extend(used.map(|one| row(engine, block, one)));
+            }
             "comparator" => table.rows.push(vec![
                 title(block).into(),
                 "—".into(),
@@ -45,8 +50,17 @@ pub fn traceability_table(engine: &Engine) -> Markup {
 }
 
 /// Standards first, then what compared them, then what measured beside.
-const ORDER: &[&str] =
-    &["mass-standard", "item", "comparator", "instrument", "voltage-standard", "resistor", "laser", "time-base"];
+const ORDER: &[&str] = &[
+    "mass-standard",
+    "item",
+    "comparator",
+    "instrument",
+    "voltage-standard",
+    "resistor",
+    "laser",
+    "time-base",
+    "gravity-station",
+];
 
 /// The row of a block that states its value by itself, or realizes it.
 fn row_of_stated(engine: &Engine, block: &Block) -> Option<Vec<Cell>> {
@@ -121,6 +135,7 @@ fn electric_value(calibration: Fields<'_>, typed: &dyn Fn(&str) -> String) -> Op
         ("step_voltage", "step"),
         ("frequency", "frequency"),
         ("offset", "relative offset"),
+        ("value", "gravity at the mark"),
     ]
     .into_iter()
     .find(|(name, _)| calibration.get(name).is_some())?;
@@ -134,7 +149,16 @@ fn electric_value(calibration: Fields<'_>, typed: &dyn Fn(&str) -> String) -> Op
 
 /// A value as typed, in the style of the laboratory.
 fn dressed(engine: &Engine, fields: Fields<'_>, name: &str) -> String {
-    crate::report::prose_text::dress(&fields.words(name), engine.laboratory.style)
+    let dress = |text: &str| crate::report::prose_text::dress(text, engine.laboratory.style);
+    match fields.mapping(name) {
+        // The long form of a value.
+        Some(long) => {
+            let u = long.words("u");
+            let u = if u.is_empty() { u } else { format!(", u = {}", dress(&u)) };
+            format!("{}{u}", dress(&long.words("value")))
+        }
+        None => dress(&fields.words(name)),
+    }
 }
 
 fn comparator_words(block: &Block) -> String {
