@@ -323,6 +323,9 @@ fn mistakes_of_a_day_are_found_where_they_stand() {
     let backwards =
         with_rows(MOVING, |line, row| Some(if line == 30 { row.replace(",3419", ",3418") } else { row.into() }));
     assert_eq!(complaints_of(&backwards), one("time_unreadable", MOVING, 30));
+    // A weighing paired with the moving phase of another hour.
+    let paired = changed(DAY, "moving: MP1\nweighing: WP1", "moving: MP1\nweighing: WP2");
+    assert_eq!(complaints_of(&paired), one("extrapolated", DAY, line_of(DAY, "moving: MP1") + 1));
     let halved = changed(DAY, "gate: 0.1 s", "gate: 0.05 s");
     assert!(complaints_of(&halved).iter().all(|(code, ..)| code == "fringe_factor"));
     assert!(!complaints_of(&halved).is_empty());

@@ -62,6 +62,26 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     }
 }
 
+/// A weighing other than the one the moving phase was taken about, outside its span, is said.
+fn check_span(engine: &Engine, fields: Fields<'_>, moving: &MovingPhase, weighing: &WeighingPhase) {
+    let (first, last) = moving.span;
+    if weighing.mean_time == moving.time || (first..=last).contains(&weighing.mean_time) {
+        return;
+    }
+    let away = (first - weighing.mean_time).max(weighing.mean_time - last);
+    let message = format!(
+        "The weighing {} lies {:.1} min outside the moving phase {}: the geometric factor is extrapolated.",
+        fields.words("weighing"),
+        away / 60.0,
+        fields.words("moving")
+    );
+    let problem = Problem::new(Code::Extrapolated, message);
+    engine.complain(
+        problem.hint("Pair each weighing with the moving phase before and after it."),
+        fields.place_of("weighing"),
+    );
+}
+
 /// What a determination found beyond its named quantities, for the report.
 #[derive(Debug, Clone)]
 pub struct Determination {
@@ -88,6 +108,7 @@ impl<'e> Work<'e> {
         let weighing = WeighingPhase::find(engine, &fields.text("weighing")?)?;
         let moving = MovingPhase::find(engine, &fields.text("moving")?)?;
         let apparatus = Apparatus::find(engine, &weighing.apparatus)?;
+        check_span(engine, fields, &moving, &weighing);
         let weight = Weight::find(engine, &weighing.artefact)?;
         Some(Work { engine, block, moving, weighing, apparatus, weight })
     }

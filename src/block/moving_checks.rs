@@ -120,8 +120,11 @@ impl Gates {
         let inside = |row: &usize| self.sweeps[*row] == self.sweeps[row - 1];
         let interval = |row: usize| self.times[row] - self.times[row - 1];
         let mut intervals: Vec<f64> = (1..self.times.len()).filter(inside).map(interval).collect();
-        intervals.sort_by(f64::total_cmp);
-        let Some(usual) = intervals.get(intervals.len() / 2).copied() else { return };
+        if intervals.is_empty() {
+            return;
+        }
+        let middle = intervals.len() / 2;
+        let usual = *intervals.select_nth_unstable_by(middle, f64::total_cmp).1;
         for row in (1..self.times.len()).filter(inside).filter(|row| interval(*row) > 1.5 * usual).take(MOST) {
             let message = format!(
                 "Between this row and the one above pass {:.3} s, but {usual:.3} s is usual in a sweep.",

@@ -145,6 +145,14 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
         let problem = Problem::new(Code::OutOfRange, format!("The order {order} is not a whole number from 0 to 12."));
         complaints.add_at(problem.hint("Four is usual for a sweep of some centimetres."), fields.place_of("order"));
     }
+    let orders = fields.mapping("spread").and_then(|spread| spread.get("orders")?.as_list()).unwrap_or_default();
+    for item in orders {
+        let order = item.as_text().and_then(|text| super::field::number(text).ok());
+        if order.is_some_and(|order| !whole(order, 1.0)) {
+            let message = "An order of the spread is not a whole number from 1 to 12.";
+            complaints.add_at(Problem::new(Code::OutOfRange, message).hint("Write `orders: [4, 5, 6]`."), item.place);
+        }
+    }
     if fields.get("weighing").is_none() && fields.get("position").is_none() {
         let problem = Problem::new(Code::FieldMissing, "A moving phase needs weighing, or a position of its own.");
         complaints.add_at(problem.hint("Write `weighing: WP1`."), fields.place());
@@ -342,7 +350,7 @@ impl<'e> Work<'e> {
 
     /// The vertical velocity, gate by gate.
     fn velocity(&self, effects: &Effects<'e>) -> Option<Quantity<'e>> {
-        let fringes = self.data.input(&FRINGES)?;
+        let fringes = self.data.declare(&FRINGES)?;
         let _scope = self.engine.builder.scope(self.block.name(), Some(&interferometer_velocity::METHOD.info));
         let measured = interferometer_velocity::velocity(
             fringes,
@@ -358,7 +366,7 @@ impl<'e> Work<'e> {
 
     /// The voltage that belongs to the vertical force, gate by gate.
     fn voltage(&self, effects: &Effects<'e>) -> Option<Quantity<'e>> {
-        let (steps, null) = (self.data.input(&STEPS)?, self.data.input(&NULL)?);
+        let (steps, null) = (self.data.declare(&STEPS)?, self.data.declare(&NULL)?);
         let _scope = self.engine.builder.scope(self.block.name(), Some(&compensated_voltage::METHOD.info));
         let whole = compensated_voltage::compensated_voltage(
             steps,
@@ -436,6 +444,8 @@ impl<'e> Work<'e> {
     }
 
     /// The spread of the geometric factor over defensible orders and windows, as an input of estimate zero.
+    ///
+    /// Each phase has its own: what its spread shares with that of another phase is not known from the rows.
     fn spread(&self, rule: &ProfileFit, velocity: &[f64], voltage: &[f64]) -> Option<Option<Quantity<'e>>> {
         let Some(asked) = self.block.fields().mapping("spread") else { return Some(None) };
         let numbers = |name: &str| -> Vec<f64> {

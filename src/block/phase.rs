@@ -81,6 +81,11 @@ impl<'e> PhaseData<'e> {
     /// A column as an input of the graph, after the checks of [`PhaseData::rows`].
     pub fn input(&self, wanted: &WantedColumn) -> Option<Quantity<'e>> {
         self.rows(wanted)?;
+        self.declare(wanted)
+    }
+
+    /// A column that was checked already, as an input of the graph.
+    pub fn declare(&self, wanted: &WantedColumn) -> Option<Quantity<'e>> {
         let path = format!("{}.{}", self.name, wanted.name);
         let label = format!("{} of {}", wanted.label, self.name);
         self.raw.input(self.engine, wanted.name, &path, wanted.symbol, &label, wanted.kind, Distribution::Exact)

@@ -156,8 +156,9 @@ impl RawData {
             return None;
         }
         let scale = matches!(kind, Kind::Temperature | Kind::DewPoint);
-        let convert = |x: &f64| if scale { unit.to_si_f64(*x) } else { unit.difference_to_si(*x) };
-        Some((numbers.iter().map(convert).collect(), unit.clone()))
+        let rows =
+            if scale { numbers.iter().map(|x| unit.to_si_f64(*x)).collect() } else { unit.differences_to_si(numbers) };
+        Some((rows, unit.clone()))
     }
 
     /// A column of texts.

@@ -21,6 +21,7 @@ use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
 use crate::numeric::distribution::f_upper;
 use crate::numeric::least_squares::{Fit, fit};
+use rayon::prelude::*;
 
 /// The registry's line.
 pub static METHOD: Method = Method {
@@ -85,7 +86,8 @@ impl ProfileFit {
         let mut shaped: Vec<Vec<f64>> = (0..=self.order)
             .map(|k| {
                 let average = GateAverage::new(k);
-                self.positions.iter().zip(v).map(|(z, v)| average.of(*z, v.abs() * self.gate)).collect()
+                let of = |(z, v): (&f64, &f64)| average.of(*z, v.abs() * self.gate);
+                self.positions.par_iter().zip(v).map(of).collect()
             })
             .collect();
         let mut alone = vec![vec![1.0; v.len()]];
@@ -111,8 +113,11 @@ impl ProfileFit {
     /// The fit, and the regressors that multiply v.
     fn solve(&self, v: &[f64], u: &[f64]) -> Result<(Fit, Vec<Vec<f64>>), Problem> {
         let (shaped, alone) = self.design(v);
-        let regressors: Vec<Vec<f64>> =
-            shaped.iter().map(|shape| shape.iter().zip(v).map(|(shape, v)| shape * v).collect()).chain(alone).collect();
+        let regressors: Vec<Vec<f64>> = shaped
+            .par_iter()
+            .map(|shape| shape.iter().zip(v).map(|(shape, v)| shape * v).collect())
+            .chain(alone)
+            .collect();
         let references: Vec<&[f64]> = regressors.iter().map(Vec::as_slice).collect();
         Ok((fit(&references, u, None)?, shaped))
     }
@@ -225,7 +230,7 @@ fn velocity_response(found: &Fit, shaped: &[Vec<f64>]) -> Vec<Vec<f64>> {
         response.iter_mut().zip(parts).for_each(|(cell, (r, (j, factor)))| *cell = *cell * r - j * factor);
         response
     };
-    found.jacobian.iter().zip(&found.unscaled_covariance).map(respond).collect()
+    found.jacobian.par_iter().zip(&found.unscaled_covariance).map(respond).collect()
 }
 
 /// The mean of ζ^k over a gate of length D: Σ_i C(k, 2i)/(2i + 1) ζ^(k − 2i) (D/2)^(2i), which cancels no digits.

@@ -30,21 +30,51 @@ impl Triangular {
         Ok(made)
     }
 
+    /// The same for a block of a taller matrix, whose columns may depend on each other within it.
+    pub fn without_check(columns: Vec<Vec<f64>>) -> Self {
+        let mut made = Self { reflectors: Vec::new(), columns: Vec::new(), scales: Vec::new() };
+        for mut column in columns {
+            let (scale, _) = made.prepare(&mut column);
+            made.reflect_column(column, scale);
+        }
+        made
+    }
+
+    /// Column j of the triangle of the matrix as given, with its zeros, `height` long.
+    pub fn unscaled_column(&self, j: usize, height: usize) -> Vec<f64> {
+        let (column, scale) = (&self.columns[j], self.scales[j]);
+        (0..height).map(|i| column.get(i).map_or(0.0, |entry| entry / scale)).collect()
+    }
+
     /// Reflects one more column by those before it, then makes its own reflection.
     fn append(&mut self, mut column: Vec<f64>) -> Result<(), Dependent> {
         let (index, rows) = (self.columns.len(), column.len());
-        let scale = power_of_two_below(column.iter().fold(0.0, |largest: f64, x| largest.max(x.abs())));
-        column.iter_mut().for_each(|x| *x *= scale);
-        let norm = length(&column);
-        self.apply_transposed(&mut column);
-        let tail = column.get(index..).unwrap_or(&[]);
-        let remaining = length(tail);
+        let (scale, norm) = self.prepare(&mut column);
+        let remaining = length(column.get(index..).unwrap_or(&[]));
         let threshold = f64::EPSILON * (rows + 10 * (index + 1)) as f64;
         // Entries that are no numbers fail this comparison and count as dependent.
         let independent = remaining > norm * threshold;
         if !independent {
             return Err(Dependent(index));
         }
+        self.reflect_column(column, scale);
+        Ok(())
+    }
+
+    /// Scales a column and reflects it by those before it; its scale, and its length when scaled.
+    fn prepare(&self, column: &mut [f64]) -> (f64, f64) {
+        let scale = power_of_two_below(column.iter().fold(0.0, |largest: f64, x| largest.max(x.abs())));
+        column.iter_mut().for_each(|x| *x *= scale);
+        let norm = length(column);
+        self.apply_transposed(column);
+        (scale, norm)
+    }
+
+    /// Makes the reflection of a prepared column.
+    fn reflect_column(&mut self, mut column: Vec<f64>, scale: f64) {
+        let index = self.columns.len();
+        let tail = column.get(index..).unwrap_or(&[]);
+        let remaining = length(tail);
         // The sign that adds, so that no digits cancel.
         let diagonal = if tail.first().is_some_and(|first| *first > 0.0) { -remaining } else { remaining };
         let mut reflector = vec![0.0; index];
@@ -53,13 +83,14 @@ impl Triangular {
             *first -= diagonal;
         }
         let reflector_length = length(&reflector);
-        reflector.iter_mut().for_each(|x| *x /= reflector_length);
+        if reflector_length > 0.0 {
+            reflector.iter_mut().for_each(|x| *x /= reflector_length);
+        }
         column.truncate(index);
         column.push(diagonal);
         self.reflectors.push(reflector);
         self.columns.push(column);
         self.scales.push(scale);
-        Ok(())
     }
 
     /// Q' v in place.

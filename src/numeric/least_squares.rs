@@ -15,7 +15,9 @@
 use super::elementary::sqrt;
 use super::householder::{Dependent, Triangular};
 use super::sum::{dot, sum};
+use super::tall::{BLOCK, Tall};
 use crate::diagnostic::{Code, Problem};
+use rayon::prelude::*;
 
 /// A linear fit.
 #[derive(Debug, Clone, PartialEq)]
@@ -69,29 +71,65 @@ pub fn fit(columns: &[&[f64]], y: &[f64], weights: Option<&[f64]>) -> Result<Fit
     let weights = weights.map_or_else(|| vec![1.0; y.len()], <[f64]>::to_vec);
     let roots: Vec<f64> = weights.iter().map(|weight| sqrt(*weight)).collect();
     let weighted = |column: &[f64]| -> Vec<f64> { column.iter().zip(&roots).map(|(x, root)| x * root).collect() };
-    let triangular = Triangular::new(columns.iter().map(|column| weighted(column)).collect()).map_err(dependent)?;
-
-    let mut reflected = weighted(y);
-    triangular.apply_transposed(&mut reflected);
-    let coefficients = triangular.solve(&reflected);
-    let residuals = residuals(columns, y, &coefficients);
-    let orthonormal = triangular.orthonormal_columns(y.len());
+    let solved = if y.len() >= 2 * BLOCK {
+        solve_tall(columns, &weighted(y), &roots)?
+    } else {
+        solve(columns.iter().map(|column| weighted(column)).collect(), weighted(y), &roots)?
+    };
+    let residuals = residuals(columns, y, &solved.coefficients);
     Ok(Fit {
-        unscaled_covariance: unscaled_covariance(&triangular, columns.len()),
         residual_sum_of_squares: sum(residuals.iter().zip(&weights).map(|(r, w)| w * r * r)),
         degrees_of_freedom: (y.len() - columns.len()) as f64,
-        leverages: (0..y.len()).map(|i| orthonormal.iter().map(|q| q[i] * q[i]).fold(0.0, |a, b| a + b)).collect(),
-        jacobian: jacobian(&triangular, orthonormal, &roots),
-        coefficients,
+        unscaled_covariance: solved.unscaled_covariance,
+        leverages: solved.leverages,
+        jacobian: solved.jacobian,
+        coefficients: solved.coefficients,
         residuals,
         weights,
+    })
+}
+
+/// What the triangular form gives.
+struct Solved {
+    coefficients: Vec<f64>,
+    unscaled_covariance: Vec<Vec<f64>>,
+    jacobian: Vec<Vec<f64>>,
+    leverages: Vec<f64>,
+}
+
+/// From the weighted design and readings, in one piece.
+fn solve(design: Vec<Vec<f64>>, mut reflected: Vec<f64>, roots: &[f64]) -> Result<Solved, Problem> {
+    let size = design.len();
+    let triangular = Triangular::new(design).map_err(dependent)?;
+    triangular.apply_transposed(&mut reflected);
+    let orthonormal = triangular.orthonormal_columns(roots.len());
+    Ok(Solved {
+        coefficients: triangular.solve(&reflected),
+        unscaled_covariance: unscaled_covariance(&triangular, size),
+        leverages: (0..roots.len()).map(|i| orthonormal.iter().map(|q| q[i] * q[i]).fold(0.0, |a, b| a + b)).collect(),
+        jacobian: jacobian(&triangular, orthonormal, roots),
+    })
+}
+
+/// The same block by block, for many rows.
+fn solve_tall(columns: &[&[f64]], weighted_y: &[f64], roots: &[f64]) -> Result<Solved, Problem> {
+    let tall = Tall::new(columns, roots).map_err(dependent)?;
+    let jacobian = tall.response(roots);
+    let leverage =
+        |i: usize| columns.iter().zip(&jacobian).map(|(column, row)| column[i] * row[i]).fold(0.0, |a, b| a + b);
+    Ok(Solved {
+        coefficients: tall.solve(weighted_y),
+        unscaled_covariance: unscaled_covariance(tall.triangle(), columns.len()),
+        leverages: (0..roots.len()).into_par_iter().map(leverage).collect(),
+        jacobian,
     })
 }
 
 /// y - A beta, each summed with compensation.
 fn residuals(columns: &[&[f64]], y: &[f64], coefficients: &[f64]) -> Vec<f64> {
     let fitted = |i: usize| columns.iter().zip(coefficients).map(move |(column, beta)| -column[i] * beta);
-    y.iter().enumerate().map(|(i, y)| sum(std::iter::once(*y).chain(fitted(i)))).collect()
+    let residual = |i: usize| sum(std::iter::once(y[i]).chain(fitted(i)));
+    (0..y.len()).into_par_iter().map(residual).collect()
 }
 
 /// D R^-1 Q' W^1/2.

@@ -9,6 +9,7 @@
 //! | [`sum`] | ordered compensated sums, mean, experimental and pooled variance |
 //! | [`linear`] | small dense matrices: products, Cholesky factor, symmetric solution |
 //! | [`least_squares`] | linear fits by [`householder`] reflections, with their response to data and design |
+//! | [`tall`] | the same block by block, for very many rows |
 //! | [`interpolate`] | weights of piecewise linear interpolation |
 //! | [`root`] | roots of monotone functions |
 //! | [`continued_fraction`] | evaluation of continued fractions |
@@ -40,4 +41,5 @@ pub mod stream;
 pub mod student_t;
 pub mod sum;
 pub mod tabulated;
+pub mod tall;
 pub(crate) mod wide;

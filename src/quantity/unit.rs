@@ -95,6 +95,23 @@ impl Unit {
         decimal.map_or(f64::NAN, |decimal| self.difference_decimal_to_si(&decimal))
     }
 
+    /// [`Unit::difference_to_si`] of every value of a column: the same digits, sooner.
+    ///
+    /// A decimal of at most 15 digits is the only one of so few that reads as its double, so it is the shortest; it is
+    /// found by trying, and one division of whole numbers below 10^15 by a power of ten up to 10^22 rounds once.
+    pub fn differences_to_si(&self, differences: &[f64]) -> Vec<f64> {
+        if self.factor == Factor::ONE {
+            return differences.to_vec();
+        }
+        let plain = self.factor.is_power_of_ten();
+        let mut places = 0;
+        let convert = |difference: &f64| {
+            let quick = if plain { quickly_shifted(*difference, self.factor.ten, &mut places) } else { None };
+            quick.unwrap_or_else(|| self.difference_to_si(*difference))
+        };
+        differences.iter().map(convert).collect()
+    }
+
     /// A difference typed in this unit, in coherent SI units, rounded once.
     pub fn difference_decimal_to_si(&self, difference: &Decimal) -> f64 {
         if self.factor.is_power_of_ten() {
@@ -177,5 +194,63 @@ impl Part {
 impl std::fmt::Display for Unit {
     fn fmt(&self, out: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         out.write_str(&self.text_or_one())
+    }
+}
+/// Powers of ten that are exact as doubles.
+const TENS: [f64; 23] = [
+    1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18, 1e19, 1e20,
+    1e21, 1e22,
+];
+
+/// `value` × 10^`ten`, rounded once, for a value of few decimal places; `places` is where the search begins and ends.
+fn quickly_shifted(value: f64, ten: i32, places: &mut usize) -> Option<f64> {
+    for tried in *places..10 {
+        let whole = (value * TENS[tried]).round();
+        if whole.abs() >= 1e15 {
+            return None;
+        }
+        if whole / TENS[tried] == value {
+            *places = tried;
+            let power = ten - tried as i32;
+            let tens = *TENS.get(power.unsigned_abs() as usize)?;
+            return Some(if power < 0 { whole / tens } else { whole * tens });
+        }
+    }
+    None
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use proptest::prelude::*;
+
+    fn agrees(unit_text: &str, values: &[f64]) {
+        let unit = Unit::parse(unit_text).expect("a unit");
+        for (value, quick) in values.iter().zip(unit.differences_to_si(values)) {
+            assert_eq!(quick.to_bits(), unit.difference_to_si(*value).to_bits(), "{value} {unit_text}");
+        }
+    }
+
+    #[test]
+    fn columns_convert_as_their_values() {
+        let values = [0.0, 0.1, -19.8751, 829.8759, 1e-9, 123_456_789.123_456, 9.999_999_999_999_999e22, 5e-324, 1e15];
+        ["mm", "µV", "nm", "hPa", "kHz", "1", "s", "h", "°C", "mrad", "GHz"]
+            .iter()
+            .for_each(|unit| agrees(unit, &values));
+    }
+
+    proptest! {
+        #[test]
+        fn any_column_converts_as_its_values(
+            list in prop::collection::vec((-999_999_999_999_999i64..=999_999_999_999_999, 0u32..12), 1..20),
+            odd in prop::collection::vec(any::<f64>().prop_filter("finite", |x| x.is_finite()), 0..5),
+        ) {
+            let mut values: Vec<f64> = list
+                .iter()
+                .map(|(digits, places)| format!("{digits}e-{places}").parse().unwrap_or(0.0))
+                .collect();
+            values.extend(odd);
+            ["mm", "µV", "hPa", "GHz", "h"].iter().for_each(|unit| agrees(unit, &values));
+        }
     }
 }
