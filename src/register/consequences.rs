@@ -11,10 +11,8 @@ use crate::diagnostic::Problem;
 use crate::intake::{Intake, IntakeError};
 use crate::report::dossier::{RESULTS, sha256};
 use serde::Serialize;
+use std::cell::RefCell;
 use std::collections::{BTreeMap, BTreeSet};
-
-/// Reads an archived report again: its PDF, or the file of this name attached to it.
-type Archived<'a> = dyn Fn(&IssuedReport, &str) -> Result<Vec<u8>, Problem> + 'a;
 
 /// What became of one issued report.
 #[derive(Debug, Clone, Serialize)]
@@ -58,6 +56,9 @@ impl Finding {
     }
 }
 
+/// Gives an attached file of an archived report by its name.
+pub type Archive<'a> = dyn Fn(&IssuedReport, &str) -> Result<Vec<u8>, Problem> + 'a;
+
 /// The reports that hold at present: not withdrawn, not amended or replaced by another.
 pub fn present(register: &Register) -> Vec<Standing<'_>> {
     let holds = |one: &Standing<'_>| one.state == State::Issued;
@@ -72,7 +73,7 @@ pub fn present(register: &Register) -> Vec<Standing<'_>> {
 pub fn consequences(
     intake: &dyn Intake,
     register: &Register,
-    archived: &Archived<'_>,
+    archived: &Archive<'_>,
     progress: &mut dyn FnMut(usize, usize),
 ) -> Result<Vec<Finding>, IntakeError> {
     let reports = present(register);
@@ -84,10 +85,11 @@ pub fn consequences(
     for (campaign, indices) in by_campaign {
         let engine = Engine::read(intake, campaign.as_deref())?;
         let seen = seen(&engine);
+        let hashes = Hashes::of(&engine);
         let mut changed = Vec::new();
         for index in indices {
             let finding = blank(&reports[index]);
-            let files_changed = files_changed(&engine, reports[index].issued);
+            let files_changed = files_changed(&hashes, reports[index].issued);
             match files_changed.is_empty() && reports[index].issued.seen == seen {
                 true => findings.push((index, Finding { proven_by_hash: true, ..finding })),
                 false => changed.push((index, Finding { files_changed, ..finding })),
@@ -101,7 +103,7 @@ pub fn consequences(
             finding.runs_added = runs_added(&engine, issued);
             match then {
                 Ok(then) => {
-                    let touched = touched(&engine, issued);
+                    let touched = hashes.touched(issued);
                     finding.difference = Difference::between(&then, &now, &issued.results, &touched, &engine);
                 }
                 Err(reason) => finding.failed = Some(reason),
@@ -139,32 +141,55 @@ fn blank(one: &Standing<'_>) -> Finding {
 }
 
 /// Files whose bytes are others, or which a correction made since touches.
-fn files_changed(engine: &Engine, issued: &IssuedReport) -> Vec<String> {
-    let touched = touched(engine, issued);
-    let corrected = engine.corrections().iter().filter(|one| touched.corrections.contains(&one.name));
-    let corrected =
-        corrected.map(|one| one.record.clone()).filter(|path| issued.files.iter().any(|file| file.path == *path));
+fn files_changed(hashes: &Hashes<'_>, issued: &IssuedReport) -> Vec<String> {
+    let touched = hashes.touched(issued);
+    let corrected = hashes.engine.corrections().iter().filter(|one| touched.corrections.contains(&one.name));
+    let corrected = corrected.map(|one| one.record.clone());
+    let corrected = corrected.filter(|path| issued.files.iter().any(|file| file.path == *path));
     let all: BTreeSet<String> = corrected.chain(touched.files.iter().cloned()).collect();
     all.into_iter().collect()
 }
 
-/// What was touched of the files a report rests on since it was issued.
-pub fn touched(engine: &Engine, issued: &IssuedReport) -> Touched {
-    let paths: BTreeSet<&str> = issued.files.iter().map(|file| file.path.as_str()).collect();
-    let is_same = |path: &str, hash: &str| match engine.original(path) {
-        Ok(bytes) => sha256(&bytes) == hash,
-        // The program's own templates are attached although no folder holds them.
-        Err(_) => path.starts_with("templates/"),
-    };
-    let others = issued.files.iter().filter(|file| file.path != issued.report && !is_same(&file.path, &file.sha256));
-    let new = engine.corrections().iter().filter(|one| !paths.contains(one.stated_in.as_str()));
-    Touched {
-        files: others.map(|file| file.path.clone()).collect(),
-        corrections: new.map(|one| one.name.clone()).collect(),
+/// The hashes of the files of a folder, each taken once however many reports rest on it.
+pub struct Hashes<'e> {
+    engine: &'e Engine<'e>,
+    known: RefCell<BTreeMap<String, Option<String>>>,
+}
+
+impl<'e> Hashes<'e> {
+    /// The hashes of the files that an engine reads.
+    pub fn of(engine: &'e Engine<'e>) -> Hashes<'e> {
+        Hashes { engine, known: RefCell::default() }
+    }
+
+    fn hash(&self, path: &str) -> Option<String> {
+        if let Some(known) = self.known.borrow().get(path) {
+            return known.clone();
+        }
+        let hash = self.engine.original(path).ok().map(|bytes| sha256(&bytes));
+        self.known.borrow_mut().insert(path.into(), hash.clone());
+        hash
+    }
+
+    /// What was touched of the files a report rests on since it was issued.
+    pub fn touched(&self, issued: &IssuedReport) -> Touched {
+        let paths: BTreeSet<&str> = issued.files.iter().map(|file| file.path.as_str()).collect();
+        let is_same = |path: &str, was: &str| match self.hash(path) {
+            Some(hash) => hash == was,
+            // The program's own templates are attached although no folder holds them.
+            None => path.starts_with("templates/"),
+        };
+        let others =
+            issued.files.iter().filter(|file| file.path != issued.report && !is_same(&file.path, &file.sha256));
+        let new = self.engine.corrections().iter().filter(|one| !paths.contains(one.stated_in.as_str()));
+        Touched {
+            files: others.map(|file| file.path.clone()).collect(),
+            corrections: new.map(|one| one.name.clone()).collect(),
+        }
     }
 }
 
-fn then(archived: &Archived<'_>, issued: &IssuedReport) -> Result<Quantities, String> {
+fn then(archived: &Archive<'_>, issued: &IssuedReport) -> Result<Quantities, String> {
     let bytes = archived(issued, RESULTS).map_err(|problem| problem.message)?;
     read_results(&bytes).ok_or_else(|| format!("{RESULTS} of {} cannot be read", issued.number))
 }

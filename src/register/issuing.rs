@@ -6,7 +6,7 @@
 
 use super::audit::attached;
 use super::authorise::{Duties, authorisations};
-use super::consequences::touched;
+use super::consequences::Hashes;
 use super::difference::{Difference, read_results};
 use super::entry::{Act, Entry, FileHash, IssuedReport, UsedBlock, written_time};
 use super::ledger::{Ledger, archive_path, staged_path};
@@ -156,7 +156,7 @@ fn change(
     let then = read_results(&attached(&archived, RESULTS)?).ok_or_else(unreadable)?;
     let now = dossier.files.get(RESULTS).and_then(|bytes| read_results(bytes)).ok_or_else(unreadable)?;
     let files = changed_files(issued, dossier);
-    let touched = touched(engine, issued);
+    let touched = Hashes::of(engine).touched(issued);
     let mut difference = Difference::between(&then, &now, &issued.results, &touched, engine);
     difference.note_reported((&issued.results, &then), (&duties.results, &now));
     Ok(Change {
