@@ -5,11 +5,12 @@
 use super::{Stopped, terminal};
 use crate::block::Engine;
 use crate::graph::{
-    Coverage, Distributed, NodeId, Validation, budget, coverage, distributed, propagate_distributions,
-    propagate_until_stable, sensitivities,
+    Coverage, Distributed, NodeId, Validation, coverage, distributed, propagate_distributions, propagate_until_stable,
+    sensitivities,
 };
 use crate::quantity::{Style, Unit, choose_unit};
 use crate::report::figures::fixed;
+use crate::report::parts::distribution::drawn_as_normal;
 use serde::Serialize;
 
 /// How many trials are made.
@@ -65,8 +66,8 @@ impl Amount {
             let found = distributed(&mut values, probability);
             let (estimate, u) = (graph.number(*id), coverage.standard_uncertainty);
             let validation = Validation::new(estimate, coverage.expanded_uncertainty, found.symmetric, u, digits);
-            let few = budget(&graph, *id).lines.into_iter().find(|line| line.degrees_of_freedom <= 2.0);
-            Tried { found, validation, coverage, estimate, digits, stable, few: few.map(|line| line.path) }
+            let few = drawn_as_normal(&graph, *id);
+            Tried { found, validation, coverage, estimate, digits, stable, few }
         };
         Ok(Some(results.iter().zip(values).map(one).collect()))
     }

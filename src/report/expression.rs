@@ -129,6 +129,11 @@ static FUNCTIONS: &[Function] = &[
         answer: |engine, asked| block(parts::distribution::distribution_part(engine, asked.quantity(engine)?)?),
     },
     Function {
+        name: "drifts",
+        usage: "drifts(C1)",
+        answer: |engine, asked| part_of(engine, asked, &["realization"], parts::campaign::drifts_table),
+    },
+    Function {
         name: "excluded",
         usage: "excluded()",
         answer: |engine, _| block(parts::excluded::excluded_table(engine)),

@@ -1,8 +1,10 @@
 //! What a report shows of a campaign: its determinations, their chart, the budget in relative terms.
 
 use crate::block::Engine;
+use crate::block::determination::Determination;
 use crate::block::realization::Campaign;
 use crate::graph::{NodeId, Sensitivities, Source, budget, sensitivities};
+use crate::numeric::least_squares::fit;
 use crate::quantity::Marker;
 use crate::report::Markup;
 use crate::report::chart::{Axis, Chart, Mean, Series, Style, figure};
@@ -242,5 +244,65 @@ pub fn relative_budget(engine: &Engine, name: &str, result: NodeId) -> Option<Ma
         1.0,
         String::new(),
     ));
+    Some(table.markup())
+}
+
+/// Slope of values over days by least squares, with its standard uncertainty from the scatter about the line.
+fn slope(days: &[f64], values: &[f64]) -> Option<(f64, f64)> {
+    let ones = vec![1.0; days.len()];
+    let found = fit(&[&ones, days], values, None).ok()?;
+    let variance = found.residual_variance()?;
+    Some((found.coefficients[1], (found.unscaled_covariance[1][1] * variance).sqrt()))
+}
+
+/// Geometric factor and gravity of each determination, as departures from their means, and their slopes.
+pub fn drifts_table(engine: &Engine, name: &str) -> Option<Markup> {
+    let campaign = engine.found::<Campaign>(name)?;
+    let style = engine.laboratory.style;
+    let mut rows = Vec::new();
+    for run in campaign.determinations.iter().filter(|run| run.excluded.is_none()) {
+        let block = run.path.split('.').next().unwrap_or_default();
+        let found = engine.found::<Determination>(block)?;
+        let number = |path: String| engine.graph().find(&path).map(|id| engine.graph().number(id));
+        let factor = number(format!("{}.geometric_factor", found.moving))?;
+        let gravity = number(format!("{}.gravity.mean", found.weighing))?;
+        rows.push((block.to_string(), (run.at.start + run.at.end) / 2.0, factor, gravity));
+    }
+    let first = rows.first()?.clone();
+    let days: Vec<f64> = rows.iter().map(|row| (row.1 - first.1) / 86_400.0).collect();
+    let mean =
+        |values: &[f64], near: f64| near + values.iter().map(|value| value - near).sum::<f64>() / values.len() as f64;
+    let factors: Vec<f64> = rows.iter().map(|row| row.2).collect();
+    let gravities: Vec<f64> = rows.iter().map(|row| row.3).collect();
+    let (factor, gravity) = (mean(&factors, first.2), mean(&gravities, first.3));
+    let factors: Vec<f64> = factors.iter().map(|value| (value / factor - 1.0) * 1e9).collect();
+    let gravities: Vec<f64> = gravities.iter().map(|value| (value - gravity) * 1e9).collect();
+    let caption = format!(
+        "Geometric factor and gravity of the determinations used, as departures from their means {} T m and {} m s⁻²",
+        significant(style, factor, 8),
+        significant(style, gravity, 9)
+    );
+    let header = vec!["Determination".into(), "Middle (UTC)".into(), head("ΔBl/Bl", "10⁻⁹"), head("Δg", "nm s⁻²")];
+    let mut table = Table::new(caption, header);
+    table.align = vec!["left", "left", "right", "right"];
+    for (index, row) in rows.iter().enumerate() {
+        let cells = [fixed(style, factors[index], 0), fixed(style, gravities[index], 1)];
+        table.rows.push(vec![
+            row.0.clone().into(),
+            moment(row.1).into(),
+            cells[0].clone().into(),
+            cells[1].clone().into(),
+        ]);
+    }
+    if let (Some(of_factor), Some(of_gravity)) = (slope(&days, &factors), slope(&days, &gravities)) {
+        let words =
+            |(b, u): (f64, f64), decimals| format!("{} (u = {})", fixed(style, b, decimals), fixed(style, u, decimals));
+        table.closing.push(vec![
+            "slope in a day".into(),
+            "".into(),
+            words(of_factor, 0).into(),
+            words(of_gravity, 1).into(),
+        ]);
+    }
     Some(table.markup())
 }

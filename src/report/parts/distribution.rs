@@ -6,7 +6,7 @@
 use crate::block::Engine;
 use crate::diagnostic::Problem;
 use crate::graph::{
-    Distributed, Histogram, NodeId, Validation, distributed, histogram, propagate_distributions,
+    Distributed, Graph, Histogram, NodeId, Validation, budget, distributed, histogram, propagate_distributions,
     second_order_uncertainty,
 };
 use crate::numeric::elementary::powi;
@@ -30,6 +30,14 @@ pub struct Comparison {
     pub validation: Validation,
     /// Standard uncertainty with the terms of second order, where they matter.
     pub second_order: Option<f64>,
+    /// A contribution that the trials drew from a normal distribution because its t has no variance.
+    pub few: Option<String>,
+}
+
+/// The path of a contribution with two degrees of freedom or fewer: its t distribution has no variance, so trials draw it
+/// from a normal one and say nothing about the interval.
+pub fn drawn_as_normal(graph: &Graph, result: NodeId) -> Option<String> {
+    budget(graph, result).lines.into_iter().find(|line| line.degrees_of_freedom <= 2.0).map(|line| line.path)
 }
 
 /// Terms of second order that change u by less than this part of it are not shown.
@@ -51,7 +59,8 @@ impl Comparison {
         let first = figure.coverage.standard_uncertainty;
         let second_order = second_order_uncertainty(&engine.graph(), result)
             .filter(|second| (second - first).abs() > SMALLEST_CHANGE * second);
-        Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation, second_order }))
+        let few = drawn_as_normal(&engine.graph(), result);
+        Ok(Some(Comparison { histogram: histogram(&values, CLASSES), figure, found, validation, second_order, few }))
     }
 
     /// The interval with the terms of second order, with the same coverage factor.
@@ -73,6 +82,12 @@ impl Comparison {
             };
             format!("[{}, {}]{unit}", text(low), text(high))
         };
+        if let Some(path) = &self.few {
+            return format!(
+                "{path} has two degrees of freedom or fewer: its t distribution has no variance and the trials drew a normal one, so they validate nothing; the interval stated is that of first order with its coverage factor from effective degrees of freedom, {} about the estimate.",
+                ends(self.validation.first_order)
+            );
+        }
         match self.validation.is_valid() {
             true => format!(
                 "Both ends agree within the numerical tolerance, so first-order propagation is validated; the interval stated is {} about the estimate.",
