@@ -163,6 +163,9 @@ fn check(fields: Fields<'_>, complaints: &mut Complaints) {
     }
 }
 
+/// Stands in the store once the tilts of an apparatus were warned of.
+struct TiltsNoted;
+
 struct Work<'e> {
     engine: &'e Engine<'e>,
     block: &'e Block,
@@ -170,6 +173,7 @@ struct Work<'e> {
     gates: Gates,
     weighing: Option<Rc<WeighingPhase>>,
     apparatus: Apparatus<'e>,
+    apparatus_name: Text,
     laser: Laser<'e>,
     step_voltage: Quantity<'e>,
     offset: Quantity<'e>,
@@ -195,7 +199,8 @@ impl<'e> Work<'e> {
         let laser = Laser::find(engine, &fields.text("laser")?, day)?;
         let time_base = TimeBase::find(engine, &fields.text("time_base")?, day)?;
         let standard = VoltageStandard::find(engine, &fields.text("voltage_standard")?, day)?;
-        let apparatus = Apparatus::find(engine, &fields.text("apparatus")?)?;
+        let apparatus_name = fields.text("apparatus")?;
+        let apparatus = Apparatus::find(engine, &apparatus_name)?;
         let weighing = match fields.text("weighing") {
             Some(name) => Some(WeighingPhase::find(engine, &name)?),
             None => None,
@@ -218,6 +223,7 @@ impl<'e> Work<'e> {
             gates,
             weighing,
             apparatus,
+            apparatus_name,
             laser,
             step_voltage: standard.step_voltage,
             offset: time_base.offset,
@@ -315,18 +321,43 @@ impl<'e> Work<'e> {
         Some(Effects { lengthening, abbe_error, parasitic_power, refractive_index })
     }
 
-    /// What first order leaves out of the cosine is said: the expectation of θ² is θ_0² + u².
+    /// What first order leaves out of the cosine is said: the expectation of θ² is θ_0² + u², and its variance
+    /// 4 θ_0² u² + 2 u⁴.
     fn note_tilts(&self) {
-        let graph = self.engine.graph();
-        let p = &self.apparatus.properties;
-        let of = |id| graph.input(id).map_or(0.0, |input| input.distribution.standard_uncertainty());
-        let left = (of(p.beam_tilt_x.id) * of(p.beam_tilt_x.id) + of(p.beam_tilt_y.id) * of(p.beam_tilt_y.id)) / 2.0;
-        drop(graph);
-        if left > 0.0 {
-            let text = format!(
+        let engine = self.engine;
+        let tilts = [self.apparatus.properties.beam_tilt_x, self.apparatus.properties.beam_tilt_y];
+        let uncertainty = |tilt: &Quantity<'e>| {
+            engine.graph().input(tilt.id).map_or(0.0, |input| input.distribution.standard_uncertainty())
+        };
+        let (mut left, mut first, mut second) = (0.0, 0.0, 0.0);
+        for tilt in &tilts {
+            let (theta, u) = (tilt.number(), uncertainty(tilt));
+            left += u * u / 2.0;
+            first += theta * theta * u * u;
+            second += u * u * u * u / 2.0;
+        }
+        if left <= 0.0 {
+            return;
+        }
+        engine.builder.assume(
+            format!(
                 "tilt of the laser beam: corrected at its estimate; the expectation of its square would add {left:.1e} to the relative correction"
+            ),
+            None,
+        );
+        let widest = if uncertainty(&tilts[0]) >= uncertainty(&tilts[1]) { tilts[0] } else { tilts[1] };
+        let place = engine.graph().node(widest.id).origin.place();
+        if let Some(place) = place.filter(|_| second > 0.5 * first)
+            && engine.found::<TiltsNoted>(&self.apparatus_name.text).is_none()
+        {
+            engine.store(&self.apparatus_name.text, TiltsNoted);
+            let message = format!(
+                "The laser beam is vertical within its uncertainty: first order gives its correction u = {:.1e}, with second order it is {:.1e}.",
+                first.sqrt(),
+                (first + second).sqrt()
             );
-            self.engine.builder.assume(text, None);
+            let hint = "Judge the result by trials, `budget RESULT --trials 100000`, or find the tilt apart from zero.";
+            engine.complain(Problem::new(Code::FirstOrderShort, message).hint(hint), place);
         }
     }
 

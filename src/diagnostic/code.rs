@@ -63,6 +63,7 @@ codes! {
     FieldUnknown "field_unknown" Fault "A block has a field its kind does not know.";
     FigureMissing "figure_missing" Fault "A report cites a result that does not exist or could not be computed.";
     FileMissing "file_missing" Fault "A file named in a record cannot be read.";
+    FirstOrderShort "first_order_short" Warning "First-order propagation understates an uncertainty: the formula bends within it.";
     FormatUnsupported "format_unsupported" Fault "The laboratory folder asks for another record format.";
     FringeFactor "fringe_factor" Fault "Fringes and positions disagree by a factor of two.";
     GradientAssumed "gradient_assumed" Warning "The gradient of gravity was not measured; that of free air stands in.";
