@@ -88,3 +88,16 @@ fn impossible_inputs_are_refused() {
     assert_eq!(complaint(&block("{distribution: trapezoidal, lower: 1, upper: 2, unit: m}")).0, Code::FieldMissing);
     assert_eq!(complaint(&block("1.0 m ± 0.1 m")).0, Code::UncertaintyIncomplete);
 }
+
+/// At a vanishing slope first order knows no uncertainty, and a product of wide factors loses a part of it.
+#[test]
+fn an_equation_that_bends_within_its_uncertainty_is_warned_of() {
+    let warned = |equation: &str| {
+        let block = format!("measurand: loss\nunit: \"1\"\ninputs:\n  x: 0.000(5)\n  y: 2.0(1)\nequation: {equation}");
+        reduce(&block, |engine| engine.complaints().list.iter().map(|one| one.code).collect::<Vec<_>>())
+    };
+    assert_eq!(warned("cos(x)"), [Code::FirstOrderShort]);
+    assert_eq!(warned("x^2"), [Code::FirstOrderShort]);
+    assert_eq!(warned("x + y"), []);
+    assert_eq!(warned("y^2"), []);
+}

@@ -7,9 +7,12 @@ use super::fields::Fields;
 use super::given::Given;
 use super::{BlockKind, Output};
 use crate::diagnostic::{Code, Complaints, Problem, nearest};
-use crate::graph::{Distribution, Estimate, Estimator, InputDraft, Origin, Quantity, Value};
+use crate::graph::{
+    Distribution, Estimate, Estimator, InputDraft, Origin, Quantity, Value, second_order_uncertainty, sensitivities,
+    standard_uncertainty,
+};
 use crate::intake::Place;
-use crate::method::{constants, measurement_model::METHOD};
+use crate::method::{constants, measurement_model::METHOD, statistic::brief};
 use crate::numeric::sum::{dot, mean};
 use crate::quantity::{Kind, Unit, parse_number};
 use crate::record::{Entry, Node};
@@ -90,6 +93,9 @@ struct Model<'e> {
     block: &'e Block,
 }
 
+/// A greater ratio of the uncertainties of second and of first order is said.
+const FIRST_ORDER_SHORT: f64 = 1.1;
+
 impl<'e> Model<'e> {
     fn build(&self) -> Option<()> {
         let (engine, fields, name) = (self.engine, self.block.fields(), self.block.name());
@@ -126,8 +132,33 @@ impl<'e> Model<'e> {
             return None;
         }
         let symbol = fields.text("symbol").map_or_else(|| format!("y_{name}"), |symbol| symbol.text);
-        made.alias().result("value", &symbol, &fields.words("measurand"), &unit);
+        let value = made.alias().result("value", &symbol, &fields.words("measurand"), &unit);
+        self.judge_first_order(value, equation.place);
         Some(())
+    }
+
+    /// Warns where terms of second order change the uncertainty, as at a point where the slope vanishes.
+    fn judge_first_order(&self, value: Quantity<'e>, place: Place) {
+        let (first, second) = {
+            let graph = self.engine.graph();
+            let first = standard_uncertainty(&graph, &sensitivities(&graph, value.id));
+            (first, second_order_uncertainty(&graph, value.id))
+        };
+        let Some(second) = second.filter(|second| *second > FIRST_ORDER_SHORT * first && *second > 0.0) else { return };
+        let found = match first {
+            0.0 => "every slope vanishes at the estimate, so first order knows no uncertainty".to_string(),
+            first => format!("first order reaches {} % of the uncertainty", brief(100.0 * first / second)),
+        };
+        let message =
+            format!("The equation of {} bends within the uncertainty of its inputs: {found}.", self.block.name());
+        self.engine.complain(
+            Problem::new(Code::FirstOrderShort, message).hint(format!(
+                "State the interval of the trials: `budget {}.value --trials 1000000`, or `distribution({}.value)` in the report.",
+                self.block.name(),
+                self.block.name()
+            )),
+            place,
+        );
     }
 
     fn inputs(&self, fields: Fields<'_>) -> Option<BTreeMap<String, Quantity<'e>>> {

@@ -6,7 +6,7 @@ use super::{Outcome, Stopped, covariance, terminal};
 use crate::block::Engine;
 use crate::graph::{
     Budget as GraphBudget, BudgetLine, Coverage, Graph, NodeId, Sensitivities, Source, budget, coverage, joint,
-    sensitivities,
+    second_order_uncertainty, sensitivities, standard_uncertainty,
 };
 use crate::quantity::{Decimal, Style, Unit, choose_unit};
 use crate::report::listing::print_quantity;
@@ -130,11 +130,21 @@ struct Sheet {
     /// The number of rows of each input that is a column.
     rows: BTreeMap<Source, usize>,
     coverage: Coverage,
+    /// The standard uncertainty with terms of second order, where first order knows none.
+    second_order: Option<String>,
     style: Style,
 }
 
 /// Shares below this are folded into one line.
 const SMALLEST_SHARE: f64 = 1e-4;
+
+/// u with terms of second order, where first order knows none although an input is uncertain.
+fn second_order(graph: &Graph, measurand: NodeId, style: Style) -> Option<String> {
+    let first = standard_uncertainty(graph, &sensitivities(graph, measurand));
+    let second = second_order_uncertainty(graph, measurand).filter(|second| first == 0.0 && *second > 0.0)?;
+    let unit = graph.node(measurand).name.as_ref().map_or_else(Unit::one, |name| name.unit.clone());
+    style.difference(second, &choose_unit(second, &unit), 2).ok()
+}
 
 impl Sheet {
     fn draw_up(engine: &Engine, measurand: NodeId, path: &str) -> Result<Sheet, Stopped> {
@@ -158,6 +168,7 @@ impl Sheet {
             rows: rows_of_columns(&graph),
             budget: complete(budget(&graph, measurand), &graph, &derivatives),
             coverage: coverage(&graph, &derivatives, laboratory.settings),
+            second_order: second_order(&graph, measurand, laboratory.style),
             style: laboratory.style,
         })
     }
@@ -170,10 +181,13 @@ impl Sheet {
     fn text(&self, all: bool) -> String {
         let title = format!("{}: {}\n\n", self.path, self.label);
         if self.budget.lines.is_empty() {
-            return format!(
-                "{title}  {}\n\nIt is exact, or nothing it rests on has an uncertainty: there is no budget.\n",
-                self.printed
-            );
+            let why = match &self.second_order {
+                Some(u) => format!(
+                    "First order knows no uncertainty here, because every slope vanishes at the estimate; with terms of second order u = {u}. `--trials 100000` gives the distribution."
+                ),
+                None => "It is exact, or nothing it rests on has an uncertainty: there is no budget.".into(),
+            };
+            return format!("{title}  {}\n\n{why}\n", self.printed);
         }
         format!("{title}{}\n{}", self.result(), self.table(all))
     }

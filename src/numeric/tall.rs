@@ -119,9 +119,9 @@ mod tests {
 
     /// Columns as a sweep has them: a block of one direction alone cannot tell the first two apart.
     fn columns(rows: usize) -> (Vec<Vec<f64>>, Vec<f64>) {
-        let sign = |i: usize| if (i / 5000) % 2 == 0 { 1.0 } else { -1.0 };
+        let sign = |i: usize| if (i / 5000).is_multiple_of(2) { 1.0 } else { -1.0 };
         let z = |i: usize| (i % 5000) as f64 / 2500.0 - 1.0;
-        let speed = (0..rows).map(|i| sign(i)).collect();
+        let speed = (0..rows).map(sign).collect();
         let ones = vec![1.0; rows];
         let shape = (0..rows).map(|i| sign(i) * z(i) * z(i)).collect();
         let y = (0..rows).map(|i| sign(i) * (540.0 - 3.0 * z(i) * z(i)) + 0.2 + 1e-3 * libm::sin(i as f64)).collect();
