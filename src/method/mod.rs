@@ -53,6 +53,7 @@ pub mod tidal_response;
 pub mod tidal_waves;
 pub mod type_a_mean;
 pub mod volume;
+pub mod water_density;
 pub mod weighing_cycle;
 
 use crate::graph::{Builder, MethodInfo, Quantity, Value};
@@ -146,6 +147,7 @@ pub static METHODS: &[&Method] = &[
     &tare_fit::METHOD,
     &type_a_mean::METHOD,
     &volume::METHOD,
+    &water_density::METHOD,
     &weighing_cycle::METHOD,
 ];
 
