@@ -3,6 +3,7 @@
 use super::phase::PhaseData;
 use crate::diagnostic::{Code, Problem};
 use crate::numeric::sum::{mean, sum};
+use rayon::prelude::*;
 use std::ops::Range;
 
 /// The rows of a moving phase, in coherent SI units.
@@ -78,13 +79,13 @@ impl Gates {
 
     /// The velocity from fringes is that from positions.
     fn check_velocity(&self, data: &PhaseData<'_>, gate: f64, half_wavelength: f64) -> Option<()> {
-        let mut ratios: Vec<f64> = Vec::new();
-        for span in self.spans().into_iter().filter(|span| span.len() >= 3) {
+        let ratio = |span: Range<usize>| {
             let (first, last) = (span.start, span.end - 1);
             let by_position = (self.positions[last] - self.positions[first]) / (self.times[last] - self.times[first]);
             let by_fringes = mean(&self.fringes[span]).unwrap_or(f64::NAN) * half_wavelength / gate;
-            ratios.push(by_fringes / by_position);
-        }
+            by_fringes / by_position
+        };
+        let mut ratios: Vec<f64> = self.spans().into_par_iter().filter(|span| span.len() >= 3).map(ratio).collect();
         ratios.sort_by(f64::total_cmp);
         let Some(ratio) = ratios.get(ratios.len() / 2).copied() else { return Some(()) };
         let near = |expected: f64| (ratio / expected - 1.0).abs() < 0.05;
@@ -181,16 +182,17 @@ impl Gates {
     /// drift are far below a step.
     pub fn check_steps(&self, data: &PhaseData<'_>, velocity: &[f64], rest: &[f64], step_voltage: f64) -> Option<()> {
         let spans = self.spans();
-        let over = |span: &Range<usize>, term: &dyn Fn(usize) -> f64| sum(span.clone().map(term));
+        let over = |span: &Range<usize>, term: &(dyn Fn(usize) -> f64 + Sync)| sum(span.clone().map(term));
         let factor = |span: &Range<usize>| {
             over(span, &|row| rest[row] * velocity[row]) / over(span, &|row| velocity[row] * velocity[row])
         };
-        let factors: Vec<f64> = spans.iter().map(factor).collect();
+        let factors: Vec<f64> = spans.par_iter().map(factor).collect();
         let mut sorted = factors.clone();
         sorted.sort_by(f64::total_cmp);
         let middle = (sorted.get((sorted.len() - 1) / 2)? + sorted.get(sorted.len() / 2)?) / 2.0;
         let speed = |span: &Range<usize>| over(span, &|row| velocity[row].abs()) / span.len() as f64;
-        let offs: Vec<f64> = spans.iter().zip(&factors).map(|(span, factor)| (factor - middle) * speed(span)).collect();
+        let off = |(span, factor): (&Range<usize>, &f64)| (factor - middle) * speed(span);
+        let offs: Vec<f64> = spans.par_iter().zip(&factors).map(off).collect();
         let hint = "Correct the number of steps by an entry of its own, or leave the sweep out by a rule.";
         let complain = |what: String, off: f64, row: usize| {
             let message = format!(

@@ -114,8 +114,8 @@ pub struct MovingPhase {
     pub drift: NodeId,
     /// m
     pub position: f64,
-    /// Position of each gate used from the weighing position, m.
-    pub offsets: Vec<f64>,
+    /// The fit, with the gates used.
+    pub rule: Arc<ProfileFit>,
     /// Seconds since 1970.
     pub time: f64,
     /// First and last gate, seconds since 1970.
@@ -130,6 +130,11 @@ pub struct MovingPhase {
 }
 
 impl MovingPhase {
+    /// Position of each gate used from the weighing position, m.
+    pub fn offsets(&self) -> &[f64] {
+        &self.rule.positions
+    }
+
     /// The moving phase of this name, built; complaints go to the engine.
     pub fn find(engine: &Engine, name: &Text) -> Option<Rc<MovingPhase>> {
         let block = engine.block(name, &[KIND.name])?;
@@ -239,20 +244,21 @@ impl<'e> Work<'e> {
         self.gates.check_weighing(&self.data, self.position, self.weighing.as_ref().map(|found| found.mean_time))?;
         let effects = self.effects()?;
         let (velocity, voltage) = (self.velocity(&effects)?, self.voltage(&effects)?);
-        let (v, u) = (velocity.rows(), voltage.rows());
-        let rule = self.rule(&v, &u)?;
+        let (v, u) = (velocity.value(), voltage.value());
+        let (v, u) = (v.rows(), u.rows());
+        let rule = self.rule(v, u)?;
         let coefficients = self.fit(&rule, velocity, voltage, "")?;
         let fitted: Vec<f64> = coefficients.iter().map(|coefficient| coefficient.number()).collect();
-        self.gates.check_steps(&self.data, &v, &rule.without_shape(&v, &u, &fitted), step)?;
+        self.gates.check_steps(&self.data, v, &rule.without_shape(v, u, &fitted), step)?;
         let left_out = self.outliers()?;
         if left_out.is_empty() {
-            let spread = self.spread(&rule, &v, &u)?;
+            let spread = self.spread(&rule, v, u)?;
             return self.name_results(&rule, coefficients, spread, effects, &left_out);
         }
         self.name_with_all(coefficients[0]);
         let kept: Vec<usize> = (0..v.len()).filter(|row| left_out.binary_search(row).is_err()).collect();
         let single = |column: Quantity<'e>| column.mix(kept.iter().map(|row| vec![(*row as u32, 1.0)]).collect());
-        let (rule, velocity, voltage) = (rule.of_rows(&kept), single(velocity), single(voltage));
+        let (rule, velocity, voltage) = (Arc::new(rule.of_rows(&kept)), single(velocity), single(voltage));
         let coefficients = self.fit(&rule, velocity, voltage, ".kept")?;
         let spread = self.spread(&rule, &velocity.rows(), &voltage.rows())?;
         self.name_results(&rule, coefficients, spread, effects, &left_out)
@@ -381,7 +387,7 @@ impl<'e> Work<'e> {
 
     /// The vertical velocity, gate by gate.
     fn velocity(&self, effects: &Effects<'e>) -> Option<Quantity<'e>> {
-        let fringes = self.data.declare(&FRINGES)?;
+        let fringes = self.data.declare(&FRINGES, &self.gates.fringes)?;
         let _scope = self.engine.builder.scope(self.block.name(), Some(&interferometer_velocity::METHOD.info));
         let measured = interferometer_velocity::velocity(
             fringes,
@@ -397,7 +403,7 @@ impl<'e> Work<'e> {
 
     /// The voltage that belongs to the vertical force, gate by gate.
     fn voltage(&self, effects: &Effects<'e>) -> Option<Quantity<'e>> {
-        let (steps, null) = (self.data.declare(&STEPS)?, self.data.declare(&NULL)?);
+        let (steps, null) = (self.data.declare(&STEPS, &self.gates.steps)?, self.data.declare(&NULL, &self.gates.null)?);
         let _scope = self.engine.builder.scope(self.block.name(), Some(&compensated_voltage::METHOD.info));
         let whole = compensated_voltage::compensated_voltage(
             steps,
@@ -410,7 +416,7 @@ impl<'e> Work<'e> {
     }
 
     /// The rule of the fit, its order chosen.
-    fn rule(&self, velocity: &[f64], voltage: &[f64]) -> Option<ProfileFit> {
+    fn rule(&self, velocity: &[f64], voltage: &[f64]) -> Option<Arc<ProfileFit>> {
         let fields = self.block.fields();
         let rule = ProfileFit {
             sweeps: self.gates.sweeps.clone(),
@@ -422,10 +428,10 @@ impl<'e> Work<'e> {
             decisions: Vec::new(),
         };
         match fields.mapping("order") {
-            None => Some(rule),
+            None => Some(Arc::new(rule)),
             Some(search) => {
                 let (largest, confidence) = (search.number("largest")? as usize, search.number("confidence")?);
-                self.keep(choose_order(&rule, velocity, voltage, largest, confidence))
+                self.keep(choose_order(&rule, velocity, voltage, largest, confidence)).map(Arc::new)
             }
         }
     }
@@ -452,7 +458,7 @@ impl<'e> Work<'e> {
 
     fn fit(
         &self,
-        rule: &ProfileFit,
+        rule: &Arc<ProfileFit>,
         velocity: Quantity<'e>,
         voltage: Quantity<'e>,
         suffix: &str,
@@ -466,7 +472,7 @@ impl<'e> Work<'e> {
         dimensions.push(voltage.dimension().over(Dimension::TIME));
         let outputs: Vec<(Dimension, Kind)> = dimensions.into_iter().map(|one| (one, Kind::Plain)).collect();
         self.keep(self.engine.builder.estimator(
-            Arc::new(rule.clone()),
+            Arc::<ProfileFit>::clone(rule),
             &[velocity, voltage],
             &outputs,
             &format!("{name}.scatter{suffix}"),
@@ -516,7 +522,7 @@ impl<'e> Work<'e> {
 
     fn name_results(
         &self,
-        rule: &ProfileFit,
+        rule: &Arc<ProfileFit>,
         mut coefficients: Vec<Quantity<'e>>,
         spread: Option<Quantity<'e>>,
         effects: Effects<'e>,
@@ -544,7 +550,7 @@ impl<'e> Work<'e> {
                 coefficients: coefficients[..=order].iter().map(|coefficient| coefficient.id).collect(),
                 drift: drift.id,
                 position: self.position,
-                offsets: rule.positions.clone(),
+                rule: rule.clone(),
                 time: self.time,
                 span: (*self.gates.times.first()?, *self.gates.times.last()?),
                 alignment: effects.lengthening.id,

@@ -3,7 +3,7 @@
 use super::engine::Engine;
 use super::raw_data::{RawData, epoch};
 use crate::diagnostic::{Code, Problem};
-use crate::graph::{Distribution, Quantity, Value};
+use crate::graph::{InputDraft, Origin, Quantity, ReadingColumn, Value};
 use crate::intake::Place;
 use crate::method::unit;
 use crate::quantity::{Dimension, Kind};
@@ -80,15 +80,19 @@ impl<'e> PhaseData<'e> {
 
     /// A column as an input of the graph, after the checks of [`PhaseData::rows`].
     pub fn input(&self, wanted: &WantedColumn) -> Option<Quantity<'e>> {
-        self.rows(wanted)?;
-        self.declare(wanted)
+        let rows = self.rows(wanted)?;
+        self.declare(wanted, &rows)
     }
 
-    /// A column that was checked already, as an input of the graph.
-    pub fn declare(&self, wanted: &WantedColumn) -> Option<Quantity<'e>> {
+    /// The rows of a column that was checked already, as an input of the graph.
+    pub fn declare(&self, wanted: &WantedColumn, rows: &[f64]) -> Option<Quantity<'e>> {
         let path = format!("{}.{}", self.name, wanted.name);
         let label = format!("{} of {}", wanted.label, self.name);
-        self.raw.input(self.engine, wanted.name, &path, wanted.symbol, &label, wanted.kind, Distribution::Exact)
+        let (head, unit) = self.raw.head(wanted.name)?;
+        let origin = Origin::Readings(ReadingColumn { file: self.raw.file, column: head, lines: self.raw.lines.clone() });
+        let value = Value::column(rows);
+        let draft = InputDraft::new(&path, wanted.symbol, &label, wanted.kind, unit, value, origin);
+        Some(self.engine.builder.input(draft))
     }
 
     /// The line of a row.

@@ -129,6 +129,12 @@ impl RawData {
         found
     }
 
+    /// The head in the file and the unit of a column of numbers.
+    pub fn head(&self, name: &str) -> Option<(String, Unit)> {
+        let column = self.columns.iter().find(|column| column.name.text == name)?;
+        Some((column.head.text.clone(), column.unit.clone()?))
+    }
+
     /// Where the record declares a column; the block's name when it does not.
     pub fn column_place(&self, name: &str) -> Place {
         self.columns.iter().find(|column| column.name.text == name).map_or(self.place, |column| column.name.place)

@@ -42,6 +42,11 @@ impl<'g> Quantity<'g> {
         self.builder.graph().value(self.id).rows().to_vec()
     }
 
+    /// The value; the rows of a column are shared.
+    pub fn value(self) -> Value {
+        self.builder.graph().value(self.id).clone()
+    }
+
     /// The dimension.
     pub fn dimension(self) -> Dimension {
         self.builder.graph().node(self.id).dimension

@@ -1,6 +1,6 @@
 //! Places in text: which file, and which bytes of it.
 
-use std::sync::Arc;
+use std::sync::{Arc, OnceLock};
 
 /// One file among the [`Sources`] of a run.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash)]
@@ -36,19 +36,28 @@ impl Place {
 pub struct SourceFile {
     pub path: String,
     pub bytes: Arc<[u8]>,
-    line_starts: Vec<u32>,
+    /// Found when first asked for: only complaints and listings ask.
+    line_starts: OnceLock<Vec<u32>>,
 }
 
 impl SourceFile {
+    fn new(path: &str, bytes: Arc<[u8]>) -> SourceFile {
+        SourceFile { path: path.into(), bytes, line_starts: OnceLock::new() }
+    }
+
+    fn line_starts(&self) -> &[u32] {
+        self.line_starts.get_or_init(|| std::iter::once(0).chain(memchr_lines(&self.bytes)).collect())
+    }
+
     /// The number of the line, from 1, that holds the byte at `offset`.
     pub fn line_of(&self, offset: u32) -> usize {
-        self.line_starts.partition_point(|&start| start <= offset)
+        self.line_starts().partition_point(|&start| start <= offset)
     }
 
     /// The bytes of line `number` (from 1), without its line break.
     pub fn line(&self, number: usize) -> &[u8] {
-        let Some(&start) = number.checked_sub(1).and_then(|index| self.line_starts.get(index)) else { return &[] };
-        let end = self.line_starts.get(number).map_or(self.bytes.len(), |&next| next as usize);
+        let Some(&start) = number.checked_sub(1).and_then(|index| self.line_starts().get(index)) else { return &[] };
+        let end = self.line_starts().get(number).map_or(self.bytes.len(), |&next| next as usize);
         let line = &self.bytes[start as usize..end];
         let line = line.strip_suffix(b"\n").unwrap_or(line);
         line.strip_suffix(b"\r").unwrap_or(line)
@@ -57,7 +66,7 @@ impl SourceFile {
     /// Where line `number` (from 1) begins and ends, without its line break.
     pub fn line_range(&self, number: usize) -> (usize, usize) {
         let start =
-            number.checked_sub(1).and_then(|index| self.line_starts.get(index)).map_or(0, |&start| start as usize);
+            number.checked_sub(1).and_then(|index| self.line_starts().get(index)).map_or(0, |&start| start as usize);
         (start, start + self.line(number).len())
     }
 }
@@ -74,19 +83,14 @@ impl Sources {
         if let Some(known) = self.find(path) {
             return known;
         }
-        let bytes: Arc<[u8]> = bytes.into();
-        let mut line_starts = vec![0];
-        line_starts.extend(memchr_lines(&bytes));
-        self.files.push(SourceFile { path: path.into(), bytes, line_starts });
+        self.files.push(SourceFile::new(path, bytes.into()));
         FileId(self.files.len() as u32 - 1)
     }
 
     /// Puts other bytes in place of those of a file already taken in.
     pub fn replace(&mut self, id: FileId, bytes: impl Into<Arc<[u8]>>) {
-        let bytes: Arc<[u8]> = bytes.into();
         let file = &mut self.files[id.0 as usize];
-        file.line_starts = std::iter::once(0).chain(memchr_lines(&bytes)).collect();
-        file.bytes = bytes;
+        *file = SourceFile::new(&file.path, bytes.into());
     }
 
     /// The id of a file already taken in.

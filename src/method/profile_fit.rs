@@ -103,9 +103,10 @@ impl ProfileFit {
         let mut rest = u.to_vec();
         for (k, coefficient) in coefficients.iter().enumerate().take(self.order + 1).skip(1) {
             let average = GateAverage::new(k);
-            for (row, rest) in rest.iter_mut().enumerate() {
-                *rest -= v[row] * coefficient * average.of(self.positions[row], v[row].abs() * self.gate);
-            }
+            let shape = |(rest, (v, z)): (&mut f64, (&f64, &f64))| {
+                *rest -= v * coefficient * average.of(*z, v.abs() * self.gate);
+            };
+            rest.par_iter_mut().zip(v.par_iter().zip(&self.positions)).for_each(shape);
         }
         rest
     }

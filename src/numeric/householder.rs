@@ -33,9 +33,13 @@ impl Triangular {
     /// The same for a block of a taller matrix, whose columns may depend on each other within it.
     pub fn without_check(columns: Vec<Vec<f64>>) -> Self {
         let mut made = Self { reflectors: Vec::new(), columns: Vec::new(), scales: Vec::new() };
-        for mut column in columns {
-            let (scale, _) = made.prepare(&mut column);
+        let mut left = columns;
+        let scales: Vec<f64> = left.iter_mut().map(|column| scale(column)).collect();
+        left.reverse();
+        for (index, scale) in scales.into_iter().enumerate() {
+            let Some(column) = left.pop() else { break };
             made.reflect_column(column, scale);
+            reflect_all(&made.reflectors[index], index, &mut left);
         }
         made
     }
@@ -63,8 +67,7 @@ impl Triangular {
 
     /// Scales a column and reflects it by those before it; its scale, and its length when scaled.
     fn prepare(&self, column: &mut [f64]) -> (f64, f64) {
-        let scale = power_of_two_below(column.iter().fold(0.0, |largest: f64, x| largest.max(x.abs())));
-        column.iter_mut().for_each(|x| *x *= scale);
+        let scale = scale(column);
         let norm = length(column);
         self.apply_transposed(column);
         (scale, norm)
@@ -100,15 +103,17 @@ impl Triangular {
 
     /// The first columns of Q, as many as A has.
     pub fn orthonormal_columns(&self, rows: usize) -> Vec<Vec<f64>> {
-        (0..self.columns.len())
-            .map(|j| {
-                let mut column = vec![0.0; rows];
-                column.iter_mut().skip(j).take(1).for_each(|x| *x = 1.0);
-                // Reflections after the j-th leave the j-th unit vector alone.
-                self.reflectors.iter().enumerate().take(j + 1).rev().for_each(|(k, r)| reflect(r, k, &mut column));
-                column
-            })
-            .collect()
+        let unit = |j: usize| {
+            let mut column = vec![0.0; rows];
+            column.iter_mut().skip(j).take(1).for_each(|x| *x = 1.0);
+            column
+        };
+        let mut columns: Vec<Vec<f64>> = (0..self.columns.len()).map(unit).collect();
+        for (k, reflector) in self.reflectors.iter().enumerate().rev() {
+            // Reflections after the j-th leave the j-th unit vector alone.
+            reflect_all(reflector, k, &mut columns[k..]);
+        }
+        columns
     }
 
     /// D R^-1 b: coefficients of the columns of A as given, from the first elements of Q' y.
@@ -146,6 +151,35 @@ fn reflect(reflector: &[f64], start: usize, vector: &mut [f64]) {
     let pairs = || reflector.iter().skip(start);
     let twice = 2.0 * pairs().zip(vector.iter().skip(start)).map(|(r, v)| r * v).fold(0.0, |sum, term| sum + term);
     vector.iter_mut().skip(start).zip(pairs()).for_each(|(v, r)| *v -= twice * r);
+}
+
+/// [`reflect`] of several vectors, four side by side: each sum waits for its last term, and four wait together. The
+/// digits are the same.
+fn reflect_all(reflector: &[f64], start: usize, vectors: &mut [Vec<f64>]) {
+    let (fours, rest) = vectors.as_chunks_mut::<4>();
+    for four in fours {
+        let [a, b, c, d] = four.each_mut().map(|vector| vector.get_mut(start..).unwrap_or_default());
+        let r = reflector.get(start..).unwrap_or_default();
+        let mut sums = [0.0; 4];
+        for ((((r, a), b), c), d) in r.iter().zip(a.iter()).zip(b.iter()).zip(c.iter()).zip(d.iter()) {
+            sums[0] += r * a;
+            sums[1] += r * b;
+            sums[2] += r * c;
+            sums[3] += r * d;
+        }
+        for (vector, sum) in [a, b, c, d].into_iter().zip(sums) {
+            let twice = 2.0 * sum;
+            vector.iter_mut().zip(r).for_each(|(v, r)| *v -= twice * r);
+        }
+    }
+    rest.iter_mut().for_each(|vector| reflect(reflector, start, vector));
+}
+
+/// Scales a column by a power of two so that its largest entry is between 1 and 2; the power.
+fn scale(column: &mut [f64]) -> f64 {
+    let scale = power_of_two_below(column.iter().fold(0.0, |largest: f64, x| largest.max(x.abs())));
+    column.iter_mut().for_each(|x| *x *= scale);
+    scale
 }
 
 /// Euclidean length; the entries are scaled beforehand so that no square overflows.

@@ -167,7 +167,7 @@ fn check_shape(columns: &[&[f64]], y: &[f64], weights: Option<&[f64]>) -> Result
     if let Some(odd) = columns.iter().copied().chain(weights).find(|list| list.len() != rows) {
         return Err(incomplete(format!("A fit has {rows} readings, but {} entries beside them.", odd.len())));
     }
-    if columns.iter().copied().chain([y]).flatten().any(|entry| !entry.is_finite()) {
+    if columns.par_iter().copied().chain([y]).any(|column| column.iter().any(|entry| !entry.is_finite())) {
         return Err(incomplete("A fit meets an entry that is not a finite number.".into()));
     }
     match weights.unwrap_or(&[]).iter().find(|weight| !(weight.is_finite() && **weight > 0.0)) {

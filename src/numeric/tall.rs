@@ -69,11 +69,12 @@ impl Tall {
     /// D R^-1 Q' times the roots of weight: the response of each coefficient to every row.
     pub fn response(&self, roots: &[f64]) -> Vec<Vec<f64>> {
         let across = self.top.orthonormal_columns(self.blocks.len() * self.width);
-        let parts: Vec<Vec<Vec<f64>>> = self
-            .blocks
+        let mut response = vec![vec![0.0; roots.len()]; self.width];
+        self.blocks
             .par_iter()
+            .zip(self.shares(&mut response))
             .enumerate()
-            .map(|(index, (rows, block))| {
+            .for_each(|(index, ((rows, block), share))| {
                 // Row j of the block's part of Q, seen through D R^-1.
                 let through: Vec<Vec<f64>> = (0..self.width)
                     .map(|j| {
@@ -82,27 +83,34 @@ impl Tall {
                     })
                     .collect();
                 let orthonormal = block.orthonormal_columns(rows.len());
-                (0..self.width).map(|k| combine(&orthonormal, &through, k, &roots[rows.clone()])).collect()
-            })
-            .collect();
-        (0..self.width)
-            .map(|k| {
-                let mut row = Vec::with_capacity(roots.len());
-                parts.iter().for_each(|part| row.extend_from_slice(&part[k]));
-                row
-            })
-            .collect()
+                for (k, row) in share.into_iter().enumerate() {
+                    combine(&orthonormal, &through, k, &roots[rows.clone()], row);
+                }
+            });
+        response
+    }
+
+    /// The part of each row that belongs to each block.
+    fn shares<'r>(&self, rows: &'r mut [Vec<f64>]) -> Vec<Vec<&'r mut [f64]>> {
+        let mut shares: Vec<Vec<&'r mut [f64]>> = self.blocks.iter().map(|_| Vec::with_capacity(self.width)).collect();
+        for row in rows {
+            let mut rest = row.as_mut_slice();
+            for (share, (rows, _)) in shares.iter_mut().zip(&self.blocks) {
+                let (part, behind) = rest.split_at_mut(rows.len());
+                share.push(part);
+                rest = behind;
+            }
+        }
+        shares
     }
 }
 
-/// Σ_j q_j through_jk, times the roots.
-fn combine(orthonormal: &[Vec<f64>], through: &[Vec<f64>], k: usize, roots: &[f64]) -> Vec<f64> {
-    let mut row = vec![0.0; roots.len()];
+/// Adds Σ_j q_j through_jk to a row of zeros, then multiplies by the roots.
+fn combine(orthonormal: &[Vec<f64>], through: &[Vec<f64>], k: usize, roots: &[f64], row: &mut [f64]) {
     for (column, weights) in orthonormal.iter().zip(through) {
         row.iter_mut().zip(column).for_each(|(sum, q)| *sum += weights[k] * q);
     }
     row.iter_mut().zip(roots).for_each(|(entry, root)| *entry *= root);
-    row
 }
 
 /// Blocks of rows; the last takes what would be less than the width.

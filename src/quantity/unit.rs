@@ -1,5 +1,6 @@
 //! Units: what they are, and exact conversion to and from coherent SI units.
 
+use rayon::prelude::*;
 use super::decimal::Decimal;
 use super::dimension::{Dimension, superscript};
 use super::exact::Exact;
@@ -104,12 +105,11 @@ impl Unit {
             return differences.to_vec();
         }
         let plain = self.factor.is_power_of_ten();
-        let mut places = 0;
-        let convert = |difference: &f64| {
-            let quick = if plain { quickly_shifted(*difference, self.factor.ten, &mut places) } else { None };
+        let convert = |places: &mut usize, difference: &f64| {
+            let quick = if plain { quickly_shifted(*difference, self.factor.ten, places) } else { None };
             quick.unwrap_or_else(|| self.difference_to_si(*difference))
         };
-        differences.iter().map(convert).collect()
+        differences.par_iter().with_min_len(LONG).map_init(|| 0, convert).collect()
     }
 
     /// A difference typed in this unit, in coherent SI units, rounded once.
@@ -201,6 +201,9 @@ const TENS: [f64; 23] = [
     1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18, 1e19, 1e20,
     1e21, 1e22,
 ];
+
+/// Rows of a column that are worth a thread of their own, at least.
+const LONG: usize = 1 << 15;
 
 /// `value` × 10^`ten`, rounded once, for a value of few decimal places; `places` is where the search begins and ends.
 fn quickly_shifted(value: f64, ten: i32, places: &mut usize) -> Option<f64> {

@@ -10,6 +10,7 @@ use super::Text;
 use crate::diagnostic::{Code, Complaint, Complaints, Problem, nearest};
 use crate::intake::{FileId, Place};
 use number::parse_number;
+use rayon::prelude::*;
 use rows::{Field, Rows};
 use std::ops::Range;
 
@@ -51,6 +52,9 @@ pub enum ColumnData {
     Texts(Vec<String>),
 }
 
+/// Bytes of a part of a file, about; parts are read side by side.
+const PART: usize = 1 << 20;
+
 /// Complaints printed for the rows of one file, at most.
 const MOST_COMPLAINTS: usize = 20;
 
@@ -66,14 +70,7 @@ pub fn read_columns(
     wanted: &[WantedColumn],
     filter: Option<&RowFilter>,
 ) -> (Columns, Complaints) {
-    let columns = wanted.iter().map(|column| ColumnData::empty(column.content)).collect();
-    let mut table = Table {
-        bytes,
-        file,
-        columns: Columns { rows: Vec::new(), columns },
-        complaints: Complaints::default(),
-        left_out: None,
-    };
+    let mut table = Table::new(bytes, file, wanted);
     if u32::try_from(bytes.len()).is_err() {
         let problem = Problem::new(Code::CellUnreadable, "The file is longer than 4 GiB, the most that can be read.");
         table.complaints.add_at(problem, Place::new(file, 0, 0));
@@ -91,6 +88,21 @@ impl ColumnData {
         match content {
             Content::Number => Self::Numbers(Vec::new()),
             Content::Text => Self::Texts(Vec::new()),
+        }
+    }
+
+    fn append(&mut self, other: Self) {
+        match (self, other) {
+            (Self::Numbers(numbers), Self::Numbers(more)) => numbers.extend_from_slice(&more),
+            (Self::Texts(texts), Self::Texts(more)) => texts.extend(more),
+            _ => {}
+        }
+    }
+
+    fn reserve(&mut self, more: usize) {
+        match self {
+            Self::Numbers(numbers) => numbers.reserve_exact(more),
+            Self::Texts(texts) => texts.reserve_exact(more),
         }
     }
 
@@ -119,7 +131,13 @@ struct Table<'a> {
     left_out: Option<(usize, Complaint)>,
 }
 
-impl Table<'_> {
+impl<'a> Table<'a> {
+    fn new(bytes: &'a [u8], file: FileId, wanted: &[WantedColumn]) -> Table<'a> {
+        let columns = wanted.iter().map(|column| ColumnData::empty(column.content)).collect();
+        let columns = Columns { rows: Vec::new(), columns };
+        Table { bytes, file, columns, complaints: Complaints::default(), left_out: None }
+    }
+
     /// Reads the header line and chooses the separator that finds most of the wanted heads.
     fn header(
         &mut self,
@@ -202,6 +220,54 @@ impl Table<'_> {
     }
 
     fn read(&mut self, mut rows: Rows<'_>, heads: &Heads, wanted: &[WantedColumn], filter: Option<&RowFilter>) {
+        if !self.read_parts(&rows, heads, wanted, filter) {
+            self.read_rows(&mut rows, heads, filter);
+        }
+        let any_known = wanted.is_empty() || heads.indices.iter().any(Option::is_some);
+        if self.columns.rows.is_empty() && any_known && !self.complaints.has_faults() {
+            self.nothing_left(filter);
+        }
+    }
+
+    /// Reads a long file part by part, side by side, and joins the parts in order. A file with a fault is not read this
+    /// way, so that complaints come out as they do line by line.
+    fn read_parts(
+        &mut self,
+        rows: &Rows<'_>,
+        heads: &Heads,
+        wanted: &[WantedColumn],
+        filter: Option<&RowFilter>,
+    ) -> bool {
+        let parts = rows.parts(PART);
+        if parts.len() < 2 {
+            return false;
+        }
+        let (bytes, file) = (self.bytes, self.file);
+        let read = |mut part: Rows<'_>| {
+            let mut table = Table::new(bytes, file, wanted);
+            table.read_rows(&mut part, heads, filter);
+            table.complaints.list.is_empty().then_some((table.columns, part.line))
+        };
+        let Some(read) = parts.into_par_iter().map(read).collect::<Option<Vec<(Columns, u32)>>>() else {
+            return false;
+        };
+        let mut above = rows.line;
+        let mut pieces: Vec<Vec<ColumnData>> = wanted.iter().map(|_| Vec::with_capacity(read.len())).collect();
+        for (part, lines) in read {
+            self.columns.rows.extend(part.rows.iter().map(|line| above + line));
+            pieces.iter_mut().zip(part.columns).for_each(|(pieces, column)| pieces.push(column));
+            above += lines;
+        }
+        let count = self.columns.rows.len();
+        self.columns.columns.par_iter_mut().zip(pieces).for_each(|(column, pieces)| {
+            column.reserve(count);
+            pieces.into_iter().for_each(|piece| column.append(piece));
+        });
+        true
+    }
+
+    /// Reads line by line.
+    fn read_rows(&mut self, rows: &mut Rows<'_>, heads: &Heads, filter: Option<&RowFilter>) {
         let mut fields: Vec<Field> = Vec::with_capacity(heads.names.len());
         while let Some(row) = rows.next_fields(&mut fields) {
             let line = rows.line;
@@ -216,10 +282,6 @@ impl Table<'_> {
                 Ok(range) => self.field_count(line, range, fields.len(), heads.names.len(), rows.separator),
                 Err(problem) => self.quotation(line, problem),
             }
-        }
-        let any_known = wanted.is_empty() || heads.indices.iter().any(Option::is_some);
-        if self.columns.rows.is_empty() && any_known && !self.complaints.has_faults() {
-            self.nothing_left(filter);
         }
     }
 

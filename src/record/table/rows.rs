@@ -22,6 +22,21 @@ impl<'a> Rows<'a> {
         Self { bytes, offset, line: 0, separator: b',' }
     }
 
+    /// What is left cut into parts of about `size` bytes, each of whole lines and with lines counted from its own first.
+    ///
+    /// No field holds a line break, so each part can be read by itself.
+    pub fn parts(&self, size: usize) -> Vec<Rows<'a>> {
+        let (mut parts, mut start) = (Vec::new(), self.offset);
+        while start < self.bytes.len() {
+            let least = (start + size).min(self.bytes.len());
+            let rest = &self.bytes[least..];
+            let end = rest.iter().position(|&byte| byte == b'\n').map_or(self.bytes.len(), |at| least + at + 1);
+            parts.push(Rows { bytes: &self.bytes[..end], offset: start, line: 0, separator: self.separator });
+            start = end;
+        }
+        parts
+    }
+
     /// The bytes of the next line without its line break.
     pub fn next_line(&mut self) -> Option<Range<usize>> {
         if self.offset >= self.bytes.len() {

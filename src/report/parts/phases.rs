@@ -104,14 +104,14 @@ pub fn profile_charts(engine: &Engine, name: &str) -> Option<Markup> {
         (estimator.estimate.residuals.clone(), voltage, b)
     };
     let relative: Vec<f64> = residuals.iter().zip(&voltages).map(|(r, u)| r / u * 1e9).collect();
-    let millimetres: Vec<f64> = found.offsets.iter().map(|z| z * 1e3).collect();
+    let millimetres: Vec<f64> = found.offsets().iter().map(|z| z * 1e3).collect();
     let shape = |z: f64| {
         let power = |k: usize| crate::numeric::elementary::powi(z, k as i32);
         let departure: f64 = coefficients.iter().enumerate().skip(1).map(|(k, b)| b * power(k)).sum();
         departure / coefficients[0] * 1e6
     };
-    let low = found.offsets.iter().copied().fold(f64::INFINITY, f64::min);
-    let high = found.offsets.iter().copied().fold(f64::NEG_INFINITY, f64::max);
+    let low = found.offsets().iter().copied().fold(f64::INFINITY, f64::min);
+    let high = found.offsets().iter().copied().fold(f64::NEG_INFINITY, f64::max);
     let along = (0..=100).map(|step| low + (high - low) * f64::from(step) / 100.0);
     let curve = along.map(|z| (z * 1e3, shape(z), None)).collect();
     let (factor, _) = value_and_u(engine, &format!("{name}.geometric_factor"))?;
