@@ -403,7 +403,8 @@ impl<'e> Work<'e> {
 
     /// The voltage that belongs to the vertical force, gate by gate.
     fn voltage(&self, effects: &Effects<'e>) -> Option<Quantity<'e>> {
-        let (steps, null) = (self.data.declare(&STEPS, &self.gates.steps)?, self.data.declare(&NULL, &self.gates.null)?);
+        let (steps, null) =
+            (self.data.declare(&STEPS, &self.gates.steps)?, self.data.declare(&NULL, &self.gates.null)?);
         let _scope = self.engine.builder.scope(self.block.name(), Some(&compensated_voltage::METHOD.info));
         let whole = compensated_voltage::compensated_voltage(
             steps,

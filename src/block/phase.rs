@@ -89,7 +89,8 @@ impl<'e> PhaseData<'e> {
         let path = format!("{}.{}", self.name, wanted.name);
         let label = format!("{} of {}", wanted.label, self.name);
         let (head, unit) = self.raw.head(wanted.name)?;
-        let origin = Origin::Readings(ReadingColumn { file: self.raw.file, column: head, lines: self.raw.lines.clone() });
+        let origin =
+            Origin::Readings(ReadingColumn { file: self.raw.file, column: head, lines: self.raw.lines.clone() });
         let value = Value::column(rows);
         let draft = InputDraft::new(&path, wanted.symbol, &label, wanted.kind, unit, value, origin);
         Some(self.engine.builder.input(draft))

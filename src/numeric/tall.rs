@@ -70,11 +70,8 @@ impl Tall {
     pub fn response(&self, roots: &[f64]) -> Vec<Vec<f64>> {
         let across = self.top.orthonormal_columns(self.blocks.len() * self.width);
         let mut response = vec![vec![0.0; roots.len()]; self.width];
-        self.blocks
-            .par_iter()
-            .zip(self.shares(&mut response))
-            .enumerate()
-            .for_each(|(index, ((rows, block), share))| {
+        self.blocks.par_iter().zip(self.shares(&mut response)).enumerate().for_each(
+            |(index, ((rows, block), share))| {
                 // Row j of the block's part of Q, seen through D R^-1.
                 let through: Vec<Vec<f64>> = (0..self.width)
                     .map(|j| {
@@ -86,7 +83,8 @@ impl Tall {
                 for (k, row) in share.into_iter().enumerate() {
                     combine(&orthonormal, &through, k, &roots[rows.clone()], row);
                 }
-            });
+            },
+        );
         response
     }
 

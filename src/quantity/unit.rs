@@ -1,11 +1,11 @@
 //! Units: what they are, and exact conversion to and from coherent SI units.
 
-use rayon::prelude::*;
 use super::decimal::Decimal;
 use super::dimension::{Dimension, superscript};
 use super::exact::Exact;
 use super::factor::Factor;
 use super::symbol::{self, Symbol};
+use rayon::prelude::*;
 
 /// The zero of the Celsius scale, 273.15 K exactly (SI Brochure, 9th edition, 2.3.1).
 pub(super) const CELSIUS_ZERO: Decimal = Decimal { negative: false, digits: 27_315, exponent: -2 };

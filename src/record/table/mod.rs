@@ -459,6 +459,35 @@ mod tests {
         assert_eq!(complaints.list[0].code, Code::DesignIncomplete);
     }
 
+    /// Parts read side by side give what one pass gives, lines and complaints included.
+    #[test]
+    fn a_long_file_is_read_part_by_part() {
+        let rows = 150_000u32;
+        let mut text = String::from("which,m\n");
+        for row in 0..rows {
+            let blank = if row % 1000 == 7 { "\n" } else { "" };
+            text.push_str(&format!("\"A {row}\",{}.25\n{blank}", row * 7));
+        }
+        assert!(Rows::new(text.as_bytes()).parts(PART).len() > 2);
+        let (columns, complaints) = read(&text);
+        assert_eq!(complaints, Complaints::default());
+        let lines: Vec<u32> = (0..rows).map(|row| row + 2 + (row + 992) / 1000).collect();
+        let numbers: Vec<f64> = (0..rows).map(|row| f64::from(row * 7) + 0.25).collect();
+        let texts: Vec<String> = (0..rows).map(|row| format!("A {row}")).collect();
+        assert_eq!(columns.rows, lines);
+        assert_eq!(columns.columns, [ColumnData::Numbers(numbers), ColumnData::Texts(texts)]);
+        text.push_str("B,1,5\n");
+        let (columns, complaints) = read(&text);
+        let last = lines[lines.len() - 1] + 1;
+        assert_eq!(columns.rows, lines);
+        assert_eq!(complaints.list.len(), 1);
+        assert!(
+            complaints.list[0].message.starts_with(&format!("Line {last} has 3 fields")),
+            "{}",
+            complaints.list[0].message
+        );
+    }
+
     fn complaints(text: &str) -> Vec<(Code, String)> {
         let list = read(text).1.list;
         let shown = |place: Place| match place.file {
