@@ -21,7 +21,9 @@ use crate::diagnostic::{Code, Problem};
 use crate::graph::{Decision, Estimate, Estimator, MethodInfo};
 use crate::numeric::distribution::f_upper;
 use crate::numeric::least_squares::{Fit, fit};
+use crate::numeric::tall::BLOCK;
 use rayon::prelude::*;
+use std::ops::Range;
 
 /// The registry's line.
 pub static METHOD: Method = Method {
@@ -192,10 +194,10 @@ impl Estimator for ProfileFit {
             ));
         }
         let (found, shaped) = self.solve(v, u)?;
-        let r1 = self.autocorrelation(&found.residuals);
+        let (r1, by_velocity) =
+            rayon::join(|| self.autocorrelation(&found.residuals), || velocity_response(&found, &shaped));
         let inflation = if r1 > 0.0 { (1.0 + r1) / (1.0 - r1) } else { 1.0 };
         let variance = inflation * found.residual_sum_of_squares / found.degrees_of_freedom;
-        let by_velocity = velocity_response(&found, &shaped);
         let described = [
             Decision { what: "order of the profile".into(), decided: format!("{}", self.order) },
             Decision {
@@ -207,8 +209,8 @@ impl Estimator for ProfileFit {
             own_covariance: scaled(&found.unscaled_covariance, variance),
             degrees_of_freedom: found.degrees_of_freedom,
             decisions: self.decisions.iter().cloned().chain(described).collect(),
-            residuals: found.residuals.clone(),
-            values: found.coefficients.clone(),
+            residuals: found.residuals,
+            values: found.coefficients,
             jacobian: vec![by_velocity, found.jacobian],
         })
     }
@@ -218,20 +220,35 @@ impl Estimator for ProfileFit {
 ///
 /// From d β_k / d A_ic = C_kc r_i − J_ki β_c, summed over the regressors c that v_i multiplies by their shapes.
 fn velocity_response(found: &Fit, shaped: &[Vec<f64>]) -> Vec<Vec<f64>> {
-    let mut factor = vec![0.0; found.residuals.len()];
-    for (shape, coefficient) in shaped.iter().zip(&found.coefficients) {
-        factor.iter_mut().zip(shape).for_each(|(sum, shape)| *sum += coefficient * shape);
-    }
-    let respond = |(row, covariance): (&Vec<f64>, &Vec<f64>)| {
-        let mut response = vec![0.0; factor.len()];
-        for (shape, shared) in shaped.iter().zip(covariance) {
-            response.iter_mut().zip(shape).for_each(|(sum, shape)| *sum += shared * shape);
+    let mut response = vec![vec![0.0; found.residuals.len()]; found.jacobian.len()];
+    let mut blocks: Vec<Vec<&mut [f64]>> = Vec::new();
+    for row in &mut response {
+        for (index, part) in row.chunks_mut(BLOCK).enumerate() {
+            match blocks.get_mut(index) {
+                Some(block) => block.push(part),
+                None => blocks.push(vec![part]),
+            }
         }
-        let parts = found.residuals.iter().zip(row.iter().zip(&factor));
-        response.iter_mut().zip(parts).for_each(|(cell, (r, (j, factor)))| *cell = *cell * r - j * factor);
-        response
-    };
-    found.jacobian.par_iter().zip(&found.unscaled_covariance).map(respond).collect()
+    }
+    // A block of rows at a time, so that it stays near the processor.
+    blocks.into_par_iter().enumerate().for_each(|(index, block)| {
+        let rows = index * BLOCK..(index * BLOCK + BLOCK).min(found.residuals.len());
+        let mut factor = vec![0.0; rows.len()];
+        add_shapes(&mut factor, shaped, &found.coefficients, &rows);
+        for ((part, row), covariance) in block.into_iter().zip(&found.jacobian).zip(&found.unscaled_covariance) {
+            add_shapes(part, shaped, covariance, &rows);
+            let others = found.residuals[rows.clone()].iter().zip(row[rows.clone()].iter().zip(&factor));
+            part.iter_mut().zip(others).for_each(|(cell, (r, (j, factor)))| *cell = *cell * r - j * factor);
+        }
+    });
+    response
+}
+
+/// Adds Σ_c factor_c shape_c over some rows.
+fn add_shapes(sums: &mut [f64], shaped: &[Vec<f64>], factors: &[f64], rows: &Range<usize>) {
+    for (shape, factor) in shaped.iter().zip(factors) {
+        sums.iter_mut().zip(&shape[rows.clone()]).for_each(|(sum, shape)| *sum += factor * shape);
+    }
 }
 
 /// The mean of ζ^k over a gate of length D: Σ_i C(k, 2i)/(2i + 1) ζ^(k − 2i) (D/2)^(2i), which cancels no digits.

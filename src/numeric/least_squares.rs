@@ -69,7 +69,7 @@ impl Fit {
 pub fn fit(columns: &[&[f64]], y: &[f64], weights: Option<&[f64]>) -> Result<Fit, Problem> {
     check_shape(columns, y, weights)?;
     let weights = weights.map_or_else(|| vec![1.0; y.len()], <[f64]>::to_vec);
-    let roots: Vec<f64> = weights.iter().map(|weight| sqrt(*weight)).collect();
+    let roots: Vec<f64> = weights.par_iter().with_min_len(BLOCK).map(|weight| sqrt(*weight)).collect();
     let weighted = |column: &[f64]| -> Vec<f64> { column.iter().zip(&roots).map(|(x, root)| x * root).collect() };
     let solved = if y.len() >= 2 * BLOCK {
         solve_tall(columns, &weighted(y), &roots)?
@@ -129,7 +129,7 @@ fn solve_tall(columns: &[&[f64]], weighted_y: &[f64], roots: &[f64]) -> Result<S
 fn residuals(columns: &[&[f64]], y: &[f64], coefficients: &[f64]) -> Vec<f64> {
     let fitted = |i: usize| columns.iter().zip(coefficients).map(move |(column, beta)| -column[i] * beta);
     let residual = |i: usize| sum(std::iter::once(y[i]).chain(fitted(i)));
-    (0..y.len()).into_par_iter().map(residual).collect()
+    (0..y.len()).into_par_iter().with_min_len(BLOCK).map(residual).collect()
 }
 
 /// D R^-1 Q' W^1/2.
@@ -167,7 +167,13 @@ fn check_shape(columns: &[&[f64]], y: &[f64], weights: Option<&[f64]>) -> Result
     if let Some(odd) = columns.iter().copied().chain(weights).find(|list| list.len() != rows) {
         return Err(incomplete(format!("A fit has {rows} readings, but {} entries beside them.", odd.len())));
     }
-    if columns.par_iter().copied().chain([y]).any(|column| column.iter().any(|entry| !entry.is_finite())) {
+    let odd = |column: &[f64]| column.iter().any(|entry| !entry.is_finite());
+    let any_odd = if rows >= 2 * BLOCK {
+        columns.par_iter().any(|column| odd(column))
+    } else {
+        columns.iter().any(|column| odd(column))
+    };
+    if any_odd || odd(y) {
         return Err(incomplete("A fit meets an entry that is not a finite number.".into()));
     }
     match weights.unwrap_or(&[]).iter().find(|weight| !(weight.is_finite() && **weight > 0.0)) {
