@@ -1,12 +1,14 @@
-//! Density of water against vectors; its sensitivities against differences. Sources stand in the vector file and in
+//! Density of water against vectors, volume by weighing in water, sorption; sensitivities against differences. Sources stand in the vector file and in
 //! `tests/published/README.md`.
 
 #![allow(clippy::disallowed_methods)]
 
 use libripens::graph::{
-    Builder, Distribution, Graph, InputDraft, NodeId, Origin, Quantity, Value, evaluate_displaced, sensitivities,
-    standard_uncertainty,
+    Builder, Distribution, Graph, InputDraft, NodeId, Origin, Quantity, State, Value, evaluate_displaced,
+    sensitivities, standard_uncertainty,
 };
+use libripens::method::hydrostatic_volume::{Weighing, at_reference, volume};
+use libripens::method::sorption_correction::{coefficient, mass_in_air};
 use libripens::method::water_density::{EQUATION_UNCERTAINTY, Isotopes, Water, density};
 use libripens::method::{exact, unit};
 use libripens::quantity::Kind;
@@ -145,4 +147,81 @@ fn the_equation_is_one_shared_input() {
     let u = standard_uncertainty(&graph, &sensitivities(&graph, alone));
     assert!((u / value / EQUATION_UNCERTAINTY - 1.0).abs() < 1e-12, "{u}");
     assert!(standard_uncertainty(&graph, &sensitivities(&graph, ratio)) < 1e-20);
+}
+
+/// An input of every field of a weighing in water, in SI units.
+fn weighing<'g>(b: &'g Builder, water_density: Quantity<'g>, difference: f64) -> Weighing<'g> {
+    Weighing {
+        mass: input(b, "m_x", "kg", 1.0),
+        difference: input(b, "d", "kg", difference),
+        exchange_mass: input(b, "m_s", "kg", 0.875),
+        exchange_density: input(b, "rho_s", "kg/m3", 7990.0),
+        air_density: input(b, "rho_a", "kg/m3", 1.17),
+        water_density,
+        gradient: input(b, "gamma", "/m", 3.1e-7),
+        height: input(b, "dh", "m", 0.45),
+    }
+}
+
+/// Water, weighing and expansion in one graph: the balance of forces gives the difference, the method the volume again.
+#[test]
+fn a_volume_is_found_again_through_water_and_expansion() {
+    let (v_20, beta, t_w, p) = (125.1e-6, 47e-6, 21.3, 99_000.0);
+    let rho_w = found(t_w, p, true);
+    let v = v_20 * (1.0 + beta * (t_w - 20.0));
+    let d = 1.0 - rho_w * v - 0.875 * (1.0 - 1.17 / 7990.0) * (1.0 - 3.1e-7 * 0.45);
+    let b = Builder::default();
+    let water = water(&b, t_w, p, true);
+    let given = weighing(&b, density(&b, water), d);
+    let t_ref = exact(&b, 20.0, "°C").as_kind(Kind::Temperature);
+    let beta = input(&b, "beta", "/K", beta);
+    let volume = at_reference(volume(given), beta, t_ref, water.temperature);
+    assert!(b.take_problems().is_empty());
+    assert_eq!(volume.kind(), Kind::Volume);
+    assert!((volume.number() / v_20 - 1.0).abs() < 1e-13, "{}", volume.number());
+    let id = volume.id;
+    let (graph, _) = b.finish();
+    let steps = [
+        ("m_x", 1e-4),
+        ("d", 1e-4),
+        ("m_s", 1e-4),
+        ("rho_s", 1.0),
+        ("rho_a", 0.1),
+        ("gamma", 1e-2),
+        ("dh", 1e4),
+        ("t", 1e-2),
+        ("p", 1e3),
+        ("x_a", 0.1),
+        ("beta", 1e-4),
+        ("tanaka_2001.equation", 1e-4),
+    ];
+    compare_with_differences(&graph, id, &steps);
+    // 0.15 mg of the mass known beforehand are 0.15 mm³.
+    let of_mass = 0.15e-6 * slope(&graph, id, "m_x");
+    assert!((of_mass - 1.503e-10).abs() < 5e-14, "{of_mass}");
+}
+
+#[test]
+fn sensitivities_of_sorption_agree_with_differences() {
+    let b = Builder::default();
+    let (in_air, in_vacuum) = (input(&b, "air", "kg", 31e-9), input(&b, "vacuum", "kg", -4e-9));
+    let (a_1, a_2) = (input(&b, "a_1", "m2", 0.0153), input(&b, "a_2", "m2", 0.0461));
+    let (area, cycle) = (input(&b, "area", "m2", 0.0147), input(&b, "cycle", "kg", 0.0));
+    let m = input(&b, "m", "kg", 1.0);
+    let eta = coefficient(in_air, in_vacuum, a_1, a_2);
+    let taken_up = mass_in_air(m, eta, area, Some(cycle)) - m.in_state(Some(State::Air));
+    assert!(b.take_problems().is_empty());
+    let expected = 35e-9 / 0.0308 * 0.0147;
+    // The difference of two masses of 1 kg resolves 2e-16 kg.
+    assert!((taken_up.number() - expected).abs() < 3e-16, "{}", taken_up.number());
+    let (eta, air) = (eta.id, mass_in_air(m, eta, area, Some(cycle)).id);
+    let (graph, _) = b.finish();
+    compare_with_differences(&graph, eta, &[("air", 1e-9), ("vacuum", 1e-9), ("a_1", 1e-6), ("a_2", 1e-6)]);
+    compare_with_differences(
+        &graph,
+        air,
+        &[("m", 1e-3), ("air", 1e-6), ("vacuum", 1e-6), ("area", 1e-3), ("cycle", 1e-6)],
+    );
+    // The same gain on a larger second area is less for each area.
+    assert!(slope(&graph, eta, "a_2") < 0.0 && slope(&graph, eta, "a_1") > 0.0);
 }

@@ -23,6 +23,7 @@ pub mod gravity_profile;
 pub mod gravity_range;
 pub mod gravity_site;
 pub mod gravity_transfer;
+pub mod hydrostatic_volume;
 pub mod instrument_correction;
 pub mod interferometer_velocity;
 pub mod josephson_voltage;
@@ -43,6 +44,7 @@ pub mod refractive_index_edlen;
 pub mod residual_gas_buoyancy;
 pub mod resistor_line;
 pub mod solid_earth_tide;
+pub mod sorption_correction;
 pub mod statistic;
 pub mod straight_line;
 pub mod substitution;
@@ -122,6 +124,7 @@ pub static METHODS: &[&Method] = &[
     &gravity_epoch::METHOD,
     &gravity_profile::METHOD,
     &gravity_transfer::METHOD,
+    &hydrostatic_volume::METHOD,
     &instrument_correction::METHOD,
     &interferometer_velocity::METHOD,
     &josephson_voltage::METHOD,
@@ -142,6 +145,7 @@ pub static METHODS: &[&Method] = &[
     &residual_gas_buoyancy::METHOD,
     &resistor_line::METHOD,
     &solid_earth_tide::METHOD,
+    &sorption_correction::METHOD,
     &straight_line::METHOD,
     &substitution::METHOD,
     &tare_fit::METHOD,
