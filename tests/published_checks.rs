@@ -11,7 +11,9 @@ use libripens::graph::{
 use libripens::intake::MemoryIntake;
 use libripens::method::air_density::{Air, Humidity, check_validity, density};
 use libripens::method::averaging_cycle::{AveragedDifferences, AveragingCycle};
+use libripens::method::design_control::precision;
 use libripens::method::weighing_cycle::{Dispersion, MeanDifference, Scheme, regular_cycles};
+use libripens::method::weighing_design::{Scatter, Solution, WeighingDesign};
 use libripens::method::{METHODS, conventional_mass, exact, unit};
 use libripens::numeric::distribution::coverage_factor;
 use libripens::quantity::Kind;
@@ -265,6 +267,135 @@ fn effective_degrees_of_freedom_and_coverage_factors() {
             }
         }
     }
+}
+
+/// The design of a vector; the restraint is the sum of the items listed, the first where none are.
+fn weighing_design(vector: &Json) -> WeighingDesign {
+    let comparisons: Vec<Vec<f64>> = vector["inputs"]["A_rows"].as_array().expect("A").iter().map(numbers).collect();
+    let size = comparisons[0].len();
+    let items = match vector["inputs"]["restraint_items"].as_array() {
+        Some(_) => numbers(&vector["inputs"]["restraint_items"]),
+        None => vec![0.0],
+    };
+    WeighingDesign {
+        weights: (0..size).map(|j| format!("weight {j}")).collect(),
+        comparisons,
+        restraints: vec![(0..size).map(|j| if items.contains(&(j as f64)) { 1.0 } else { 0.0 }).collect()],
+        relative: None,
+        scatter: Scatter::Observed,
+        check: None,
+        confidence: 0.95,
+    }
+}
+
+/// Each within an absolute tolerance.
+fn all_close(found: &[f64], expected: &[f64], tolerance: f64, what: &str) {
+    assert_eq!(found.len(), expected.len(), "{what}");
+    for (found, expected) in found.iter().zip(expected) {
+        assert!((found - expected).abs() <= tolerance, "{what}: {found} against {expected}");
+    }
+}
+
+fn fractions(list: &Json) -> Vec<f64> {
+    let fraction = |text: &Json| {
+        let (above, below) =
+            text.as_str().expect("text").split_once('/').unwrap_or((text.as_str().expect("text"), "1"));
+        above.parse::<f64>().expect("number") / below.parse::<f64>().expect("number")
+    };
+    list.as_array().expect("a list").iter().map(fraction).collect()
+}
+
+fn deviations(found: &Solution, s: f64) -> Vec<f64> {
+    (0..found.masses.len()).map(|j| s * found.unscaled_covariance[j][j].sqrt()).collect()
+}
+
+#[test]
+fn weighing_designs_have_the_published_solutions() {
+    let mut seen = 0;
+    for vector in vectors("stats.json").iter().filter(|vector| vector["expected"]["solution_rational"].is_array()) {
+        let name = vector["name"].as_str().expect("name");
+        let rule = weighing_design(vector);
+        let found = rule.solve(&vec![0.0; rule.comparisons.len()], &[0.0]).expect("a solution");
+        let expected = &vector["expected"];
+        for (row, exact) in found.by_difference.iter().zip(expected["solution_rational"].as_array().expect("rows")) {
+            all_close(row, &fractions(exact), 1e-15, name);
+        }
+        let by_restraint: Vec<f64> = found.by_restraint.iter().map(|row| row[0]).collect();
+        all_close(&by_restraint, &fractions(&expected["restraint_factors"]), 1e-15, name);
+        all_close(&deviations(&found, 1.0), &numbers(&expected["repeatability_factors"]), 1e-9, name);
+        if expected["published_repeatability_factors"].is_array() {
+            let printed = numbers(&expected["published_repeatability_factors"]);
+            all_close(&deviations(&found, 1.0)[..printed.len()], &printed, 5.1e-5, name);
+        }
+        close(found.degrees_of_freedom, number(vector, "expected", "dof"), 0.0, name);
+        seen += 1;
+    }
+    assert_eq!(seen, 7);
+}
+
+#[test]
+fn weighing_designs_with_numbers() {
+    let mut seen = 0;
+    for vector in vectors("stats.json").iter().filter(|vector| vector["inputs"]["restraint_deviation_mg"].is_number()) {
+        let (name, expected) = (vector["name"].as_str().expect("name"), &vector["expected"]);
+        let rule = weighing_design(vector);
+        let (y, value) = (numbers(&vector["inputs"]["y_mg"]), number(vector, "inputs", "restraint_deviation_mg"));
+        let (found, estimate) =
+            (rule.solve(&y, &[value]).expect("found"), rule.estimate(&[&y, &[value]]).expect("found"));
+        all_close(&found.masses, &numbers(&expected["b_mg"]), 1e-11, name);
+        all_close(&found.residuals, &numbers(&expected["residuals_mg"]), 1e-11, name);
+        close(found.variance().expect("s").sqrt(), number(vector, "expected", "s_mg"), 1e-8, name);
+        let u_squared = number(vector, "inputs", "u_restraint_mg").powi(2);
+        let row = |i: usize| -> Vec<f64> {
+            let shared = |j: usize| found.by_restraint[i][0] * found.by_restraint[j][0] * u_squared;
+            (0..found.masses.len()).map(|j| estimate.own_covariance[i][j] + shared(j)).collect()
+        };
+        all_close(&row(0), &numbers(&expected["covariance_first_row_mg2"]), 1e-11, name);
+        all_close(&row(found.masses.len() - 1), &numbers(&expected["covariance_last_row_mg2"]), 1e-11, name);
+        seen += 1;
+    }
+    assert_eq!(seen, 3);
+}
+
+#[test]
+fn weighing_design_of_unlike_comparisons() {
+    let list = vectors("stats.json");
+    let vector = list.iter().find(|vector| vector["inputs"]["s_known_mg"].is_array()).expect("the vector");
+    let mut rule = weighing_design(vector);
+    rule.relative = Some(numbers(&vector["inputs"]["s_known_mg"]));
+    rule.scatter = Scatter::Accepted { deviation: 1.0, degrees_of_freedom: f64::INFINITY };
+    let (y, value) = (numbers(&vector["inputs"]["y_mg"]), number(vector, "inputs", "reference_deviation_mg"));
+    let found = rule.solve(&y, &[value]).expect("found");
+    all_close(&found.masses[1..], &numbers(&vector["expected"]["b_mg"]), 1e-11, "masses");
+    close(found.residual_sum_of_squares, number(vector, "expected", "chi2"), 1e-7, "chi-square");
+    let u_reference = number(vector, "inputs", "u_reference_mg");
+    let u = |j: usize| (found.unscaled_covariance[j][j] + (found.by_restraint[j][0] * u_reference).powi(2)).sqrt();
+    all_close(&(1..6).map(u).collect::<Vec<_>>(), &numbers(&vector["expected"]["u_mg"]), 1e-9, "u");
+    let precision = precision((found.variance().expect("s"), 3.0), (1.0, f64::INFINITY), 0.95).expect("a test");
+    close(precision.probability, number(vector, "expected", "p_value"), 1e-7, "p");
+}
+
+/// Masses of the subdivision of a whole campaign, reduced independently.
+#[test]
+fn subdivision_of_a_kilogram() {
+    let vector = &vectors("subdivision.json")[0];
+    let expected = &vector["expected"];
+    let rule = weighing_design(vector);
+    let found =
+        rule.solve(&numbers(&vector["inputs"]["y_kg"]), &[number(vector, "inputs", "reference_kg")]).expect("found");
+    all_close(&found.masses, &numbers(&expected["masses_kg"]), 2e-11, "masses");
+    close(found.variance().expect("s").sqrt(), number(vector, "expected", "s_kg"), 1e-3, "s");
+    for (row, exact) in found.unscaled_covariance.iter().zip(expected["C"].as_array().expect("C")) {
+        all_close(row, &numbers(exact), 1e-15, "C");
+    }
+    let by_restraint: Vec<f64> = found.by_restraint.iter().map(|row| row[0]).collect();
+    all_close(&by_restraint, &numbers(&expected["restraint_factors"]), 1e-15, "D");
+    let (accepted, freedom) = (number(vector, "inputs", "accepted_kg"), number(vector, "inputs", "accepted_dof"));
+    let precision =
+        precision((found.variance().expect("s"), found.degrees_of_freedom), (accepted, freedom), 0.95).expect("a test");
+    close(precision.statistic, number(vector, "expected", "F"), 1e-3, "F");
+    close(precision.limit, number(vector, "expected", "F_limit_95"), 1e-12, "limit of F");
+    assert!(precision.passed);
 }
 
 fn read_into(root: &Path, folder: &Path, files: &mut BTreeMap<String, Vec<u8>>) {

@@ -18,6 +18,7 @@ pub mod consistency;
 pub mod constants;
 pub mod conventional_mass;
 pub mod conversion_1990;
+pub mod design_control;
 pub mod gravity_epoch;
 pub mod gravity_profile;
 pub mod gravity_range;
@@ -57,6 +58,7 @@ pub mod type_a_mean;
 pub mod volume;
 pub mod water_density;
 pub mod weighing_cycle;
+pub mod weighing_design;
 
 use crate::graph::{Builder, MethodInfo, Quantity, Value};
 use crate::quantity::{Decimal, Kind, Unit};
@@ -153,6 +155,7 @@ pub static METHODS: &[&Method] = &[
     &volume::METHOD,
     &water_density::METHOD,
     &weighing_cycle::METHOD,
+    &weighing_design::METHOD,
 ];
 
 /// The mean of values known to be some; not a number of none.
