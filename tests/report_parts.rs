@@ -20,7 +20,9 @@ fn every_part_is_typeset() {
     let intake = MemoryIntake::with(files());
     let engine = Engine::read(&intake, None).expect("readable");
     let report = make_report(&engine, "report.md").expect("a report");
-    assert!(engine.complaints().list.is_empty(), "{:#?}", engine.complaints());
+    // The comparison loss bends within its uncertainty: that is why it stands here.
+    let codes: Vec<Code> = engine.complaints().list.iter().map(|one| one.code).collect();
+    assert_eq!(codes, [Code::FirstOrderShort], "{:#?}", engine.complaints());
     assert!(report.pages >= 4 && report.pdf.starts_with(b"%PDF"), "{} pages", report.pages);
 }
 
@@ -69,8 +71,8 @@ fn a_part_of_another_kind_is_refused() {
     let intake = MemoryIntake::with(files);
     let engine = Engine::read(&intake, None).expect("readable");
     write_report(&engine, "report.md");
+    // The loss bends within its uncertainty, which is warned of in any case.
     let list = engine.complaints().list;
-    assert_eq!(list.len(), 1, "{list:#?}");
-    assert_eq!(list[0].code, Code::TemplateFaulty);
-    assert!(list[0].message.contains("LINE is of the kind fit, but series-in-time is expected here"), "{list:#?}");
+    assert_eq!(list.iter().map(|one| one.code).collect::<Vec<_>>(), [Code::FirstOrderShort, Code::TemplateFaulty]);
+    assert!(list[1].message.contains("LINE is of the kind fit, but series-in-time is expected here"), "{list:#?}");
 }
