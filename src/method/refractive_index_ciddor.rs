@@ -58,12 +58,12 @@ pub static METHOD: Method = Method {
 };
 
 const fn dry(given: &'static str, printed: &'static str, found: fn() -> f64) -> WorkedExample {
-    let source = "Ciddor 1996, table 1 (633 nm, dry, 450 µmol/mol), seen in a public transcription";
+    let source = "Ciddor 1996, table 1 (633 nm, dry, 450 µmol/mol), seen in a public copy";
     WorkedExample { source, given, quantity: "(n − 1)/10⁻⁸", printed, found }
 }
 
 const fn moist(given: &'static str, printed: &'static str, found: fn() -> f64) -> WorkedExample {
-    let source = "Ciddor 1996, table 2 (633 nm), seen in a public transcription";
+    let source = "Ciddor 1996, table 2 (633 nm), seen in a public copy";
     WorkedExample { source, given, quantity: "(n − 1)/10⁻⁸", printed, found }
 }
 

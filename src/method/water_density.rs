@@ -1,7 +1,7 @@
 //! Density of water: air-free or with dissolved air, at a pressure, of stated isotopes.
 //!
 //! # Source    M. Tanaka, G. Girard, R. Davis, A. Peuto, N. Bignell, Metrologia 38 (2001) 301-309 (constants confirmed in
-//!             public transcriptions that agree; range of dissolved air, isotopes and uncertainty recalled).
+//!             public copys that agree; range of dissolved air, isotopes and uncertainty recalled).
 //! # Formula   ρ = [ρ_t + x_a (s_0 + s_1 t) + Δ_iso] [1 + (k_0 + k_1 t + k_2 t²)(p − 101 325 Pa)] (1 + δ_eq)
 //!             ρ_t = a_5 {1 − (t + a_1)² (t + a_2)/[a_3 (t + a_4)]},   Δ_iso = c_O δ_O + c_D δ_D
 //!     t    temperature of the water in °C (ITS-90); T                      K
@@ -59,7 +59,7 @@ pub static METHOD: Method = Method {
     ],
 };
 
-const TABLE: &str = "Tanaka et al. 2001, recommended table, in a public transcription";
+const TABLE: &str = "Tanaka et al. 2001, recommended table, in a public copy";
 const COMPUTED: &str = "computed in high precision from the equation";
 
 const fn example(
