@@ -1,6 +1,6 @@
 //! Ambient conditions: logged temperature, pressure, humidity, corrected and interpolated to the weighings.
 
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::instrument::{Instrument, kinds_of};
@@ -425,8 +425,4 @@ pub fn clock(time: f64) -> String {
     let whole = time.floor();
     chrono::DateTime::from_timestamp(whole as i64, ((time - whole) * 1e9) as u32)
         .map_or_else(|| format!("{time} s"), |at| at.format("%Y-%m-%dT%H:%M:%SZ").to_string())
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

@@ -1,7 +1,7 @@
 //! The mean of readings in groups, with what varies between the groups.
 
 use super::columns::difference_unit;
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::{BlockKind, Output};
@@ -227,8 +227,4 @@ fn describe(
         let unit = if *path == "f_between" { Unit::one() } else { difference_unit(unit) };
         quantity.result(path, symbol, words, &unit);
     }
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

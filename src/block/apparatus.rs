@@ -1,7 +1,7 @@
 //! What is known of a Kibble balance beside its standards: alignment, parasitic motion, coil, null meters, vacuum.
 
 use super::calibration::check_dimension;
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::{BlockKind, Output};
@@ -230,8 +230,4 @@ fn read<'e>(engine: &'e Engine<'e>, block: &'e Block) -> Option<Apparatus<'e>> {
         corrections.push((label, value));
     }
     Some(Apparatus { properties, parasitic, corrections })
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

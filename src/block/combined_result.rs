@@ -1,7 +1,7 @@
 //! Several results of one quantity combined.
 
 use super::combining::{Combined, LeftOut, Member, decisions, left_out, warn_of_disagreement, warn_of_few_results};
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::weight::Weight;
@@ -401,8 +401,4 @@ impl<'e> Work<'e> {
         let subject = self.fields.text("item").map_or_else(|| self.block.name().to_string(), |item| item.text);
         if prefix.is_empty() { subject } else { format!("{subject},all") }
     }
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

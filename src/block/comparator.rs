@@ -1,6 +1,6 @@
 //! Mass comparators: sensitivity, repeatability, resolution, eccentricity, linearity, gradient of gravity.
 
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::given::Given;
@@ -293,8 +293,4 @@ impl<'e> Comparator<'e> {
             Kind::Plain,
         )
     }
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

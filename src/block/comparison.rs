@@ -2,7 +2,7 @@
 
 use super::ambient::LoggedAir;
 use super::comparator::Comparator;
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::weighing::{Comparison, CycleResult, Excluded, Weighings};
@@ -724,8 +724,4 @@ fn surroundings<'e>(engine: &'e Engine<'e>, block: &Block, weighings: &Weighings
     let density =
         air_density::density(&engine.builder, air).result("density_at_weighings", "ρ_i", &label, &unit("kg/m3"));
     Some(Surroundings { density, temperature: Some(air.temperature), pressure: Some(air.pressure) })
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

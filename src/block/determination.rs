@@ -1,11 +1,11 @@
 //! Determination of a mass: one moving phase and one weighing phase joined by the mass equation.
 
 use super::apparatus::Apparatus;
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::moving_phase::MovingPhase;
-use super::phase::{exact_column, means_of, shorten};
+use super::phase::{exact_column, means_of};
 use super::realization::MeasuredAt;
 use super::weighing_phase::WeighingPhase;
 use super::weight::Weight;

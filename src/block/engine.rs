@@ -571,6 +571,11 @@ impl<'i> Engine<'i> {
     }
 }
 
+/// The engine as its blocks borrow it while they build: what they make lives as long as this borrow.
+pub(super) fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
+    engine
+}
+
 /// A campaign sees its own records and the shared ones.
 fn is_visible(path: &str, campaign: Option<&str>) -> bool {
     if !path.ends_with(".md") {

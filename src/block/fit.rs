@@ -1,7 +1,7 @@
 //! A polynomial through points by least squares.
 
 use super::columns::{COLUMN_FIELDS, Column, read_column};
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::given::Given;
@@ -403,8 +403,4 @@ fn warn_outside(engine: &Engine, name: &str, x: &Column<'_>, at: f64, place: Pla
     );
     let hint = "Take points on both sides, or say in the record why the polynomial holds there too.";
     engine.complain(Problem::new(Code::Extrapolated, message).hint(hint), place);
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

@@ -1,6 +1,6 @@
 //! Gravity stations: g at a mark from absolute determinations, and everything that carries it to a balance.
 
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::gravity_check::check;
@@ -360,8 +360,4 @@ fn profile_at_balance<'e>(
     let level = height(engine, tie, "height", &format!("{path}.height"), "height of the tie")?;
     let found = profile(engine, block, tie.mapping("profile"), &format!("{path}.profile"))?;
     Some((level.id, StoredProfile::of(found)))
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

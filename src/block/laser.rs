@@ -1,7 +1,7 @@
 //! The laser whose wavelength measures lengths.
 
 use super::calibration::{calibration_path, certified_on, check_dimension, check_one_source};
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::{BlockKind, Output};
@@ -81,8 +81,4 @@ fn read<'e>(engine: &'e Engine<'e>, block: &'e Block, day: NaiveDate, used_at: P
     let label = format!("wavelength of {} in vacuum", block.label());
     engine.builder.name(vacuum_wavelength.id, Name { path, symbol: "λ_0".into(), label, unit: unit("nm") });
     Some(Laser { frequency, vacuum_wavelength })
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

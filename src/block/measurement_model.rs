@@ -1,6 +1,6 @@
 //! A user's own measurement model: a measurand, its inputs, an equation in ordinary arithmetic.
 
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::equation::{Part, Term, names, parse_equation};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
@@ -501,8 +501,4 @@ impl Estimator for MeansTogether {
             residuals: departures.concat(),
         })
     }
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

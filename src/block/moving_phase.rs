@@ -1,12 +1,12 @@
 //! Moving phase of a two-mode balance: gates of velocity and voltage to the geometric factor.
 
 use super::apparatus::Apparatus;
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::laser::Laser;
 use super::moving_checks::Gates;
-use super::phase::{PhaseData, WantedColumn, shorten};
+use super::phase::{PhaseData, WantedColumn};
 use super::time_base::TimeBase;
 use super::voltage_standard::VoltageStandard;
 use super::weighing_phase::WeighingPhase;

@@ -147,8 +147,3 @@ pub fn means_of<'e>(column: Quantity<'e>, groups: &[Vec<usize>]) -> Quantity<'e>
     };
     column.mix(groups.iter().map(weights).collect())
 }
-
-/// An engine seen with the lifetime of the borrow.
-pub fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
-}

@@ -1,6 +1,6 @@
 //! The result of a campaign: determinations of one artefact by a primary method, combined.
 
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::weight::Weight;
@@ -676,8 +676,4 @@ fn performed_by(engine: &Engine, path: &Text) -> String {
     let record = engine.records.iter().find(|record| sources.file(record.file).path == block.path);
     let role = record.and_then(|record| record.front.as_ref()?.get("performed_by")?.as_text().map(str::to_string));
     role.unwrap_or_default()
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

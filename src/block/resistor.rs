@@ -1,7 +1,7 @@
 //! A resistor with its dated calibrations, its drift and its dependence on the conditions of use.
 
 use super::calibration::check_dimension;
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::given::Given;
@@ -503,10 +503,6 @@ impl<'e> Resistor<'e> {
 /// The day of a time in seconds since 1970, in UTC.
 fn day(seconds: f64) -> NaiveDate {
     DateTime::from_timestamp(seconds as i64, 0).map_or(NaiveDate::MIN, |time| time.date_naive())
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }
 
 #[cfg(test)]

@@ -1,7 +1,7 @@
 //! Readings at equal intervals of time: their mean, and how far they depend on each other.
 
 use super::columns::{COLUMN_FIELDS, Column, read_column};
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Shape, needed, optional};
 use super::fields::Fields;
 use super::given::Given;
@@ -147,8 +147,4 @@ fn describe(engine: &Engine<'_>, name: &str, label: &str, column: &Column<'_>) {
         let _scope = engine.builder.scope("", Some(method));
         quantity.result(path, symbol, words, unit);
     }
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

@@ -1,7 +1,7 @@
 //! The time base that counters, gates and microwave sources are locked to.
 
 use super::calibration::{certified_on, check_dimension, check_one_source};
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::{BlockKind, Output};
@@ -70,8 +70,4 @@ fn read<'e>(engine: &'e Engine<'e>, block: &'e Block, day: NaiveDate, used_at: P
     let name = ("offset", "relative offset");
     let certified = certified_on(engine, block, ("offset", Kind::Plain), name, day, used_at)?;
     Some(TimeBase { offset: certified.input(engine, "y", Kind::Plain)? })
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

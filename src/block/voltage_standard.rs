@@ -1,7 +1,7 @@
 //! A Josephson voltage standard: its microwave frequency, its time base and the error bound of its array.
 
 use super::calibration::{calibration_path, check_dimension, valid_calibration};
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::given::Given;
@@ -143,10 +143,6 @@ fn certified_step<'e>(engine: &'e Engine<'e>, block: &'e Block, calibration: Fie
     let label = format!("{label}, carried from the units of 1990 to the SI");
     engine.builder.name(converted.id, Name { path, symbol: "U_SI".into(), label, unit: unit("µV") });
     Some(converted)
-}
-
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }
 
 #[cfg(test)]

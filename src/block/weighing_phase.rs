@@ -1,10 +1,10 @@
 //! Weighing phase of a two-mode balance: samples with and without the artefact, to currents and gravity.
 
 use super::apparatus::Apparatus;
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::gravity_station::GravityStation;
-use super::phase::{PhaseData, WantedColumn, mean_of, shorten};
+use super::phase::{PhaseData, WantedColumn, mean_of};
 use super::resistor::Resistor;
 use super::voltage_standard::VoltageStandard;
 use super::{BlockKind, Output, no_check};

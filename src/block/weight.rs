@@ -1,7 +1,7 @@
 //! Weights: the laboratory's standards and clients' items.
 
 use super::calibration::{calibration_path, valid_calibration};
-use super::engine::{Block, Engine};
+use super::engine::{Block, Engine, shorten};
 use super::field::{Field, Shape, needed, optional};
 use super::fields::Fields;
 use super::given::Given;
@@ -334,9 +334,4 @@ impl<'e> VolumeAt<'e> {
             None => self.volume,
         }
     }
-}
-
-/// An engine seen with the lifetime of the borrow.
-fn shorten<'e>(engine: &'e Engine<'_>) -> &'e Engine<'e> {
-    engine
 }

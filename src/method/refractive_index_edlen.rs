@@ -1,7 +1,7 @@
 //! Refractive index of air by the modified Edlén equation.
 //!
 //! # Source    K. P. Birch, M. J. Downs, Metrologia 30 (1993) 155-162 and 31 (1994) 315-316 (constants confirmed in public
-//!             transcriptions that agree; the range is recalled).
+//!             copies that agree; the range is recalled).
 //! # Formula   s = (1 µm/λ_0)²
 //!             n_s − 1 = 1e-8 [8342.54 + 2406147/(130 − s) + 15998/(38.9 − s)]
 //!             n_tp − 1 = (n_s − 1) (p/96095.43 Pa) [1 + 1e-8 (0.601 − 0.00972 t) p/Pa]/(1 + 0.0036610 t)
